@@ -1,0 +1,22 @@
+//! The assay: its protocol, its rack of tubes, the readings kept so far, and counts turned into amounts.
+//!
+//! A [`Titration`] is a plain value; everything that computes works on it, and none of it knows where
+//! it came from.
+
+mod amounts;
+mod ladder;
+mod protocol;
+mod rack;
+mod reading;
+mod stamp;
+
+pub use amounts::{Background, Measured, Observed, background, counts_per_nm, measured, observed};
+pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet};
+pub use protocol::{
+    BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Fields, Incubation, Ligand,
+    Nonspecific, Numbers, Protocol, ProtocolError, Receptor, ReceptorAmount, Separation, SitesUnit,
+    Sticks, Unlabelled,
+};
+pub use rack::{Kept, Level, LevelNo, Loss, Made, Note, Role, Titration, Tube, TubeNo};
+pub use reading::{Reading, ReadingError, ReadingId, Reason, Scale, Suspicion};
+pub use stamp::{Stamp, StampError};

@@ -1,0 +1,285 @@
+//! The ladder: how levels and tubes are laid out before the first reading.
+
+use super::protocol::{Protocol, ProtocolError};
+use super::rack::{Level, LevelNo, Made, Role, Titration, Tube, TubeNo};
+use crate::units::{Amount, Mark, Measure, NanoMolar, Typed, significant};
+use serde::{Deserialize, Serialize};
+
+/// A protocol with its ladder: what a titration is opened from.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Sheet {
+    /// How it is done.
+    pub protocol: Protocol,
+    /// The levels and tubes.
+    pub ladder: Ladder,
+}
+
+impl Sheet {
+    /// The titration that this sheet opens.
+    ///
+    /// # Errors
+    /// The field of the protocol or of the ladder at fault.
+    pub fn titration(&self) -> Result<Titration, LadderError> {
+        self.protocol.check()?;
+        let (levels, tubes) = self.ladder.lay(self.protocol.counter.mark)?;
+        Ok(Titration::new(self.protocol.clone(), levels, tubes))
+    }
+}
+
+/// How levels and tubes are laid out.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Ladder {
+    /// The concentrations, in any order; levels are numbered from the lowest up.
+    pub levels: Levels,
+    /// How their solutions were made.
+    #[serde(default)]
+    pub dilution: Dilution,
+    /// Total tubes at each level.
+    pub total: u16,
+    /// Nonspecific tubes at each level.
+    pub nonspecific: u16,
+    /// Levels with other numbers of tubes.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub except: Vec<Except>,
+    /// Background vials; they are counted first and numbered after the tubes.
+    #[serde(default = "one")]
+    pub background: u16,
+}
+
+fn one() -> u16 {
+    1
+}
+
+/// The concentrations of a ladder.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub enum Levels {
+    /// Written out.
+    List(Vec<Amount<NanoMolar>>),
+    /// Equal ratios from the lowest to the highest, both included.
+    Geometric {
+        /// The lowest.
+        lowest: Amount<NanoMolar>,
+        /// The highest.
+        highest: Amount<NanoMolar>,
+        /// How many.
+        number: u16,
+    },
+}
+
+/// How the solutions of a ladder were made.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
+pub enum Dilution {
+    /// Each in one step from the stock.
+    #[default]
+    EachFromStock,
+    /// The highest from the stock, every other from the one above it.
+    Serial,
+}
+
+/// A level with its own numbers of tubes.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Except {
+    /// Which level, numbered from the lowest up.
+    pub level: u16,
+    /// Total tubes there.
+    pub total: u16,
+    /// Nonspecific tubes there.
+    pub nonspecific: u16,
+}
+
+/// A sheet that cannot be laid out.
+#[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
+#[non_exhaustive]
+pub enum LadderError {
+    /// A field of the protocol.
+    #[error("protocol.{0}")]
+    Protocol(#[from] ProtocolError),
+    /// A field of the ladder.
+    #[error("ladder.{field}: {what}")]
+    Ladder {
+        /// The field.
+        field: &'static str,
+        /// The value found and what is allowed.
+        what: String,
+    },
+}
+
+fn wrong(field: &'static str, what: impl Into<String>) -> LadderError {
+    LadderError::Ladder {
+        field,
+        what: what.into(),
+    }
+}
+
+impl Ladder {
+    /// Levels from the lowest up, tubes in counting order.
+    ///
+    /// Background vials are counted first, so that a fit can begin with the first tubes, and carry the
+    /// numbers after the last tube, so that the rack itself is numbered from 1. The rack runs level by
+    /// level from the lowest, totals before nonspecific tubes.
+    ///
+    /// # Errors
+    /// The field of the ladder at fault, with what was found and what is allowed.
+    pub fn lay(&self, mark: Mark) -> Result<(Vec<Level>, Vec<Tube>), LadderError> {
+        let mut added = self.concentrations(mark)?;
+        added.sort_by(|a, b| a.base().total_cmp(&b.base()));
+        let n = added.len() as u16;
+        let levels: Vec<Level> = added
+            .into_iter()
+            .zip(1u16..)
+            .map(|(added, no)| Level {
+                no: LevelNo(no),
+                added,
+                made: self.made(no, n),
+            })
+            .collect();
+        let mut per_level = vec![(self.total, self.nonspecific); levels.len()];
+        for e in &self.except {
+            match usize::from(e.level)
+                .checked_sub(1)
+                .and_then(|i| per_level.get_mut(i))
+            {
+                Some(place) => *place = (e.total, e.nonspecific),
+                None => {
+                    return Err(wrong(
+                        "except",
+                        format!("level {}: levels are 1 to {n}", e.level),
+                    ));
+                }
+            }
+        }
+        let most = Titration::MOST_TUBES;
+        let wanted: usize = per_level
+            .iter()
+            .map(|(t, n)| usize::from(*t) + usize::from(*n))
+            .sum();
+        if wanted + usize::from(self.background) > most {
+            return Err(wrong(
+                "total",
+                format!("{wanted} tubes in all: at most {most} are allowed"),
+            ));
+        }
+        let mut tubes = Vec::with_capacity(wanted + usize::from(self.background));
+        let mut no = 0;
+        let mut vials = |role, level, number: u16, tubes: &mut Vec<Tube>| {
+            for replicate in 1..=number {
+                no += 1;
+                tubes.push(Tube {
+                    no: TubeNo(no),
+                    role,
+                    level,
+                    replicate,
+                });
+            }
+        };
+        for (level, (total, nonspecific)) in levels.iter().zip(&per_level) {
+            vials(Role::Total, Some(level.no), *total, &mut tubes);
+            vials(Role::Nonspecific, Some(level.no), *nonspecific, &mut tubes);
+        }
+        if tubes.is_empty() {
+            return Err(wrong("total", "no tubes: a rack has at least one"));
+        }
+        let mut first = Vec::new();
+        vials(Role::Background, None, self.background, &mut first);
+        first.append(&mut tubes);
+        Titration::check_rack(&levels, &first).map_err(|e| wrong("levels", e))?;
+        Ok((levels, first))
+    }
+
+    fn made(&self, no: u16, n: u16) -> Made {
+        match self.dilution {
+            Dilution::Serial if no < n => Made::FromLevel(LevelNo(no + 1)),
+            _ => Made::FromStock,
+        }
+    }
+
+    fn concentrations(&self, mark: Mark) -> Result<Vec<Amount<NanoMolar>>, LadderError> {
+        let sound = |a: &Amount<NanoMolar>| {
+            if a.mark().is_some_and(|m| m != mark) {
+                return Err(wrong(
+                    "levels",
+                    format!(
+                        "`{a}` has a decimal {}, and this titration uses a {mark}",
+                        mark.other()
+                    ),
+                ));
+            }
+            if a.base() > 0.0 && a.base() <= 1e9 {
+                Ok(())
+            } else {
+                Err(wrong(
+                    "levels",
+                    format!("`{a}`: a level is more than zero and at most 1 M"),
+                ))
+            }
+        };
+        match &self.levels {
+            Levels::List(list) => {
+                if list.is_empty() || list.len() > Titration::MOST_LEVELS {
+                    return Err(wrong(
+                        "levels",
+                        format!(
+                            "{} levels: allowed is 1 to {}",
+                            list.len(),
+                            Titration::MOST_LEVELS
+                        ),
+                    ));
+                }
+                list.iter().try_for_each(sound)?;
+                Ok(list.clone())
+            }
+            Levels::Geometric {
+                lowest,
+                highest,
+                number,
+            } => {
+                sound(lowest)?;
+                sound(highest)?;
+                if !(2..=Titration::MOST_LEVELS as u16).contains(number) {
+                    return Err(wrong(
+                        "levels",
+                        format!(
+                            "{number} levels: allowed is 2 to {}",
+                            Titration::MOST_LEVELS
+                        ),
+                    ));
+                }
+                if highest.base() <= lowest.base() {
+                    return Err(wrong(
+                        "levels",
+                        format!("from {lowest} to {highest}: the highest is above the lowest"),
+                    ));
+                }
+                Ok(geometric(lowest, highest, *number, mark))
+            }
+        }
+    }
+}
+
+/// Equal ratios, rounded to four digits as a person would pipette them; the ends stay as typed.
+fn geometric(
+    lowest: &Amount<NanoMolar>,
+    highest: &Amount<NanoMolar>,
+    number: u16,
+    mark: Mark,
+) -> Vec<Amount<NanoMolar>> {
+    let (low, high) = (lowest.base(), highest.base());
+    let ratio = (high / low).ln() / f64::from(number - 1);
+    (0..number)
+        .map(|i| match i {
+            0 => lowest.clone(),
+            i if i + 1 == number => highest.clone(),
+            i => {
+                let nm = significant(low * (ratio * f64::from(i)).exp(), 4);
+                let value = nm.parse().unwrap_or(low);
+                Typed {
+                    text: format!("{} nM", nm.replace('.', &mark.char().to_string())),
+                    value: Measure::of(value),
+                }
+            }
+        })
+        .collect()
+}

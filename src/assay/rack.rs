@@ -1,0 +1,355 @@
+//! The rack: levels, tubes, what is kept of each, and the titration as it stands.
+
+use super::protocol::Protocol;
+use super::reading::{Reading, ReadingId, Suspicion};
+use super::stamp::Stamp;
+use crate::units::{Amount, NanoMolar};
+use serde::{Deserialize, Serialize};
+use std::collections::{BTreeMap, BTreeSet};
+use std::fmt;
+
+/// The number of a level; it keeps it for life.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+pub struct LevelNo(pub u16);
+
+/// The permanent number of a vial.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+pub struct TubeNo(pub u32);
+
+impl fmt::Display for LevelNo {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        self.0.fmt(f)
+    }
+}
+
+impl fmt::Display for TubeNo {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        self.0.fmt(f)
+    }
+}
+
+/// What a level's solution was made from; this says which pipetting errors levels share.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Made {
+    /// One dilution from the stock.
+    FromStock,
+    /// One dilution from another level's solution.
+    FromLevel(LevelNo),
+}
+
+/// One concentration of labelled ligand.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Level {
+    /// Its number.
+    pub no: LevelNo,
+    /// The label added to its tubes, as the concentration in the tube.
+    pub added: Amount<NanoMolar>,
+    /// What it was diluted from.
+    pub made: Made,
+}
+
+/// What a tube is for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+pub enum Role {
+    /// Label only.
+    Total,
+    /// Label and an excess of unlabelled ligand.
+    Nonspecific,
+    /// No label: what the counter shows by itself.
+    Background,
+}
+
+impl Role {
+    /// The word, in small letters.
+    pub fn word(self) -> &'static str {
+        match self {
+            Role::Total => "total",
+            Role::Nonspecific => "nonspecific",
+            Role::Background => "background",
+        }
+    }
+
+    /// The role a word stands for.
+    pub fn from_word(word: &str) -> Option<Role> {
+        [Role::Total, Role::Nonspecific, Role::Background]
+            .into_iter()
+            .find(|r| r.word().eq_ignore_ascii_case(word.trim()))
+    }
+}
+
+impl fmt::Display for Role {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.write_str(self.word())
+    }
+}
+
+/// One vial.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Tube {
+    /// Its permanent number.
+    pub no: TubeNo,
+    /// What it is for.
+    pub role: Role,
+    /// Its level; none for background.
+    pub level: Option<LevelNo>,
+    /// 1 for a, 2 for b and so on.
+    pub replicate: u16,
+}
+
+impl Tube {
+    /// The replicate as a letter, or as a number past z.
+    pub fn letter(&self) -> String {
+        letter(self.replicate)
+    }
+}
+
+/// `1` as `a`, `2` as `b`, `27` as `27`.
+fn letter(replicate: u16) -> String {
+    match u8::try_from(replicate) {
+        Ok(n @ 1..=26) => char::from(b'a' + n - 1).to_string(),
+        _ => replicate.to_string(),
+    }
+}
+
+/// A reading that is kept, and whether it is doubted.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Kept {
+    /// Its name in the notebook.
+    pub id: ReadingId,
+    /// The reading.
+    pub reading: Reading,
+    /// Why it is left out of the fit, if it is.
+    pub suspect: Option<Suspicion>,
+}
+
+/// A note, on one tube or on the whole.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Note {
+    /// The entry that holds it.
+    pub entry: u32,
+    /// The tube it is about.
+    pub tube: Option<TubeNo>,
+    /// What it says.
+    pub text: String,
+}
+
+/// A tube that will never have a reading.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Loss {
+    /// The entry that says so.
+    pub entry: u32,
+    /// Why.
+    pub why: Suspicion,
+}
+
+/// One titration as it stands: no history, no file, a plain value.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Titration {
+    /// How it was done.
+    pub protocol: Protocol,
+    /// The levels, in the order they were laid.
+    pub levels: Vec<Level>,
+    /// The tubes, in the order they are counted.
+    pub tubes: Vec<Tube>,
+    /// What is kept of each tube.
+    pub kept: BTreeMap<TubeNo, Vec<Kept>>,
+    /// Tubes without a reading for ever.
+    pub lost: BTreeMap<TubeNo, Loss>,
+    /// Notes in the order they were made.
+    pub notes: Vec<Note>,
+    /// Set while the titration is closed: when and by whom.
+    pub closed: Option<(Stamp, String)>,
+    /// Who checked it, when, and the digest they saw.
+    pub checked: Vec<(Stamp, String, String)>,
+}
+
+impl Titration {
+    /// A titration before its first reading.
+    pub fn new(protocol: Protocol, levels: Vec<Level>, tubes: Vec<Tube>) -> Self {
+        Titration {
+            protocol,
+            levels,
+            tubes,
+            kept: BTreeMap::new(),
+            lost: BTreeMap::new(),
+            notes: Vec::new(),
+            closed: None,
+            checked: Vec::new(),
+        }
+    }
+
+    /// The tube with a vial number.
+    pub fn tube(&self, no: TubeNo) -> Option<&Tube> {
+        self.tubes.iter().find(|t| t.no == no)
+    }
+
+    /// The level with a number.
+    pub fn level(&self, no: LevelNo) -> Option<&Level> {
+        self.levels.iter().find(|l| l.no == no)
+    }
+
+    /// The label added to a tube in nM; none for background.
+    pub fn added_nm(&self, tube: &Tube) -> Option<f64> {
+        tube.level
+            .and_then(|l| self.level(l))
+            .map(|l| l.added.base())
+    }
+
+    /// What is kept of a tube.
+    pub fn kept(&self, no: TubeNo) -> &[Kept] {
+        self.kept.get(&no).map_or(&[], Vec::as_slice)
+    }
+
+    /// Whether a tube has every reading taken out of the fit by a flag.
+    pub fn is_suspect(&self, no: TubeNo) -> bool {
+        let kept = self.kept(no);
+        !kept.is_empty() && kept.iter().all(|k| k.suspect.is_some())
+    }
+
+    /// Whether any flag stands.
+    pub fn has_flags(&self) -> bool {
+        self.kept.values().flatten().any(|k| k.suspect.is_some())
+    }
+
+    /// The first tube in counting order that still wants a reading.
+    pub fn next_unread(&self) -> Option<TubeNo> {
+        self.tubes
+            .iter()
+            .map(|t| t.no)
+            .find(|no| self.wants_reading(*no))
+    }
+
+    /// Whether a tube has neither a reading nor been given up.
+    pub fn wants_reading(&self, no: TubeNo) -> bool {
+        self.kept(no).is_empty() && !self.lost.contains_key(&no)
+    }
+
+    /// How many tubes have a reading, and how many there are.
+    pub fn progress(&self) -> (usize, usize) {
+        let read = self
+            .tubes
+            .iter()
+            .filter(|t| !self.kept(t.no).is_empty())
+            .count();
+        (read, self.tubes.len())
+    }
+
+    /// The levels by concentration, lowest first.
+    pub fn levels_by_concentration(&self) -> Vec<&Level> {
+        let mut levels: Vec<&Level> = self.levels.iter().collect();
+        levels.sort_by(|a, b| {
+            a.added
+                .base()
+                .total_cmp(&b.added.base())
+                .then(a.no.cmp(&b.no))
+        });
+        levels
+    }
+
+    /// How a tube is called in a sentence: `vial 26, 5.0 nM, total b`.
+    pub fn name(&self, tube: &Tube) -> String {
+        match tube.level.and_then(|l| self.level(l)) {
+            Some(l) => format!(
+                "vial {}, {}, {} {}",
+                tube.no,
+                l.added,
+                tube.role,
+                tube.letter()
+            ),
+            None => format!("vial {}, {} {}", tube.no, tube.role, tube.letter()),
+        }
+    }
+
+    /// Whether levels and tubes hang together.
+    ///
+    /// # Errors
+    /// A sentence naming the level or tube at fault.
+    pub fn check_rack(levels: &[Level], tubes: &[Tube]) -> Result<(), String> {
+        if levels.len() > Self::MOST_LEVELS || tubes.len() > Self::MOST_TUBES {
+            return Err(format!(
+                "{} levels and {} tubes: at most {} and {} are allowed",
+                levels.len(),
+                tubes.len(),
+                Self::MOST_LEVELS,
+                Self::MOST_TUBES
+            ));
+        }
+        let mut made = BTreeMap::new();
+        for l in levels {
+            let nm = l.added.base();
+            if !(nm.is_finite() && nm > 0.0 && nm <= 1e9) {
+                return Err(format!(
+                    "level {} has {}: a level is more than zero and at most 1 M",
+                    l.no, l.added
+                ));
+            }
+            if made.insert(l.no, l.made).is_some() {
+                return Err(format!("level {} is there twice", l.no));
+            }
+        }
+        // Every chain of dilutions ends in the stock; a level found sound is not walked again.
+        let mut sound = BTreeSet::new();
+        for l in levels {
+            let (mut at, mut walked) = (l.no, BTreeSet::new());
+            while !sound.contains(&at) {
+                if !walked.insert(at) {
+                    return Err(format!("level {at} is diluted from itself in a circle"));
+                }
+                match made.get(&at) {
+                    Some(Made::FromStock) => break,
+                    Some(Made::FromLevel(from)) if made.contains_key(from) => at = *from,
+                    Some(Made::FromLevel(from)) => {
+                        return Err(format!(
+                            "level {at} is diluted from level {from}, which is not there"
+                        ));
+                    }
+                    None => break,
+                }
+            }
+            sound.extend(walked);
+        }
+        let mut vials = BTreeSet::new();
+        let mut places = BTreeSet::new();
+        for t in tubes {
+            if t.no.0 == 0 || t.replicate == 0 {
+                return Err(format!(
+                    "vial {}: vials and replicates are numbered from 1",
+                    t.no
+                ));
+            }
+            if !vials.insert(t.no) {
+                return Err(format!("vial {} is there twice", t.no));
+            }
+            match (t.role, t.level) {
+                (Role::Background, None) => {}
+                (Role::Background, Some(_)) => {
+                    return Err(format!("vial {} is background and has a level", t.no));
+                }
+                (_, None) => return Err(format!("vial {} has no level", t.no)),
+                (_, Some(l)) if !made.contains_key(&l) => {
+                    return Err(format!("vial {} is at level {l}, which is not there", t.no));
+                }
+                _ => {}
+            }
+            if !places.insert((t.role, t.level, t.replicate)) {
+                return Err(format!(
+                    "vial {} repeats the {} {} of its level",
+                    t.no,
+                    t.role,
+                    t.letter()
+                ));
+            }
+        }
+        if tubes.is_empty() {
+            return Err("there are no tubes".into());
+        }
+        Ok(())
+    }
+
+    /// The most levels a rack may have.
+    pub const MOST_LEVELS: usize = 1000;
+    /// The most tubes a rack may have.
+    pub const MOST_TUBES: usize = 10_000;
+}
