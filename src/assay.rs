@@ -11,7 +11,7 @@ mod reading;
 mod stamp;
 
 pub use amounts::{Background, Measured, Observed, background, counts_per_nm, measured, observed};
-pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet};
+pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet, SheetError};
 pub use protocol::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Fields, Incubation, Ligand,
     Nonspecific, Numbers, Protocol, ProtocolError, Receptor, ReceptorAmount, Separation, SitesUnit,

@@ -7,4 +7,6 @@
 #![cfg_attr(test, allow(clippy::unwrap_used, clippy::expect_used, clippy::panic))]
 
 pub mod assay;
+pub mod binding;
+pub mod fit;
 pub mod units;

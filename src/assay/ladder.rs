@@ -15,7 +15,37 @@ pub struct Sheet {
     pub ladder: Ladder,
 }
 
+/// A text is not a protocol with a ladder.
+#[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
+#[error("line {line}, column {column}: {what}")]
+pub struct SheetError {
+    /// The line, from 1.
+    pub line: usize,
+    /// The column, from 1.
+    pub column: usize,
+    /// What is wrong there.
+    pub what: String,
+}
+
 impl Sheet {
+    /// A commented sheet to start from; its content is invented.
+    pub const EXAMPLE: &'static str = include_str!("example.ron");
+
+    /// Reads a sheet written by a person: RON, in which an optional field may be given plainly.
+    ///
+    /// # Errors
+    /// Where the text stops making sense, and why.
+    pub fn parse(text: &str) -> Result<Sheet, SheetError> {
+        ron::Options::default()
+            .with_default_extension(ron::extensions::Extensions::IMPLICIT_SOME)
+            .from_str(text)
+            .map_err(|e| SheetError {
+                line: e.span.start.line,
+                column: e.span.start.col,
+                what: e.code.to_string(),
+            })
+    }
+
     /// The titration that this sheet opens.
     ///
     /// # Errors
@@ -282,4 +312,77 @@ fn geometric(
             }
         })
         .collect()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_example_lays_out_the_rack_it_shows() {
+        let t = Sheet::parse(Sheet::EXAMPLE).unwrap().titration().unwrap();
+        assert_eq!((t.levels.len(), t.tubes.len()), (8, 33));
+        // Background first in counting order and last by number; the rack itself is numbered from 1.
+        let first: Vec<u32> = t.tubes.iter().take(5).map(|t| t.no.0).collect();
+        assert_eq!(first, [33, 1, 2, 3, 4]);
+        assert_eq!(t.name(&t.tubes[4]), "vial 4, 0.05 nM, nonspecific b");
+    }
+
+    #[test]
+    fn a_geometric_ladder_keeps_its_ends_as_typed() {
+        let text = Sheet::EXAMPLE.replace(
+            r#"List(["0.05 nM", "0.1 nM", "0.2 nM", "0.5 nM", "1 nM", "2 nM", "5 nM", "10 nM"])"#,
+            r#"Geometric(lowest: "50 pM", highest: "5 nM", number: 5)"#,
+        );
+        let t = Sheet::parse(&text).unwrap().titration().unwrap();
+        let texts: Vec<&str> = t.levels.iter().map(|l| l.added.text.as_str()).collect();
+        assert_eq!(
+            texts,
+            ["50 pM", "0.1581 nM", "0.5000 nM", "1.581 nM", "5 nM"]
+        );
+    }
+
+    #[test]
+    fn what_is_wrong_is_named_with_its_place() {
+        let wrong = |from: &str, to: &str| {
+            assert!(Sheet::EXAMPLE.contains(from), "{from}");
+            let text = Sheet::EXAMPLE.replacen(from, to, 1);
+            match Sheet::parse(&text) {
+                Err(e) => e.to_string(),
+                Ok(sheet) => sheet.titration().unwrap_err().to_string(),
+            }
+        };
+        for (from, to, says) in [
+            ("\"0.5 mL\"", "\"0.5 nM\"", "mL, uL"),
+            ("\"0.5 mL\"", "\"-1 mL\"", "protocol.incubation.volume"),
+            ("\"0.5 mL\"", "\"0,5 mL\"", "decimal comma"),
+            ("\"45 %\"", "\"145 %\"", "protocol.counter.efficiency"),
+            ("\"0.05 nM\"", "\"0 nM\"", "ladder.levels"),
+            ("\"0.05 nM\"", "\"0,05 nM\"", "decimal comma"),
+            ("batch:", "badge:", "line 19, column 13"),
+            (
+                "confidence: 0.95",
+                "confidence: 95",
+                "protocol.numbers.confidence",
+            ),
+            (
+                "// except: [(level: 3,",
+                "except: [(level: 9,",
+                "levels are 1 to 8",
+            ),
+            (
+                "Protein(\"50 ug\")",
+                "Protein(\"0 ug\")",
+                "protocol.receptor.amount",
+            ),
+            (
+                "minutes: \"2 min\"",
+                "minutes: \"0 min\"",
+                "protocol.counter.minutes",
+            ),
+        ] {
+            let e = wrong(from, to);
+            assert!(e.contains(says), "{to}: {e}");
+        }
+    }
 }

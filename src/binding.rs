@@ -1,0 +1,39 @@
+//! Binding: isotherms and the mass balance that ties what is added to what is free.
+//!
+//! With `a = 1 + ns` where nonspecific label is taken from the free label during incubation, and
+//! `a = 1` where it sticks after separation, the balance of a tube is `a F + S(F) = LT`.
+
+mod balance;
+mod exact;
+mod one_class;
+
+pub use balance::{Block, Bound, Stuck, bound};
+pub use one_class::OneClass;
+
+/// A law of specific binding `S(F)` in nM, with exact derivatives.
+pub trait Isotherm: Copy {
+    /// How many parameters it has.
+    const DIM: usize;
+    /// What the parameters are called, in order.
+    const NAMES: &'static [&'static str];
+
+    /// From the natural logarithms of its parameters (each in nM).
+    fn from_ln(theta: &[f64]) -> Self;
+
+    /// Specific binding at a free concentration, both in nM.
+    fn specific(&self, free: f64) -> f64;
+
+    /// `dS/dF`, dimensionless.
+    fn slope(&self, free: f64) -> f64;
+
+    /// `dS / d ln p` for each parameter, in nM.
+    fn by_ln(&self, free: f64, out: &mut [f64]);
+
+    /// The free concentration that solves `a F + S(F) = total`, in nM.
+    fn free(&self, total: f64, a: f64) -> f64;
+
+    /// The isotherm with every dissociation constant `factor` times as large, as a competitor at a
+    /// fixed free concentration makes it: `factor = 1 + C/Ki` (Cheng & Prusoff 1973, Biochem
+    /// Pharmacol 22:3099; from memory).
+    fn blocked(&self, factor: f64) -> Self;
+}

@@ -1,0 +1,5 @@
+//! The numbers, held against published values and independent computations.
+#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+
+mod racks;
+mod reference_fits;
