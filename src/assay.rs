@@ -4,13 +4,18 @@
 //! it came from.
 
 mod amounts;
+mod described;
 mod ladder;
 mod protocol;
 mod rack;
 mod reading;
 mod stamp;
 
-pub use amounts::{Background, Measured, Observed, background, counts_per_nm, measured, observed};
+pub use amounts::{
+    Background, Measured, Observed, SitesScale, background, counts_per_nm, measured, observed,
+    sites_by_amount, sites_shown,
+};
+pub use described::FieldLine;
 pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet, SheetError};
 pub use protocol::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Fields, Incubation, Ligand,

@@ -6,7 +6,16 @@
 
 #![cfg_attr(test, allow(clippy::unwrap_used, clippy::expect_used, clippy::panic))]
 
+pub mod analysis;
+pub mod app;
 pub mod assay;
 pub mod binding;
+pub mod cli;
+pub mod figure;
 pub mod fit;
+pub mod notebook;
+pub mod report;
+pub mod shell;
+pub mod store;
 pub mod units;
+pub mod view;

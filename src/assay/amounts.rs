@@ -1,8 +1,8 @@
 //! Counts turned into amounts: rates, femtomoles, concentrations, each with its counting error.
 
-use super::protocol::Protocol;
+use super::protocol::{Protocol, ReceptorAmount, SitesUnit};
 use super::rack::{Kept, Role, Titration, Tube, TubeNo};
-use crate::units::FMOL_PER_NM_ML;
+use crate::units::{AVOGADRO, FMOL_PER_NM_ML};
 
 /// The counts of one tube, recounts added up.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -107,4 +107,49 @@ pub fn measured(
         bound_sd_nm: variance.sqrt() / per_nm,
         free_nm: added - bound_nm,
     })
+}
+
+/// A unit for sites and how many of it one nM of sites in the tube is.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct SitesScale {
+    /// The unit as written.
+    pub unit: &'static str,
+    /// How many of it are one nM in the tube.
+    pub per_nm: f64,
+}
+
+impl SitesScale {
+    /// Sites as a concentration in the tube.
+    pub const IN_TUBE: SitesScale = SitesScale {
+        unit: "nM in the tube",
+        per_nm: 1.0,
+    };
+}
+
+/// Sites by the amount of receptor preparation in a tube, where it is known: 1 nM in `v` mL is `1000 v` fmol.
+pub fn sites_by_amount(protocol: &Protocol) -> Option<SitesScale> {
+    let fmol = FMOL_PER_NM_ML * protocol.incubation.volume.base();
+    match &protocol.receptor.amount {
+        ReceptorAmount::Unknown => None,
+        ReceptorAmount::Protein(mg) => Some(SitesScale {
+            unit: "fmol/mg",
+            per_nm: fmol / mg.base(),
+        }),
+        ReceptorAmount::Cells(n) => Some(SitesScale {
+            unit: "sites/cell",
+            per_nm: fmol * AVOGADRO * 1e-15 / n.base(),
+        }),
+        ReceptorAmount::Tissue(mg) => Some(SitesScale {
+            unit: "pmol/g",
+            per_nm: fmol / mg.base(),
+        }),
+    }
+}
+
+/// The unit the protocol asks sites to be shown in.
+pub fn sites_shown(protocol: &Protocol) -> SitesScale {
+    match protocol.display.sites {
+        SitesUnit::InTube => SitesScale::IN_TUBE,
+        SitesUnit::PerAmount => sites_by_amount(protocol).unwrap_or(SitesScale::IN_TUBE),
+    }
 }

@@ -10,10 +10,12 @@ use std::fmt;
 
 /// The number of a level; it keeps it for life.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+#[serde(transparent)]
 pub struct LevelNo(pub u16);
 
 /// The permanent number of a vial.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+#[serde(transparent)]
 pub struct TubeNo(pub u32);
 
 impl fmt::Display for LevelNo {

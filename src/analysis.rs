@@ -1,0 +1,90 @@
+//! One call from a titration to all that is said of it.
+
+use crate::assay::{
+    Background, Measured, Observed, Suspicion, Titration, Tube, background, measured, observed,
+};
+use crate::fit::{Fit, Outcome, fit_rack};
+
+/// One tube with what its counts say.
+#[derive(Debug, Clone, PartialEq)]
+pub struct TubeResult {
+    /// Which tube.
+    pub tube: Tube,
+    /// Label added in nM; none for background.
+    pub added_nm: Option<f64>,
+    /// Its counts: those in use, or where every reading is flagged, all of them.
+    pub observed: Option<Observed>,
+    /// Bound and free, once a background is counted.
+    pub measured: Option<Measured>,
+    /// Specific binding in nM, `bound - ns x free`, once there is a fit.
+    pub specific_nm: Option<f64>,
+    /// Why it is left out, if every reading is flagged.
+    pub suspect: Option<Suspicion>,
+}
+
+/// All that is said of a titration as it stands.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Analysis {
+    /// The tubes in counting order.
+    pub tubes: Vec<TubeResult>,
+    /// The background vials taken together.
+    pub background: Option<Background>,
+    /// The fit, flagged readings left out.
+    pub outcome: Outcome,
+    /// The fit with no reading left out; `None` where nothing is flagged, since it is the same.
+    pub all_readings: Option<Outcome>,
+}
+
+impl Analysis {
+    /// The fit, flagged readings left out.
+    pub fn fit(&self) -> Option<&Fit> {
+        self.outcome.fit()
+    }
+
+    /// The fit with no reading left out.
+    pub fn without_flags(&self) -> &Outcome {
+        self.all_readings.as_ref().unwrap_or(&self.outcome)
+    }
+}
+
+/// Everything that can be said of a titration: a pure function, so that a notebook gives the same
+/// bits live and reloaded.
+pub fn analyse(titration: &Titration) -> Analysis {
+    let outcome = fit_rack(titration, true);
+    let all_readings = titration.has_flags().then(|| fit_rack(titration, false));
+    let blank = background(titration, true);
+    let ns = outcome.fit().map(|f| f.value("ns"));
+    let tubes = titration
+        .tubes
+        .iter()
+        .map(|tube| {
+            let counts =
+                observed(titration, tube.no, true).or_else(|| observed(titration, tube.no, false));
+            let amounts = counts
+                .zip(blank)
+                .and_then(|(counts, blank)| measured(titration, tube, counts, blank));
+            TubeResult {
+                tube: *tube,
+                added_nm: titration.added_nm(tube),
+                observed: counts,
+                measured: amounts,
+                specific_nm: amounts.zip(ns).map(|(m, ns)| m.bound_nm - ns * m.free_nm),
+                suspect: titration
+                    .is_suspect(tube.no)
+                    .then(|| {
+                        titration
+                            .kept(tube.no)
+                            .last()
+                            .and_then(|k| k.suspect.clone())
+                    })
+                    .flatten(),
+            }
+        })
+        .collect();
+    Analysis {
+        tubes,
+        background: blank,
+        outcome,
+        all_readings,
+    }
+}

@@ -1,0 +1,514 @@
+//! The bench: one tube at the prompt, a line being typed, and the keys of the reading loop.
+
+use super::keys::{self, Command, Key};
+use super::layers::{Layer, LineFor, ReasonFor};
+use super::{App, Effect, Wide};
+use crate::assay::{Reading, ReadingId, Role, Scale, Stamp, Titration, Tube, TubeNo};
+use crate::notebook::{Count, What};
+use crate::units::{Mark, NumberError, fixed, parse_counts, parse_decimal};
+use tui_input::{Input, InputRequest};
+
+/// Which field of a reading is being typed.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Field {
+    /// The number on the printout.
+    Value,
+    /// The minutes, after this text and number.
+    Minutes {
+        /// The number as typed.
+        raw: String,
+        /// The number.
+        value: f64,
+    },
+    /// A vial number to go to.
+    Vial,
+}
+
+/// The state of the bench.
+#[derive(Debug, Clone)]
+pub struct Bench {
+    /// The tube at the prompt.
+    pub at: TubeNo,
+    /// Its next reading is a recount.
+    pub again: bool,
+    /// What is being typed.
+    pub field: Field,
+    /// The line.
+    pub line: Input,
+    /// The reading kept last, which `*` and `+` are about while nothing else was chosen.
+    pub last: Option<(TubeNo, ReadingId)>,
+}
+
+/// The longest line: more than any number, less than anybody pastes by mistake.
+const MOST_LINE: usize = 24;
+
+impl Bench {
+    /// At the first tube without a reading, or the first of all.
+    pub fn at_first_unread(t: &Titration) -> Bench {
+        let first = t.tubes.first().map_or(TubeNo(1), |t| t.no);
+        Bench {
+            at: t.next_unread().unwrap_or(first),
+            again: false,
+            field: Field::Value,
+            line: Input::default(),
+            last: None,
+        }
+    }
+
+    fn go(&mut self, to: TubeNo) {
+        self.at = to;
+        self.again = false;
+        self.field = Field::Value;
+        self.line.reset();
+    }
+}
+
+/// A number for a reading in the scale of the protocol.
+fn parse_value(text: &str, scale: Scale, mark: Mark) -> Result<f64, NumberError> {
+    match scale {
+        Scale::Counts => parse_counts(text, mark),
+        Scale::Cpm => parse_decimal(text, mark).and_then(|v| {
+            if v < 0.0 {
+                Err(NumberError::Negative {
+                    text: text.trim().into(),
+                })
+            } else {
+                Ok(v)
+            }
+        }),
+    }
+}
+
+impl App {
+    /// The tube at the prompt.
+    pub fn tube(&self) -> Option<&Tube> {
+        self.titration().tube(self.bench.at)
+    }
+
+    /// Minutes offered for the tube at the prompt.
+    pub fn offered_minutes(&self) -> f64 {
+        let role = self.tube().map_or(Role::Total, |t| t.role);
+        self.titration().protocol.minutes_for(role)
+    }
+
+    pub(super) fn bench_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
+        let typing = !self.bench.line.value().is_empty();
+        match key {
+            Key::Char(c) if c.is_ascii_digit() || matches!(c, '.' | ',' | ' ') => {
+                return self.typed(c);
+            }
+            Key::Backspace => return self.edit(InputRequest::DeletePrevChar),
+            Key::Delete => return self.edit(InputRequest::DeleteNextChar),
+            Key::Left => return self.edit(InputRequest::GoToPrevChar),
+            Key::Right => return self.edit(InputRequest::GoToNextChar),
+            Key::Home => return self.edit(InputRequest::GoToStart),
+            Key::End => return self.edit(InputRequest::GoToEnd),
+            Key::Esc => {
+                self.clear();
+                return Vec::new();
+            }
+            _ => {}
+        }
+        let Some(command) = keys::bench_command(key) else {
+            if let Key::Char(c) = key {
+                self.refuse(format!("`{c}` does nothing here; ? shows the keys"));
+            }
+            return Vec::new();
+        };
+        let anytime = matches!(
+            command,
+            Command::Keep | Command::Minus | Command::Help | Command::Suspend
+        );
+        if typing && !anytime && key != Key::Ctrl('c') {
+            self.refuse("the line is not finished: Enter keeps it, - clears it");
+            return Vec::new();
+        }
+        match command {
+            Command::Keep => self.enter(now),
+            Command::Minus => self.minus(now),
+            Command::Suspect => self.suspect(now),
+            Command::Recount => self.recount(),
+            Command::GoTo => {
+                self.bench.field = Field::Vial;
+                self.message = super::Message::default();
+                Vec::new()
+            }
+            Command::Previous => self.walk(-1),
+            Command::Next => self.walk(1),
+            Command::Unread => {
+                match self.titration().next_unread() {
+                    Some(to) => self.choose(to),
+                    None => self.say("every tube has a reading or is lost"),
+                }
+                Vec::new()
+            }
+            Command::BringBack => self.bring_back(now),
+            Command::Lose => self.lose(),
+            Command::Note => {
+                self.layers.push(Layer::line(LineFor::Note(self.bench.at)));
+                Vec::new()
+            }
+            Command::Axis => {
+                self.look.log_axis = !self.look.log_axis;
+                Vec::new()
+            }
+            Command::View => {
+                self.look.wide = match self.look.wide {
+                    Wide::RackAndPlot => Wide::Plot,
+                    Wide::Plot => Wide::Tubes,
+                    Wide::Tubes => Wide::RackAndPlot,
+                };
+                Vec::new()
+            }
+            Command::Glyphs => {
+                self.look.fine = !self.look.fine;
+                Vec::new()
+            }
+            Command::Help => {
+                self.layers.push(Layer::Help { top: 0 });
+                Vec::new()
+            }
+            Command::Quit => self.leave(),
+            Command::Suspend => vec![Effect::Suspend],
+        }
+    }
+
+    fn typed(&mut self, c: char) -> Vec<Effect> {
+        if self.bench.field == Field::Vial && !c.is_ascii_digit() {
+            self.refuse("a vial number is typed in digits");
+            return Vec::new();
+        }
+        if self.bench.line.value().chars().count() >= MOST_LINE {
+            self.refuse(format!(
+                "a line holds at most {MOST_LINE} characters; - clears it"
+            ));
+            return vec![Effect::Bell];
+        }
+        self.edit(InputRequest::InsertChar(c))
+    }
+
+    fn edit(&mut self, request: InputRequest) -> Vec<Effect> {
+        self.bench.line.handle(request);
+        // What was said of an earlier line no longer holds for this one.
+        if self.message.refusal {
+            self.message = super::Message::default();
+        }
+        Vec::new()
+    }
+
+    /// Back to the first field of the tube at the prompt, nothing typed.
+    fn clear(&mut self) {
+        let at = self.bench.at;
+        self.bench.go(at);
+        self.message = super::Message::default();
+    }
+
+    fn enter(&mut self, now: Stamp) -> Vec<Effect> {
+        let text = self.bench.line.value().trim().to_string();
+        match self.bench.field.clone() {
+            Field::Vial => self.go_to(&text),
+            Field::Value if text.is_empty() => Vec::new(),
+            Field::Value => self.value(text, now),
+            Field::Minutes { raw, value } => self.minutes(&raw, value, &text, now),
+        }
+    }
+
+    fn go_to(&mut self, text: &str) -> Vec<Effect> {
+        if text.is_empty() {
+            self.clear();
+            return Vec::new();
+        }
+        let found = text
+            .parse()
+            .ok()
+            .map(TubeNo)
+            .filter(|no| self.titration().tube(*no).is_some());
+        match found {
+            Some(no) => self.choose(no),
+            None => {
+                let numbers = self.titration().tubes.iter().map(|t| t.no.0);
+                let (low, high) = (
+                    numbers.clone().min().unwrap_or(0),
+                    numbers.max().unwrap_or(0),
+                );
+                self.bench.line.reset();
+                self.refuse(format!(
+                    "there is no vial {text}: this rack has vials {low} to {high}"
+                ));
+            }
+        }
+        Vec::new()
+    }
+
+    /// Puts a tube at the prompt because the person chose it.
+    fn choose(&mut self, no: TubeNo) {
+        self.bench.go(no);
+        self.bench.last = None;
+        let kept = self.titration().kept(no);
+        let text = match (kept.last(), self.titration().lost.get(&no)) {
+            (Some(k), _) => {
+                let flag = k
+                    .suspect
+                    .as_ref()
+                    .map_or(String::new(), |s| format!(", suspect: {s}"));
+                let times = if kept.len() > 1 {
+                    format!(", {} counts in all", kept.len())
+                } else {
+                    String::new()
+                };
+                format!(
+                    "vial {no} has {}{times}{flag}; + recounts it, * flags it",
+                    crate::notebook::reading_in_words(&k.reading)
+                )
+            }
+            (None, Some(lost)) => format!("vial {no} is lost: {}", lost.why),
+            (None, None) => String::new(),
+        };
+        self.say(text);
+    }
+
+    fn walk(&mut self, by: isize) -> Vec<Effect> {
+        let tubes = &self.titration().tubes;
+        let here = tubes
+            .iter()
+            .position(|t| t.no == self.bench.at)
+            .unwrap_or(0);
+        let there = here
+            .saturating_add_signed(by)
+            .min(tubes.len().saturating_sub(1));
+        if let Some(no) = tubes.get(there).map(|t| t.no) {
+            self.choose(no);
+        }
+        Vec::new()
+    }
+
+    fn value(&mut self, raw: String, now: Stamp) -> Vec<Effect> {
+        let counter = &self.titration().protocol.counter;
+        let (fields, mark) = (counter.fields, counter.mark);
+        match parse_value(&raw, fields.scale(), mark) {
+            Err(e) => {
+                self.refuse(e.to_string());
+                vec![Effect::Bell]
+            }
+            Ok(value) if fields.with_minutes() => {
+                self.bench.line.reset();
+                self.bench.field = Field::Minutes { raw, value };
+                Vec::new()
+            }
+            Ok(value) => self.keep(raw, value, self.offered_minutes(), now),
+        }
+    }
+
+    fn minutes(&mut self, raw: &str, value: f64, text: &str, now: Stamp) -> Vec<Effect> {
+        let mark = self.titration().protocol.counter.mark;
+        let offered = self.offered_minutes();
+        let minutes = if text.is_empty() {
+            Ok(offered)
+        } else {
+            parse_decimal(text, mark)
+        };
+        match minutes {
+            Err(e) => {
+                self.refuse(format!("minutes: {e}"));
+                vec![Effect::Bell]
+            }
+            Ok(minutes) => {
+                let shown = if text.is_empty() {
+                    fixed(offered, 2).replace('.', &mark.char().to_string())
+                } else {
+                    text.into()
+                };
+                self.keep(format!("{raw} / {shown}"), value, minutes, now)
+            }
+        }
+    }
+
+    fn keep(&mut self, raw: String, value: f64, minutes: f64, now: Stamp) -> Vec<Effect> {
+        let scale = self.titration().protocol.counter.fields.scale();
+        let reading = Reading {
+            scale,
+            ..Reading::counts(raw, value, minutes)
+        };
+        let at = self.bench.at;
+        let count = if self.bench.again {
+            Count::again(at, reading)
+        } else {
+            Count::first(at, reading)
+        };
+        let Some((entry, effects)) = self.record(
+            What::Counted {
+                readings: vec![count],
+            },
+            now,
+        ) else {
+            return vec![Effect::Bell];
+        };
+        self.bench.last = Some((at, ReadingId(entry.n, 0)));
+        self.say(format!("kept   {}", self.notebook.describe(&entry)));
+        let next = self.after(at);
+        self.bench.go(next.unwrap_or(at));
+        effects
+    }
+
+    /// The next tube in counting order that wants a reading, from the one after `at` around to the start.
+    fn after(&self, at: TubeNo) -> Option<TubeNo> {
+        let t = self.titration();
+        let here = t.tubes.iter().position(|x| x.no == at).map_or(0, |i| i + 1);
+        let (before, behind) = t.tubes.split_at(here.min(t.tubes.len()));
+        behind
+            .iter()
+            .chain(before)
+            .map(|t| t.no)
+            .find(|no| t.wants_reading(*no))
+    }
+
+    fn minus(&mut self, now: Stamp) -> Vec<Effect> {
+        let untouched = self.bench.line.value().is_empty()
+            && self.bench.field == Field::Value
+            && !self.bench.again;
+        if !untouched {
+            self.clear();
+            return Vec::new();
+        }
+        let Some(n) = self.notebook.last_takeable() else {
+            self.say("nothing to take back");
+            return Vec::new();
+        };
+        let what = self
+            .notebook
+            .entry(n)
+            .map(|e| self.notebook.describe(e))
+            .unwrap_or_default();
+        let to = self.notebook.entry(n).and_then(|e| tube_of(&e.what));
+        match self.record(What::TakenBack(n), now) {
+            None => vec![Effect::Bell],
+            Some((_, effects)) => {
+                if let Some(to) = to {
+                    self.bench.go(to);
+                }
+                self.bench.last = None;
+                self.say(format!("taken back   {what}   (b brings it back)"));
+                effects
+            }
+        }
+    }
+
+    fn bring_back(&mut self, now: Stamp) -> Vec<Effect> {
+        let Some(n) = self.notebook.last_taken_back() else {
+            self.say("nothing to bring back");
+            return Vec::new();
+        };
+        let target = match self.notebook.entry(n).map(|e| &e.what) {
+            Some(What::TakenBack(target)) => *target,
+            _ => n,
+        };
+        match self.record(What::TakenBack(n), now) {
+            None => vec![Effect::Bell],
+            Some((_, effects)) => {
+                let what = self
+                    .notebook
+                    .entry(target)
+                    .map(|e| self.notebook.describe(e))
+                    .unwrap_or_default();
+                if let Some(next) = self.titration().next_unread() {
+                    self.bench.go(next);
+                }
+                self.say(format!("back again   {what}"));
+                effects
+            }
+        }
+    }
+
+    /// The reading that `*` and `+` are about: the one kept last, or the newest of the tube at the prompt.
+    fn about(&self) -> Option<(TubeNo, ReadingId)> {
+        let still =
+            |id: &ReadingId, no: &TubeNo| self.titration().kept(*no).iter().any(|k| k.id == *id);
+        self.bench
+            .last
+            .filter(|(no, id)| still(id, no))
+            .or_else(|| {
+                self.titration()
+                    .kept(self.bench.at)
+                    .last()
+                    .map(|k| (self.bench.at, k.id))
+            })
+    }
+
+    fn suspect(&mut self, now: Stamp) -> Vec<Effect> {
+        let Some((tube, id)) = self.about() else {
+            self.refuse("no reading to flag: keep one, or go to its vial with /");
+            return Vec::new();
+        };
+        let flagged = self
+            .titration()
+            .kept(tube)
+            .iter()
+            .any(|k| k.id == id && k.suspect.is_some());
+        if !flagged {
+            self.layers
+                .push(Layer::Reasons(ReasonFor::Suspect(tube, id)));
+            return Vec::new();
+        }
+        match self.record(What::Unflagged { reading: id }, now) {
+            None => vec![Effect::Bell],
+            Some((_, effects)) => {
+                self.say(format!("flag off   {}", self.tube_name(tube)));
+                effects
+            }
+        }
+    }
+
+    fn recount(&mut self) -> Vec<Effect> {
+        match self.about() {
+            None => self.refuse("no reading to add to: keep one, or go to its vial with /"),
+            Some((tube, _)) => {
+                self.bench.go(tube);
+                self.bench.again = true;
+                self.say(format!(
+                    "recount of {}: counts and minutes will be added",
+                    self.tube_name(tube)
+                ));
+            }
+        }
+        Vec::new()
+    }
+
+    fn lose(&mut self) -> Vec<Effect> {
+        let at = self.bench.at;
+        if self.titration().wants_reading(at) {
+            self.layers.push(Layer::Reasons(ReasonFor::Lost(at)));
+        } else {
+            self.refuse(format!(
+                "{} has a reading or is lost already; a reading is flagged with *",
+                self.tube_name(at)
+            ));
+        }
+        Vec::new()
+    }
+
+    pub(super) fn moved_on(&mut self, from: TubeNo) {
+        if let Some(next) = self.after(from) {
+            self.bench.go(next);
+        }
+    }
+
+    fn leave(&mut self) -> Vec<Effect> {
+        if self.saved.failed.is_some() && !self.is_saved() {
+            self.layers.push(Layer::LeaveUnsaved);
+            return Vec::new();
+        }
+        vec![Effect::Quit]
+    }
+}
+
+/// The tube an entry is about, if it is about one.
+fn tube_of(what: &What) -> Option<TubeNo> {
+    match what {
+        What::Counted { readings } => match readings.as_slice() {
+            [one] => Some(one.tube),
+            _ => None,
+        },
+        What::Lost { tube, .. } => Some(*tube),
+        _ => None,
+    }
+}

@@ -1,0 +1,335 @@
+//! The one table of keys: it decides what a key does, and help and hints are read off it.
+
+use crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
+
+/// A key as the program knows it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum Key {
+    /// A character.
+    Char(char),
+    /// A character with the control key.
+    Ctrl(char),
+    /// Enter, on either side of the keyboard.
+    Enter,
+    /// Rubs out the character before the cursor.
+    Backspace,
+    /// Rubs out the character at the cursor.
+    Delete,
+    /// The arrows.
+    Left,
+    /// Right.
+    Right,
+    /// Up.
+    Up,
+    /// Down.
+    Down,
+    /// To the start.
+    Home,
+    /// To the end.
+    End,
+    /// A page up.
+    PageUp,
+    /// A page down.
+    PageDown,
+    /// Tab.
+    Tab,
+    /// Tab backwards.
+    BackTab,
+    /// Escape.
+    Esc,
+}
+
+impl Key {
+    /// A key press of the terminal; `None` for releases and for keys without a meaning here.
+    pub fn from_terminal(e: &KeyEvent) -> Option<Key> {
+        if e.kind == KeyEventKind::Release {
+            return None;
+        }
+        let control = e.modifiers.contains(KeyModifiers::CONTROL);
+        if e.modifiers
+            .intersects(KeyModifiers::ALT | KeyModifiers::SUPER | KeyModifiers::META)
+        {
+            return None;
+        }
+        Some(match e.code {
+            KeyCode::Char(c) if control => Key::Ctrl(c.to_ascii_lowercase()),
+            KeyCode::Char(c) => Key::Char(c),
+            KeyCode::Enter => Key::Enter,
+            KeyCode::Backspace => Key::Backspace,
+            KeyCode::Delete => Key::Delete,
+            KeyCode::Left => Key::Left,
+            KeyCode::Right => Key::Right,
+            KeyCode::Up => Key::Up,
+            KeyCode::Down => Key::Down,
+            KeyCode::Home => Key::Home,
+            KeyCode::End => Key::End,
+            KeyCode::PageUp => Key::PageUp,
+            KeyCode::PageDown => Key::PageDown,
+            KeyCode::Tab => Key::Tab,
+            KeyCode::BackTab => Key::BackTab,
+            KeyCode::Esc => Key::Esc,
+            _ => return None,
+        })
+    }
+}
+
+/// What a key asks for at the bench.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum Command {
+    /// Keeps what is typed and goes on.
+    Keep,
+    /// Flags the last reading, or takes the flag off.
+    Suspect,
+    /// Clears the line, or takes back the last entry.
+    Minus,
+    /// Counts a tube once more.
+    Recount,
+    /// Goes to a vial by its number.
+    GoTo,
+    /// Goes to the tube before.
+    Previous,
+    /// Goes to the tube after.
+    Next,
+    /// Goes to the first tube without a reading.
+    Unread,
+    /// Brings back what was taken back.
+    BringBack,
+    /// Gives a tube up.
+    Lose,
+    /// Writes a note.
+    Note,
+    /// Linear or log axis.
+    Axis,
+    /// Rack and plot, plot alone, table of tubes.
+    View,
+    /// Braille or plain characters.
+    Glyphs,
+    /// Shows the keys.
+    Help,
+    /// Leaves.
+    Quit,
+    /// Stops the program for the shell, to come back with fg.
+    Suspend,
+}
+
+/// One row of the table.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Binding {
+    /// The keys that do it.
+    pub keys: &'static [Key],
+    /// The keys as shown.
+    pub shown: &'static str,
+    /// What they do.
+    pub command: Command,
+    /// In a word or two, for the line of hints; empty where it is not shown there.
+    pub hint: &'static str,
+    /// In a sentence, for help.
+    pub help: &'static str,
+    /// Whether it works with one hand on the keypad.
+    pub keypad: bool,
+}
+
+const fn row(
+    keys: &'static [Key],
+    shown: &'static str,
+    command: Command,
+    hint: &'static str,
+    help: &'static str,
+    keypad: bool,
+) -> Binding {
+    Binding {
+        keys,
+        shown,
+        command,
+        hint,
+        help,
+        keypad,
+    }
+}
+
+/// The keys of the bench.
+pub const BENCH: &[Binding] = &[
+    row(
+        &[Key::Enter],
+        "Enter",
+        Command::Keep,
+        "keep",
+        "keep what is typed and go on to the next tube",
+        true,
+    ),
+    row(
+        &[Key::Char('*')],
+        "*",
+        Command::Suspect,
+        "suspect",
+        "flag the reading just kept (or the one at the prompt) as suspect, or take its flag off",
+        true,
+    ),
+    row(
+        &[Key::Char('-')],
+        "-",
+        Command::Minus,
+        "take back",
+        "clear the line; on an empty line take back the newest entry",
+        true,
+    ),
+    row(
+        &[Key::Char('+')],
+        "+",
+        Command::Recount,
+        "recount",
+        "count the tube just kept (or the one at the prompt) once more; counts and minutes add up",
+        true,
+    ),
+    row(
+        &[Key::Char('/')],
+        "/",
+        Command::GoTo,
+        "vial number",
+        "go to a vial: / then its number, then Enter",
+        true,
+    ),
+    row(
+        &[Key::Up],
+        "Up",
+        Command::Previous,
+        "",
+        "go to the tube before",
+        false,
+    ),
+    row(
+        &[Key::Down, Key::Tab],
+        "Down",
+        Command::Next,
+        "",
+        "go to the tube after",
+        false,
+    ),
+    row(
+        &[Key::Char('g')],
+        "g",
+        Command::Unread,
+        "",
+        "go to the first tube without a reading",
+        false,
+    ),
+    row(
+        &[Key::Char('b')],
+        "b",
+        Command::BringBack,
+        "",
+        "bring back what was taken back last",
+        false,
+    ),
+    row(
+        &[Key::Char('l')],
+        "l",
+        Command::Lose,
+        "",
+        "give the tube at the prompt up as lost, with a reason",
+        false,
+    ),
+    row(
+        &[Key::Char('n')],
+        "n",
+        Command::Note,
+        "",
+        "write a note about the tube at the prompt",
+        false,
+    ),
+    row(
+        &[Key::Char('a')],
+        "a",
+        Command::Axis,
+        "",
+        "free on a linear or a log axis",
+        false,
+    ),
+    row(
+        &[Key::Char('v')],
+        "v",
+        Command::View,
+        "",
+        "rack and plot, plot alone, table of all tubes",
+        false,
+    ),
+    row(
+        &[Key::Char('i')],
+        "i",
+        Command::Glyphs,
+        "",
+        "fine or plain characters in the plot",
+        false,
+    ),
+    row(
+        &[Key::Char('?'), Key::Char('h')],
+        "?",
+        Command::Help,
+        "keys",
+        "this page",
+        false,
+    ),
+    row(
+        &[Key::Char('q'), Key::Ctrl('c')],
+        "q",
+        Command::Quit,
+        "",
+        "leave; everything is kept, and the titration resumes where it stopped",
+        false,
+    ),
+    row(
+        &[Key::Ctrl('z')],
+        "Ctrl-Z",
+        Command::Suspend,
+        "",
+        "stop for the shell; fg comes back",
+        false,
+    ),
+];
+
+/// What a key does at the bench.
+pub fn bench_command(key: Key) -> Option<Command> {
+    BENCH
+        .iter()
+        .find(|b| b.keys.contains(&key))
+        .map(|b| b.command)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use std::collections::HashSet;
+
+    #[test]
+    fn no_key_is_there_twice() {
+        let mut seen = HashSet::new();
+        for b in BENCH {
+            for k in b.keys {
+                assert!(seen.insert(*k), "{k:?}");
+            }
+            assert!(!b.help.is_empty() && !b.shown.is_empty());
+        }
+    }
+
+    #[test]
+    fn the_reading_loop_needs_the_keypad_alone() {
+        let loops = [
+            Command::Keep,
+            Command::Suspect,
+            Command::Minus,
+            Command::Recount,
+            Command::GoTo,
+        ];
+        for c in loops {
+            assert!(BENCH.iter().any(|b| b.command == c && b.keypad), "{c:?}");
+        }
+        for b in BENCH.iter().filter(|b| b.keypad) {
+            for k in b.keys {
+                assert!(
+                    matches!(k, Key::Enter | Key::Char('*' | '-' | '+' | '/')),
+                    "{k:?}"
+                );
+            }
+        }
+    }
+}

@@ -1,0 +1,199 @@
+//! What lies over the bench: a menu of reasons, a line of words, help, a question.
+
+use super::keys::{self, Key};
+use super::{App, Effect};
+use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
+use crate::notebook::What;
+use tui_input::{Input, InputRequest};
+
+/// What a reason is chosen for.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum ReasonFor {
+    /// A reading to be flagged.
+    Suspect(TubeNo, ReadingId),
+    /// A tube to be given up.
+    Lost(TubeNo),
+}
+
+/// What a line of words is for.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub enum LineFor {
+    /// The other reason, in words.
+    OtherReason(ReasonFor),
+    /// A note about a tube.
+    Note(TubeNo),
+}
+
+/// One layer; the topmost has the keys.
+#[derive(Debug, Clone)]
+pub enum Layer {
+    /// The digit menu of reasons.
+    Reasons(ReasonFor),
+    /// A line of words.
+    Line {
+        /// What for.
+        what: LineFor,
+        /// The line.
+        input: Input,
+    },
+    /// The keys, from a line down.
+    Help {
+        /// The first line shown.
+        top: u16,
+    },
+    /// The file does not hold everything: leave all the same?
+    LeaveUnsaved,
+}
+
+/// The longest line of words.
+const MOST_WORDS: usize = 200;
+
+impl Layer {
+    /// An empty line of words.
+    pub fn line(what: LineFor) -> Layer {
+        Layer::Line {
+            what,
+            input: Input::default(),
+        }
+    }
+}
+
+impl App {
+    pub(super) fn layer_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
+        if key == Key::Ctrl('z') {
+            return vec![Effect::Suspend];
+        }
+        match self.layers.last_mut() {
+            None => Vec::new(),
+            Some(Layer::Reasons(what)) => {
+                let what = *what;
+                self.reason_key(what, key, now)
+            }
+            Some(Layer::Line { what, input }) => match key {
+                Key::Enter => {
+                    let (what, words) = (what.clone(), input.value().trim().to_string());
+                    self.layers.pop();
+                    self.line_done(what, words, now)
+                }
+                Key::Esc => {
+                    self.layers.pop();
+                    Vec::new()
+                }
+                key => {
+                    edit_words(input, key, MOST_WORDS);
+                    Vec::new()
+                }
+            },
+            Some(Layer::Help { top }) => {
+                match key {
+                    Key::Down => *top = top.saturating_add(1).min(keys::BENCH.len() as u16),
+                    Key::Up => *top = top.saturating_sub(1),
+                    _ => {
+                        self.layers.pop();
+                    }
+                }
+                Vec::new()
+            }
+            Some(Layer::LeaveUnsaved) => match key {
+                Key::Char('y') => vec![Effect::Quit],
+                _ => {
+                    self.layers.pop();
+                    Vec::new()
+                }
+            },
+        }
+    }
+
+    fn reason_key(&mut self, what: ReasonFor, key: Key, now: Stamp) -> Vec<Effect> {
+        match key {
+            Key::Char(c) => match Reason::from_digit(c) {
+                Some(Reason::Other) => {
+                    self.layers.pop();
+                    self.layers.push(Layer::line(LineFor::OtherReason(what)));
+                    Vec::new()
+                }
+                Some(reason) => {
+                    self.layers.pop();
+                    self.reasoned(what, reason.into(), now)
+                }
+                None if matches!(c, '0' | '-' | 'q') => {
+                    self.layers.pop();
+                    Vec::new()
+                }
+                None => {
+                    self.refuse("a reason is one of the digits shown; 0 leaves it");
+                    Vec::new()
+                }
+            },
+            Key::Esc => {
+                self.layers.pop();
+                Vec::new()
+            }
+            _ => Vec::new(),
+        }
+    }
+
+    fn line_done(&mut self, what: LineFor, words: String, now: Stamp) -> Vec<Effect> {
+        match what {
+            LineFor::OtherReason(about) => self.reasoned(
+                about,
+                Suspicion {
+                    reason: Reason::Other,
+                    words,
+                },
+                now,
+            ),
+            LineFor::Note(_) if words.is_empty() => Vec::new(),
+            LineFor::Note(tube) => {
+                let what = What::Noted {
+                    tube: Some(tube),
+                    text: words,
+                };
+                self.recorded(what, now, "noted")
+            }
+        }
+    }
+
+    fn reasoned(&mut self, what: ReasonFor, why: Suspicion, now: Stamp) -> Vec<Effect> {
+        match what {
+            ReasonFor::Suspect(_, reading) => {
+                self.recorded(What::Flagged { reading, why }, now, "suspect")
+            }
+            ReasonFor::Lost(tube) => {
+                let effects = self.recorded(What::Lost { tube, why }, now, "lost");
+                if self.titration().lost.contains_key(&tube) {
+                    self.moved_on(tube);
+                }
+                effects
+            }
+        }
+    }
+
+    /// Records an entry and reads it back.
+    fn recorded(&mut self, what: What, now: Stamp, verb: &str) -> Vec<Effect> {
+        match self.record(what, now) {
+            None => vec![Effect::Bell],
+            Some((entry, effects)) => {
+                self.say(format!("{verb}   {}", self.notebook.describe(&entry)));
+                effects
+            }
+        }
+    }
+}
+
+/// A key in a line of words.
+fn edit_words(input: &mut Input, key: Key, most: usize) {
+    let request = match key {
+        Key::Char(c) if input.value().chars().count() < most && !c.is_control() => {
+            InputRequest::InsertChar(c)
+        }
+        Key::Backspace => InputRequest::DeletePrevChar,
+        Key::Delete => InputRequest::DeleteNextChar,
+        Key::Left => InputRequest::GoToPrevChar,
+        Key::Right => InputRequest::GoToNextChar,
+        Key::Home => InputRequest::GoToStart,
+        Key::End => InputRequest::GoToEnd,
+        _ => return,
+    };
+    input.handle(request);
+}

@@ -1,0 +1,132 @@
+//! A protocol in lines: one for every field, for a page to show and for two protocols to be compared.
+
+use super::protocol::{BlankKind, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled};
+use super::rack::{Level, Made};
+
+/// One field of a protocol with its value as typed; fields that say nothing have an empty value.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct FieldLine {
+    /// What the field is called.
+    pub name: String,
+    /// Its value.
+    pub value: String,
+}
+
+fn text<T: ToString>(value: Option<&T>) -> String {
+    value.map_or(String::new(), ToString::to_string)
+}
+
+impl Protocol {
+    /// Every field in the order of the protocol.
+    pub fn lines(&self) -> Vec<FieldLine> {
+        let blocked = match &self.nonspecific.unlabelled {
+            Unlabelled::SameLigand => "the same ligand".to_string(),
+            Unlabelled::Other { name, ki: Some(ki) } => format!("{name}, Ki {ki}"),
+            Unlabelled::Other { name, ki: None } => {
+                format!("{name}, Ki not known: full block assumed")
+            }
+        };
+        let amount = match &self.receptor.amount {
+            ReceptorAmount::Unknown => "not known".to_string(),
+            ReceptorAmount::Protein(m) => format!("{m} protein"),
+            ReceptorAmount::Cells(n) => format!("{n} cells"),
+            ReceptorAmount::Tissue(m) => format!("{m} tissue"),
+        };
+        let sticks = match self.nonspecific.sticks {
+            Sticks::ToPreparation => "to the preparation, during incubation",
+            Sticks::ToFilter => "to the filter or as trapped liquid, after separation",
+        };
+        let fields = match self.counter.fields {
+            Fields::Counts => "counts",
+            Fields::CountsMinutes => "counts, minutes",
+            Fields::Cpm => "cpm",
+            Fields::CpmMinutes => "cpm, minutes",
+        };
+        let blank = match self.counter.background.blank {
+            BlankKind::EmptyCounter => "empty counter",
+            BlankKind::Scintillant => "scintillant",
+            BlankKind::ScintillantAndFilter => "scintillant with unused filter",
+        };
+        let prior = match self.numbers.cv_prior {
+            None => "none".to_string(),
+            Some(p) => format!("{} %, sd of ln {}", 100.0 * p.centre, p.sd_ln),
+        };
+        let sites = match self.display.sites {
+            SitesUnit::PerAmount => "by the amount of receptor preparation",
+            SitesUnit::InTube => "in the tube",
+        };
+        [
+            ("title", self.title.clone()),
+            ("operator", self.operator.clone()),
+            ("ligand", self.ligand.name.clone()),
+            ("label", self.ligand.label.clone()),
+            (
+                "specific activity",
+                self.ligand.specific_activity.to_string(),
+            ),
+            ("activity date", text(self.ligand.activity_date.as_ref())),
+            ("lot", self.ligand.lot.clone()),
+            ("preparation", self.receptor.preparation.clone()),
+            ("batch", self.receptor.batch.clone()),
+            ("amount per tube", amount),
+            ("amount found by", self.receptor.method.clone()),
+            ("incubation volume", self.incubation.volume.to_string()),
+            ("temperature", text(self.incubation.temperature.as_ref())),
+            ("incubation time", text(self.incubation.time.as_ref())),
+            ("buffer", self.incubation.buffer.clone()),
+            ("vehicle", text(self.incubation.vehicle.as_ref())),
+            ("nonspecific sticks", sticks.into()),
+            ("blocked with", blocked),
+            ("unlabelled", self.nonspecific.concentration.to_string()),
+            ("fraction counted", self.separation.fraction.to_string()),
+            ("separation", self.separation.method.clone()),
+            ("filter", self.separation.filter.clone()),
+            ("washes", self.separation.washes.clone()),
+            ("wash time", text(self.separation.wash_time.as_ref())),
+            ("counter", self.counter.name.clone()),
+            ("efficiency", self.counter.efficiency.to_string()),
+            ("typed per vial", fields.into()),
+            ("counting time", self.counter.minutes.to_string()),
+            (
+                "background time",
+                self.counter.background.minutes.to_string(),
+            ),
+            ("background vials", blank.into()),
+            ("decimal mark", self.counter.mark.to_string()),
+            ("tube CV known", prior),
+            (
+                "dilution error",
+                format!("{} a step", self.numbers.dilution_error),
+            ),
+            (
+                "confidence",
+                format!("{} %", 100.0 * self.numbers.confidence),
+            ),
+            (
+                "concentrations in",
+                self.display.concentration.word().into(),
+            ),
+            ("sites shown", sites.into()),
+        ]
+        .into_iter()
+        .map(|(name, value)| FieldLine {
+            name: name.into(),
+            value,
+        })
+        .collect()
+    }
+}
+
+impl Level {
+    /// The level as a field, so that a correction of it can be shown like any other.
+    pub fn line(&self) -> FieldLine {
+        let made = match self.made {
+            Made::FromStock => "from stock".to_string(),
+            Made::FromLevel(from) => format!("from level {from}"),
+        };
+        FieldLine {
+            name: format!("level {}", self.no),
+            value: format!("{}, {made}", self.added),
+        }
+    }
+}

@@ -1,0 +1,292 @@
+//! What each command does.
+
+use super::args::{Args, Command, Format, Sitting};
+use super::failure::Failure;
+use super::{demos, out, table};
+use crate::analysis::analyse;
+use crate::app::{Look, Wide};
+use crate::assay::Sheet;
+use crate::figure::Glyphs;
+use crate::notebook::{Notebook, What};
+use crate::report::{self, Page};
+use crate::shell;
+use crate::store::{self, Holder, StoreError};
+use std::env;
+use std::fs;
+use std::io::{self, IsTerminal, Read};
+use std::path::Path;
+use std::process::ExitCode;
+
+pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
+    match args.command {
+        Command::New { example: true, .. } => out::result(Sheet::EXAMPLE)?,
+        Command::New {
+            file,
+            from,
+            operator,
+            ..
+        } => {
+            let (Some(file), Some(from)) = (file, from) else {
+                return Err(Failure::new(
+                    Failure::USAGE,
+                    "new wants a FILE and --from PROTOCOL.ron",
+                ));
+            };
+            new(&file, &from, operator)?;
+        }
+        Command::Open { file, sitting } => open(&file, sitting)?,
+        Command::Take {
+            file,
+            readings,
+            recount,
+            operator,
+        } => {
+            take(&file, readings.as_deref(), recount, operator)?;
+        }
+        Command::Summary {
+            file,
+            format,
+            ascii,
+        } => summary(&file, format, ascii)?,
+        Command::Check { file } => return check(&file),
+        Command::Demo { list: true, .. } => {
+            let lines: Vec<String> = demos::DEMOS
+                .iter()
+                .map(|d| format!("{:<12} {}\n", d.name, d.about))
+                .collect();
+            out::result(&lines.concat())?;
+        }
+        Command::Demo { name, sitting, .. } => demo(name.as_deref(), sitting)?,
+    }
+    Ok(ExitCode::SUCCESS)
+}
+
+/// Who is at the keyboard, as far as can be told.
+fn operator(named: Option<String>, protocol: &str) -> String {
+    let somebody = |s: &String| !s.trim().is_empty();
+    named
+        .filter(somebody)
+        .or_else(|| env::var("USER").ok().filter(somebody))
+        .or_else(|| env::var("LOGNAME").ok().filter(somebody))
+        .or_else(|| Some(protocol.to_string()).filter(somebody))
+        .unwrap_or_else(|| "not named".into())
+}
+
+fn read_text(path: &Path) -> Result<String, Failure> {
+    let io = |e: io::Error| match e.kind() {
+        io::ErrorKind::InvalidData => Failure::new(
+            Failure::DATA,
+            format!("{}: not a text in UTF-8", path.display()),
+        ),
+        _ => Failure::new(Failure::IO, format!("{}: {e}", path.display())),
+    };
+    if path == Path::new("-") {
+        let mut text = String::new();
+        io::stdin().lock().read_to_string(&mut text).map_err(io)?;
+        return Ok(text);
+    }
+    fs::read_to_string(path).map_err(io)
+}
+
+fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
+    let bad = |what: String| {
+        Failure::new(Failure::DATA, format!("{}: {what}", from.display()))
+            .hint("`rackside new --example` prints a protocol that works")
+    };
+    let sheet = Sheet::parse(&read_text(from)?).map_err(|e| bad(e.to_string()))?;
+    let t = sheet.titration().map_err(|e| bad(e.to_string()))?;
+    let who = operator(named, &t.protocol.operator);
+    let since = shell::now();
+    let notebook = Notebook::open(t.protocol, t.levels, t.tubes, since, &who)
+        .map_err(|e| bad(e.to_string()))?;
+    let opened = store::create(file, notebook, &Holder { who, since })?;
+    let t = opened.notebook.titration();
+    out::talk(&format!(
+        "{}: {} levels, {} vials; to the bench with `rackside open {}`",
+        file.display(),
+        t.levels.len(),
+        t.tubes.len(),
+        file.display()
+    ));
+    Ok(())
+}
+
+/// Notices about a file that was opened, to be said on stderr and on the screen.
+fn notices(path: &Path, changed: &[u32]) -> Vec<String> {
+    if changed.is_empty() {
+        return Vec::new();
+    }
+    let list: Vec<String> = changed.iter().map(ToString::to_string).collect();
+    let notice = format!("changed outside rackside: entries {}", list.join(", "));
+    out::talk(&format!("{}: {notice}", path.display()));
+    vec![notice]
+}
+
+fn open(path: &Path, sitting: Sitting) -> Result<(), Failure> {
+    if !on_a_terminal() {
+        return Err(Failure::new(
+            Failure::USAGE,
+            "open wants a terminal on standard input and output",
+        )
+        .hint("`rackside take` and `rackside summary` work without one"));
+    }
+    sit(path, sitting)
+}
+
+fn on_a_terminal() -> bool {
+    io::stdin().is_terminal() && io::stdout().is_terminal()
+}
+
+fn sit(path: &Path, sitting: Sitting) -> Result<(), Failure> {
+    let since = shell::now();
+    let who = operator(sitting.operator, "");
+    let (opened, notices) = match store::open_for_writing(
+        path,
+        &Holder {
+            who: who.clone(),
+            since,
+        },
+    ) {
+        Ok(opened) => {
+            let said = notices(path, &opened.changed);
+            (opened, said)
+        }
+        Err(e @ StoreError::Locked { .. }) => (store::open(path)?, vec![e.to_string()]),
+        Err(e) => return Err(e.into()),
+    };
+    shell::sit(opened, who, notices, look(sitting.ascii))?;
+    Ok(())
+}
+
+/// How the screen begins: fine characters where the locale and the terminal have them.
+fn look(ascii: bool) -> Look {
+    let fine = !ascii && glyphs(false) == Glyphs::Braille;
+    let (columns, rows) = crossterm::terminal::size().unwrap_or((80, 24));
+    Look {
+        fine,
+        log_axis: true,
+        wide: Wide::RackAndPlot,
+        columns,
+        rows,
+    }
+}
+
+fn glyphs(ascii: bool) -> Glyphs {
+    let set = |name: &str| env::var(name).ok().filter(|v| !v.is_empty());
+    let locale = set("LC_ALL")
+        .or_else(|| set("LC_CTYPE"))
+        .or_else(|| set("LANG"))
+        .unwrap_or_default();
+    let utf8 = locale
+        .to_ascii_lowercase()
+        .replace('-', "")
+        .contains("utf8");
+    let poor = matches!(set("TERM").as_deref(), Some("dumb" | "linux" | "vt100"));
+    if ascii || !utf8 || poor {
+        Glyphs::Ascii
+    } else {
+        Glyphs::Braille
+    }
+}
+
+fn take(
+    path: &Path,
+    readings: Option<&Path>,
+    recount: bool,
+    named: Option<String>,
+) -> Result<(), Failure> {
+    let source = readings.unwrap_or(Path::new("-"));
+    let text = read_text(source)?;
+    let name = if source == Path::new("-") {
+        "standard input".into()
+    } else {
+        source.display().to_string()
+    };
+    let since = shell::now();
+    let who = operator(named, "");
+    let mut opened = store::open_for_writing(
+        path,
+        &Holder {
+            who: who.clone(),
+            since,
+        },
+    )?;
+    notices(path, &opened.changed);
+    let counts = table::readings(&text, &name, opened.notebook.titration(), recount)?;
+    let n = counts.len();
+    let entry = opened
+        .notebook
+        .record(What::Counted { readings: counts }, since, &who)
+        .map_err(|e| Failure::new(Failure::DATA, format!("{name}: {e}; nothing was taken")))?;
+    opened
+        .text
+        .append(&entry)
+        .map_err(|e| Failure::new(Failure::DATA, format!("{name}: {e}; nothing was taken")))?;
+    let store::Access::Write(mut target) = opened.access else {
+        return Err(Failure::new(
+            Failure::IO,
+            format!("{}: not opened for writing", path.display()),
+        ));
+    };
+    target.save(&opened.text)?;
+    let (read, all) = opened.notebook.titration().progress();
+    let readings = if n == 1 { "reading" } else { "readings" };
+    out::talk(&format!(
+        "{}: {n} {readings} taken; {read} of {all} vials read",
+        path.display()
+    ));
+    Ok(())
+}
+
+fn page(opened: &store::Opened, format: Format, ascii: bool) -> Result<String, Failure> {
+    let t = opened.notebook.titration();
+    let analysis = analyse(t);
+    match format {
+        Format::Json => report::json(t, &analysis).map_err(|e| Failure::new(1, e.to_string())),
+        Format::Text => Ok(report::text(&Page {
+            notebook: &opened.notebook,
+            analysis: &analysis,
+            digest: opened.text.digest(),
+            changed: &opened.changed,
+            version: env!("CARGO_PKG_VERSION"),
+            glyphs: glyphs(ascii),
+        })),
+    }
+}
+
+fn summary(path: &Path, format: Format, ascii: bool) -> Result<(), Failure> {
+    let opened = store::open(path)?;
+    notices(path, &opened.changed);
+    out::result(&page(&opened, format, ascii)?)
+}
+
+fn check(path: &Path) -> Result<ExitCode, Failure> {
+    let opened = store::open(path)?;
+    let (read, all) = opened.notebook.titration().progress();
+    let chain = if opened.changed.is_empty() {
+        "as rackside wrote it"
+    } else {
+        "CHANGED OUTSIDE RACKSIDE"
+    };
+    out::result(&format!(
+        "{}: {chain}; {} entries, digest {}; {read} of {all} vials read\n",
+        path.display(),
+        opened.notebook.revision(),
+        opened.text.digest()
+    ))?;
+    if opened.changed.is_empty() {
+        return Ok(ExitCode::SUCCESS);
+    }
+    notices(path, &opened.changed);
+    Ok(ExitCode::from(Failure::DATA))
+}
+
+fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
+    let demo = demos::find(name)?;
+    if on_a_terminal() {
+        let path = demos::copy(demo)?;
+        return sit(&path, sitting);
+    }
+    let opened = store::carried(demo.name, demo.text)?;
+    out::result(&page(&opened, Format::Text, sitting.ascii)?)
+}

@@ -1,0 +1,245 @@
+//! Readings from a table: CSV to one list of counts, all or none, a bad row named by its line.
+
+use super::failure::Failure;
+use crate::assay::{LevelNo, Reading, Role, Titration, Tube, TubeNo};
+use crate::notebook::Count;
+use crate::units::{parse_counts, parse_decimal};
+use csv::{ReaderBuilder, StringRecord, Trim};
+use std::collections::BTreeMap;
+
+/// The columns that may stand in a table.
+const COLUMNS: [&str; 7] = [
+    "vial",
+    "level",
+    "role",
+    "replicate",
+    "counts",
+    "cpm",
+    "minutes",
+];
+
+/// Where the columns are.
+struct Places {
+    at: BTreeMap<&'static str, usize>,
+    by_vial: bool,
+    cpm: bool,
+}
+
+/// The readings of a table for a titration.
+///
+/// `source` is how the table is called in a message. With `recount`, a reading of a tube that has one is a recount.
+///
+/// # Errors
+/// The line and the column at fault, what was found and what is allowed; then nothing is taken.
+pub(super) fn readings(
+    text: &str,
+    source: &str,
+    titration: &Titration,
+    recount: bool,
+) -> Result<Vec<Count>, Failure> {
+    let bad = |line: u64, what: String| {
+        Failure::new(
+            Failure::DATA,
+            format!("{source} line {line}: {what}; nothing was taken"),
+        )
+    };
+    let text = text.strip_prefix('\u{feff}').unwrap_or(text);
+    let mut reader = ReaderBuilder::new()
+        .trim(Trim::All)
+        .comment(Some(b'#'))
+        .from_reader(text.as_bytes());
+    let header = reader.headers().map_err(|e| bad(1, e.to_string()))?.clone();
+    let header_line = header.position().map_or(1, csv::Position::line);
+    let places = places(&header).map_err(|e| bad(header_line, e))?;
+    let mut counts = Vec::new();
+    let mut seen: BTreeMap<TubeNo, u64> = BTreeMap::new();
+    for record in reader.records() {
+        let record = record.map_err(|e| {
+            let line = e.position().map_or(0, csv::Position::line);
+            bad(line, row_fault(&e))
+        })?;
+        let line = record.position().map_or(0, csv::Position::line);
+        let (tube, reading) = row(&record, &places, titration).map_err(|e| bad(line, e))?;
+        if let Some(before) = seen.insert(tube, line) {
+            return Err(bad(
+                line,
+                format!("vial {tube} is in line {before} already"),
+            ));
+        }
+        let has = !titration.kept(tube).is_empty();
+        if has && !recount {
+            let name = titration
+                .tube(tube)
+                .map_or(String::new(), |t| titration.name(t));
+            return Err(bad(
+                line,
+                format!("{name} has a reading already; --recount adds to it"),
+            ));
+        }
+        counts.push(if has {
+            Count::again(tube, reading)
+        } else {
+            Count::first(tube, reading)
+        });
+    }
+    if counts.is_empty() {
+        return Err(bad(header_line, "there is no row below the header".into()));
+    }
+    Ok(counts)
+}
+
+fn row_fault(e: &csv::Error) -> String {
+    match e.kind() {
+        csv::ErrorKind::UnequalLengths {
+            expected_len, len, ..
+        } => {
+            format!("{len} fields where the header has {expected_len}")
+        }
+        _ => e.to_string(),
+    }
+}
+
+fn places(header: &StringRecord) -> Result<Places, String> {
+    let mut at = BTreeMap::new();
+    for (i, name) in header.iter().enumerate() {
+        let known = COLUMNS.into_iter().find(|c| c.eq_ignore_ascii_case(name));
+        let Some(known) = known else {
+            return Err(format!(
+                "there is no column `{name}`; allowed are {}",
+                COLUMNS.join(", ")
+            ));
+        };
+        if at.insert(known, i).is_some() {
+            return Err(format!("the column `{known}` is there twice"));
+        }
+    }
+    let by_vial = at.contains_key("vial");
+    if !by_vial
+        && !(at.contains_key("role") && at.contains_key("level") && at.contains_key("replicate"))
+    {
+        return Err(
+            "a column `vial`, or `level`, `role` and `replicate`, must say which tube a row is"
+                .into(),
+        );
+    }
+    match (at.contains_key("counts"), at.contains_key("cpm")) {
+        (true, true) => {
+            Err("both `counts` and `cpm` are there; one of them says what was read".into())
+        }
+        (false, false) => Err("a column `counts` (or `cpm`) must say what was read".into()),
+        (_, cpm) => Ok(Places { at, by_vial, cpm }),
+    }
+}
+
+fn row(record: &StringRecord, places: &Places, t: &Titration) -> Result<(TubeNo, Reading), String> {
+    let field = |name: &str| {
+        places
+            .at
+            .get(name)
+            .and_then(|i| record.get(*i))
+            .unwrap_or("")
+    };
+    let tube = tube(&field, places, t)?;
+    let mark = t.protocol.counter.mark;
+    let minutes = match field("minutes") {
+        "" => t.protocol.minutes_for(tube.role),
+        text => parse_decimal(text, mark).map_err(|e| format!("minutes: {e}"))?,
+    };
+    let name = if places.cpm { "cpm" } else { "counts" };
+    let raw = field(name);
+    let value = if places.cpm {
+        parse_decimal(raw, mark)
+    } else {
+        parse_counts(raw, mark)
+    };
+    let value = value.map_err(|e| format!("{name}: {e}"))?;
+    let scale = if places.cpm {
+        crate::assay::Scale::Cpm
+    } else {
+        crate::assay::Scale::Counts
+    };
+    let reading = Reading {
+        scale,
+        ..Reading::counts(raw, value, minutes)
+    };
+    reading.check().map_err(|e| e.to_string())?;
+    Ok((tube.no, reading))
+}
+
+fn tube<'t>(
+    field: &impl Fn(&str) -> &'t str,
+    places: &Places,
+    t: &Titration,
+) -> Result<Tube, String> {
+    let by_place = place(field, t);
+    if !places.by_vial {
+        return by_place;
+    }
+    let text = field("vial");
+    let no = text
+        .parse()
+        .map(TubeNo)
+        .map_err(|_| format!("vial: `{text}` is not a vial number"))?;
+    let found = t
+        .tube(no)
+        .copied()
+        .ok_or_else(|| format!("vial: there is no vial {no} in this rack"))?;
+    // Where a row says both, they must agree: a table sorted by mistake is caught here.
+    if let Ok(other) = by_place
+        && other.no != no
+    {
+        return Err(format!(
+            "vial {no} is {}, but the row says {}",
+            t.name(&found),
+            t.name(&other)
+        ));
+    }
+    Ok(found)
+}
+
+/// The tube of a level, a role and a replicate.
+fn place<'t>(field: &impl Fn(&str) -> &'t str, t: &Titration) -> Result<Tube, String> {
+    let (level, role, replicate) = (field("level"), field("role"), field("replicate"));
+    let role = Role::from_word(role)
+        .ok_or_else(|| format!("role: `{role}` is not one of total, nonspecific, background"))?;
+    let level_no = match (role, level) {
+        (Role::Background, "") => None,
+        (Role::Background, other) => {
+            return Err(format!(
+                "level: `{other}`, but background has no level; leave it empty"
+            ));
+        }
+        (_, text) => {
+            let n: u16 = text
+                .parse()
+                .map_err(|_| format!("level: `{text}` is not the number of a level"))?;
+            if t.level(LevelNo(n)).is_none() {
+                return Err(format!(
+                    "level: there is no level {n}; this rack has {}",
+                    t.levels.len()
+                ));
+            }
+            Some(LevelNo(n))
+        }
+    };
+    let wanted = replicate_no(replicate)
+        .ok_or_else(|| format!("replicate: `{replicate}` is not a letter or a number from 1"))?;
+    t.tubes
+        .iter()
+        .find(|x| x.role == role && x.level == level_no && x.replicate == wanted)
+        .copied()
+        .ok_or_else(|| match level_no {
+            Some(l) => format!("there is no {role} {replicate} at level {l}"),
+            None => format!("there is no {role} {replicate}"),
+        })
+}
+
+fn replicate_no(text: &str) -> Option<u16> {
+    let mut chars = text.chars();
+    match (chars.next(), chars.next()) {
+        (Some(c), None) if c.is_ascii_alphabetic() => {
+            Some(u16::from(c.to_ascii_lowercase() as u8 - b'a' + 1))
+        }
+        _ => text.parse().ok().filter(|n| *n > 0),
+    }
+}

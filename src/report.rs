@@ -1,0 +1,8 @@
+//! What leaves the bench: a summary to read and one for programs.
+
+mod json;
+mod text;
+pub mod values;
+
+pub use json::json;
+pub use text::{CAUTION, Page, text};

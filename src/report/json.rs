@@ -1,0 +1,150 @@
+//! The summary for programs. Its keys are stable and documented in the README.
+
+use crate::analysis::{Analysis, TubeResult};
+use crate::assay::{Titration, sites_by_amount};
+use crate::fit::{Fit, Outcome};
+use serde::Serialize;
+
+/// The number of this layout; raised when a key changes its meaning or goes.
+const FORMAT: u32 = 1;
+
+#[derive(Serialize)]
+struct Summary<'a> {
+    format: u32,
+    title: &'a str,
+    tubes: Vec<JsonTube>,
+    fit: Option<JsonFit>,
+    without_flags: Option<JsonFit>,
+    too_early: Option<Vec<String>>,
+    no_convergence: bool,
+}
+
+#[derive(Serialize)]
+struct JsonTube {
+    vial: u32,
+    level: Option<u16>,
+    role: &'static str,
+    replicate: String,
+    added_nm: Option<f64>,
+    counts: Option<f64>,
+    minutes: Option<f64>,
+    bound_nm: Option<f64>,
+    bound_sd_nm: Option<f64>,
+    free_nm: Option<f64>,
+    specific_nm: Option<f64>,
+    suspect: bool,
+    suspect_reason: Option<String>,
+    lost: Option<String>,
+}
+
+#[derive(Serialize)]
+struct JsonFit {
+    model: &'static str,
+    tubes_used: usize,
+    minus2lnl: f64,
+    prior_term: f64,
+    aicc: Option<f64>,
+    cv: f64,
+    parameters: Vec<JsonParameter>,
+    sites: Option<JsonSites>,
+}
+
+#[derive(Serialize)]
+struct JsonParameter {
+    name: &'static str,
+    estimate: f64,
+    se_ln: Option<f64>,
+    low: Option<f64>,
+    high: Option<f64>,
+    at_floor: bool,
+}
+
+#[derive(Serialize)]
+struct JsonSites {
+    unit: &'static str,
+    estimate: f64,
+    low: Option<f64>,
+    high: Option<f64>,
+}
+
+/// A titration and its analysis as JSON, ending in a line feed.
+///
+/// # Errors
+/// Only if a number could not be written, which finite values rule out.
+pub fn json(titration: &Titration, analysis: &Analysis) -> Result<String, serde_json::Error> {
+    let (too_early, no_convergence) = match &analysis.outcome {
+        Outcome::TooEarly(missing) => (
+            Some(missing.iter().map(ToString::to_string).collect()),
+            false,
+        ),
+        Outcome::NoConvergence => (None, true),
+        Outcome::Fitted(_) => (None, false),
+    };
+    let summary = Summary {
+        format: FORMAT,
+        title: &titration.protocol.title,
+        tubes: analysis.tubes.iter().map(|t| tube(titration, t)).collect(),
+        fit: analysis.fit().map(|f| fit(titration, f)),
+        without_flags: analysis.without_flags().fit().map(|f| fit(titration, f)),
+        too_early,
+        no_convergence,
+    };
+    let mut text = serde_json::to_string_pretty(&summary)?;
+    text.push('\n');
+    Ok(text)
+}
+
+fn tube(titration: &Titration, t: &TubeResult) -> JsonTube {
+    JsonTube {
+        vial: t.tube.no.0,
+        level: t.tube.level.map(|l| l.0),
+        role: t.tube.role.word(),
+        replicate: t.tube.letter(),
+        added_nm: t.added_nm,
+        counts: t.observed.map(|o| o.counts),
+        minutes: t.observed.map(|o| o.minutes),
+        bound_nm: t.measured.map(|m| m.bound_nm),
+        bound_sd_nm: t.measured.map(|m| m.bound_sd_nm),
+        free_nm: t.measured.map(|m| m.free_nm),
+        specific_nm: t.specific_nm,
+        suspect: t.suspect.is_some(),
+        suspect_reason: t.suspect.as_ref().map(ToString::to_string),
+        lost: titration.lost.get(&t.tube.no).map(|l| l.why.to_string()),
+    }
+}
+
+fn fit(titration: &Titration, f: &Fit) -> JsonFit {
+    let parameters = f
+        .estimates
+        .iter()
+        .map(|e| JsonParameter {
+            name: e.name,
+            estimate: e.value,
+            se_ln: e.se_ln,
+            low: e.low.value(),
+            high: e.high.value(),
+            at_floor: e.at_floor,
+        })
+        .collect();
+    let sites = sites_by_amount(&titration.protocol)
+        .zip(f.estimate("sites_nm"))
+        .map(|(scale, e)| {
+            let of = |nm: f64| nm * scale.per_nm;
+            JsonSites {
+                unit: scale.unit,
+                estimate: of(e.value),
+                low: e.low.value().map(of),
+                high: e.high.value().map(of),
+            }
+        });
+    JsonFit {
+        model: f.model.id(),
+        tubes_used: f.tubes_used,
+        minus2lnl: f.minus2lnl,
+        prior_term: f.prior_term,
+        aicc: f.aicc,
+        cv: f.cv,
+        parameters,
+        sites,
+    }
+}

@@ -1,0 +1,388 @@
+//! The summary as a page of text for 80 columns.
+
+use super::values::{self, Shown};
+use crate::analysis::Analysis;
+use crate::assay::{FieldLine, Kept, Protocol, Reason, Role, Titration, Tube, sites_by_amount};
+use crate::figure::{Glyphs, Scale, isotherm, render};
+use crate::fit::{Fit, Outcome};
+use crate::notebook::{Notebook, What};
+use crate::units::{clean, fixed, grouped, significant};
+
+/// What every printed summary says about safety, once.
+pub const CAUTION: &str = "Research use only, not for diagnosis or treatment. Handling labelled material follows the local \
+rules and the responsible radiation-safety or safety officer; the program checks arithmetic, not safety.";
+
+/// The width of the page.
+const WIDTH: usize = 80;
+/// Rows of the plot.
+const PLOT_ROWS: usize = 16;
+/// Columns of the plot.
+const PLOT_COLUMNS: usize = 72;
+
+/// What the page is made of.
+#[derive(Debug, Clone, Copy)]
+pub struct Page<'a> {
+    /// The notebook.
+    pub notebook: &'a Notebook,
+    /// The analysis of it as it stands.
+    pub analysis: &'a Analysis,
+    /// The digest of the file: the link of its last entry.
+    pub digest: &'a str,
+    /// Entries that were changed outside the program.
+    pub changed: &'a [u32],
+    /// The version of the program.
+    pub version: &'a str,
+    /// The characters the plot may use.
+    pub glyphs: Glyphs,
+}
+
+/// The summary as text, ending in a line feed.
+pub fn text(page: &Page) -> String {
+    let mut out = Lines(String::new());
+    let t = page.notebook.titration();
+    head(&mut out, page, t);
+    result(&mut out, t, page.analysis);
+    plot(&mut out, page, t);
+    flags(&mut out, t);
+    rack(&mut out, t, page.analysis);
+    protocol(&mut out, &t.protocol);
+    amendments(&mut out, page.notebook);
+    notes(&mut out, t);
+    record(&mut out, page, t);
+    out.blank();
+    out.wrapped(CAUTION, "");
+    out.0
+}
+
+/// The page under construction.
+struct Lines(String);
+
+impl Lines {
+    fn line(&mut self, text: impl AsRef<str>) {
+        self.0.push_str(text.as_ref().trim_end());
+        self.0.push('\n');
+    }
+
+    fn blank(&mut self) {
+        self.0.push('\n');
+    }
+
+    fn title(&mut self, text: &str) {
+        self.blank();
+        let rest = WIDTH.saturating_sub(text.chars().count() + 1);
+        self.line(format!("{text} {}", "-".repeat(rest)));
+    }
+
+    /// Words broken to the width of the page, each line after the first begun with `indent`.
+    fn wrapped(&mut self, text: &str, indent: &str) {
+        let lead = text.len() - text.trim_start().len();
+        let mut line = " ".repeat(lead);
+        for word in text.split_whitespace() {
+            if !line.trim().is_empty() && line.chars().count() + 1 + word.chars().count() > WIDTH {
+                self.line(&line);
+                line = indent.to_string();
+            }
+            if !line.is_empty() && !line.ends_with(' ') {
+                line.push(' ');
+            }
+            line.push_str(word);
+        }
+        self.line(&line);
+    }
+}
+
+fn head(out: &mut Lines, page: &Page, t: &Titration) {
+    out.wrapped(&clean(&t.protocol.title), "");
+    let entries = page.notebook.entries();
+    let opened = entries.first().map_or(String::new(), |e| e.at.minute());
+    let newest = entries.last().map_or(String::new(), |e| e.at.minute());
+    let (read, all) = t.progress();
+    let lost = if t.lost.is_empty() {
+        String::new()
+    } else {
+        format!(", {} lost", t.lost.len())
+    };
+    out.line(format!(
+        "opened {opened}   newest entry {newest}   {read} of {all} vials read{lost}"
+    ));
+    if let Some((at, who)) = &t.closed {
+        out.line(format!("closed {} by {}", at.minute(), clean(who)));
+    }
+    if !page.changed.is_empty() {
+        let list: Vec<String> = page.changed.iter().map(ToString::to_string).collect();
+        out.wrapped(
+            &format!("CHANGED OUTSIDE RACKSIDE: entries {}", list.join(", ")),
+            "  ",
+        );
+    }
+}
+
+fn result(out: &mut Lines, t: &Titration, analysis: &Analysis) {
+    let level = significant(100.0 * t.protocol.numbers.confidence, 3);
+    out.title(&format!(
+        "Result, intervals {} %",
+        level.trim_end_matches(".0")
+    ));
+    outcome(out, t, &analysis.outcome);
+    if let Some(all) = &analysis.all_readings {
+        out.blank();
+        out.line("with suspects, no reading left out:");
+        outcome(out, t, all);
+    }
+}
+
+fn outcome(out: &mut Lines, t: &Titration, outcome: &Outcome) {
+    match outcome {
+        Outcome::Fitted(fit) => estimates(out, &t.protocol, fit, sample_tubes(t)),
+        Outcome::TooEarly(missing) => {
+            out.line("  too early for Kd; still wanted:");
+            for m in missing {
+                out.line(format!("    {m}"));
+            }
+        }
+        Outcome::NoConvergence => {
+            out.line("  no fit found for these readings: look for a reading typed wrong, or at the protocol");
+        }
+    }
+}
+
+fn sample_tubes(t: &Titration) -> usize {
+    t.tubes
+        .iter()
+        .filter(|x| x.role != Role::Background)
+        .count()
+}
+
+fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
+    let mut line = |name: &str, s: Shown, after: String| {
+        out.line(format!(
+            "  {name:<12}{:<22}{:<24}{after}",
+            s.value, s.interval
+        ));
+    };
+    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("pKd {p}"));
+    line("Kd", values::kd(protocol, fit), p_kd);
+    line("sites", values::sites(protocol, fit), String::new());
+    if sites_by_amount(protocol).is_some()
+        && values::sites(protocol, fit) != values::sites_in_tube(protocol, fit)
+    {
+        line("", values::sites_in_tube(protocol, fit), String::new());
+    }
+    line("ns", values::ns(fit), "nonspecific bound per free".into());
+    line("background", values::background(fit), String::new());
+    out.line(format!(
+        "  {}, {} of {tubes} tubes used, tube CV found {} %",
+        fit.model.words(),
+        fit.tubes_used,
+        significant(100.0 * fit.cv, 2)
+    ));
+    let aicc = fit.aicc.map_or("-".into(), |a| fixed(a, 3));
+    out.line(format!(
+        "  -2 ln L {}   prior terms {}   AICc {aicc}",
+        fixed(fit.minus2lnl, 3),
+        fixed(fit.prior_term, 3)
+    ));
+    out.line(format!("  {}", values::TAKEN_AS_EXACT));
+}
+
+fn plot(out: &mut Lines, page: &Page, t: &Titration) {
+    if page.analysis.tubes.iter().all(|x| x.measured.is_none()) {
+        return;
+    }
+    out.blank();
+    let figure = isotherm(t, page.analysis, Scale::Log10, PLOT_COLUMNS, PLOT_ROWS);
+    for l in render(&figure, PLOT_COLUMNS, PLOT_ROWS, page.glyphs)
+        .text()
+        .lines()
+    {
+        out.line(format!("  {l}"));
+    }
+    if t.has_flags() {
+        out.line("  x  suspect, left out of the fit");
+    }
+}
+
+fn flags(out: &mut Lines, t: &Titration) {
+    let flagged: Vec<(&Tube, &Kept)> = t
+        .tubes
+        .iter()
+        .flat_map(|x| t.kept(x.no).iter().map(move |k| (x, k)))
+        .filter(|(_, k)| k.suspect.is_some())
+        .collect();
+    let on_numbers = |k: &Kept| {
+        k.suspect
+            .as_ref()
+            .is_some_and(|s| s.reason == Reason::NumbersAlone)
+    };
+    for (title, alone) in [
+        ("Suspects, something was seen", false),
+        ("Suspects, on numbers alone", true),
+    ] {
+        let listed: Vec<_> = flagged
+            .iter()
+            .filter(|(_, k)| on_numbers(k) == alone)
+            .collect();
+        if listed.is_empty() {
+            continue;
+        }
+        out.title(title);
+        for (tube, k) in listed {
+            let why = k
+                .suspect
+                .as_ref()
+                .map_or(String::new(), ToString::to_string);
+            let reading = crate::notebook::reading_in_words(&k.reading);
+            out.wrapped(
+                &clean(&format!("  {}: {reading}, {why}", t.name(tube))),
+                "    ",
+            );
+        }
+    }
+    if !t.lost.is_empty() {
+        out.title("Lost tubes");
+        for (no, loss) in &t.lost {
+            let name = t.tube(*no).map_or(String::new(), |x| t.name(x));
+            out.wrapped(&clean(&format!("  {name}: {}", loss.why)), "    ");
+        }
+    }
+}
+
+fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
+    let unit = t.protocol.display.concentration;
+    out.title(&format!("Rack, amounts in {}", unit.word()));
+    out.line(
+        " vial    added  role               counts    min     bound       sd     free  specific",
+    );
+    let number = |nm: Option<f64>| nm.map_or(String::new(), |nm| significant(unit.from_nm(nm), 3));
+    let decimals = values::decimals(analysis, unit);
+    let amount = |nm: Option<f64>| nm.map_or(String::new(), |nm| fixed(unit.from_nm(nm), decimals));
+    for r in &analysis.tubes {
+        let lost = if t.lost.contains_key(&r.tube.no) {
+            "lost"
+        } else {
+            "."
+        };
+        let some_flag = t.kept(r.tube.no).iter().any(|k| k.suspect.is_some());
+        out.line(format!(
+            "{}{:>4} {:>8}  {:<15} {:>9} {:>6} {:>9} {:>8} {:>8} {:>9}",
+            if some_flag { "x" } else { " " },
+            r.tube.no,
+            number(r.added_nm),
+            format!("{} {}", r.tube.role, r.tube.letter()),
+            r.observed.map_or(lost.into(), |o| grouped(o.counts)),
+            r.observed.map_or(String::new(), |o| fixed(o.minutes, 2)),
+            amount(r.measured.map(|m| m.bound_nm)),
+            amount(r.measured.map(|m| m.bound_sd_nm)),
+            number(r.measured.map(|m| m.free_nm)),
+            amount(r.specific_nm),
+        ));
+    }
+    out.line("bound: as measured, nonspecific included; sd: of counting; free: added less bound;");
+    out.line("specific: bound less ns x free");
+}
+
+fn protocol(out: &mut Lines, p: &Protocol) {
+    out.title("Protocol");
+    for FieldLine { name, value } in p.lines().into_iter().filter(|l| !l.value.is_empty()) {
+        out.wrapped(
+            &format!("  {name:.<20} {}", clean(&value)),
+            "                       ",
+        );
+    }
+}
+
+fn amendments(out: &mut Lines, notebook: &Notebook) {
+    let mut begun = false;
+    for e in notebook.entries() {
+        let What::Amended {
+            protocol,
+            levels,
+            reason,
+        } = &e.what
+        else {
+            continue;
+        };
+        let Ok(before) = notebook.as_of(e.n - 1) else {
+            continue;
+        };
+        if !begun {
+            out.title("Amendments");
+            begun = true;
+        }
+        let taken = if notebook.is_live(e.n) {
+            ""
+        } else {
+            " (taken back)"
+        };
+        out.wrapped(
+            &clean(&format!("  {} {}: {reason}{taken}", e.at.minute(), e.who)),
+            "    ",
+        );
+        let fields = before.protocol.lines().into_iter().zip(protocol.lines());
+        let rungs = before
+            .levels
+            .iter()
+            .map(|l| l.line())
+            .zip(levels.iter().map(|l| l.line()));
+        for (old, new) in fields.chain(rungs).filter(|(old, new)| old != new) {
+            let empty = |v: &str| {
+                if v.is_empty() {
+                    "(none)".into()
+                } else {
+                    clean(v)
+                }
+            };
+            out.wrapped(
+                &format!(
+                    "    {}: {} > {}",
+                    new.name,
+                    empty(&old.value),
+                    empty(&new.value)
+                ),
+                "      ",
+            );
+        }
+    }
+}
+
+fn notes(out: &mut Lines, t: &Titration) {
+    if t.notes.is_empty() {
+        return;
+    }
+    out.title("Notes");
+    for n in &t.notes {
+        let about = n.tube.map_or(String::new(), |no| format!("vial {no}: "));
+        out.wrapped(&clean(&format!("  {about}{}", n.text)), "    ");
+    }
+}
+
+fn record(out: &mut Lines, page: &Page, t: &Titration) {
+    out.title("Record");
+    let mut hands: Vec<&str> = Vec::new();
+    for e in page.notebook.entries() {
+        if !hands.contains(&e.who.as_str()) {
+            hands.push(&e.who);
+        }
+    }
+    out.line(format!(
+        "  {} entries, digest {}",
+        page.notebook.revision(),
+        page.digest
+    ));
+    out.wrapped(
+        &clean(&format!("  written by {}", hands.join(", "))),
+        "    ",
+    );
+    for (at, by, digest) in &t.checked {
+        let now = if digest == page.digest {
+            ""
+        } else {
+            ", of an earlier state"
+        };
+        out.line(clean(&format!(
+            "  checked {} by {by}, digest {digest}{now}",
+            at.minute()
+        )));
+    }
+    out.line(format!("  rackside {}", page.version));
+}

@@ -1,0 +1,144 @@
+//! The estimates, with and without suspects, and what the newest tube shows.
+
+use super::style;
+use crate::analysis::Analysis;
+use crate::app::App;
+use crate::assay::{Protocol, TubeNo};
+use crate::fit::{Fit, Outcome};
+use crate::report::values::{self, Shown};
+use crate::units::{clean, significant};
+use ratatui::Frame;
+use ratatui::layout::Rect;
+use ratatui::text::{Line, Span};
+use ratatui::widgets::Paragraph;
+
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+    let mut lines = match &app.analysed {
+        None => vec![Line::styled(" fitting ...", style::quiet())],
+        Some(done) => estimates(app, &done.analysis),
+    };
+    lines.truncate(usize::from(area.height).saturating_sub(1));
+    while lines.len() + 1 < usize::from(area.height) {
+        lines.push(Line::default());
+    }
+    lines.push(newest(app));
+    frame.render_widget(Paragraph::new(lines), area);
+}
+
+fn estimates(app: &App, analysis: &Analysis) -> Vec<Line<'static>> {
+    let protocol = &app.titration().protocol;
+    match &analysis.outcome {
+        Outcome::TooEarly(missing) => {
+            let mut lines = vec![Line::styled(
+                " too early for Kd; still wanted:",
+                style::strong(),
+            )];
+            lines.extend(missing.iter().map(|m| Line::from(format!("   {m}"))));
+            lines
+        }
+        Outcome::NoConvergence => vec![
+            Line::styled(" no fit found for these readings", style::strong()),
+            Line::from("   look for a reading typed wrong, or at the protocol's units"),
+        ],
+        Outcome::Fitted(fit) => {
+            let mut lines = fitted(app, protocol, fit);
+            if let Some(all) = &analysis.all_readings {
+                beside(&mut lines, protocol, all.fit());
+            }
+            lines
+        }
+    }
+}
+
+/// A name in bold and what is said of it.
+fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
+    let interval = if shown.interval.is_empty() {
+        String::new()
+    } else {
+        format!("   {}", shown.interval)
+    };
+    Line::from(vec![
+        Span::raw(format!(" {name:<6}")),
+        Span::styled(shown.value.clone(), style::strong()),
+        Span::raw(format!("{interval}{after}")),
+    ])
+}
+
+fn fitted(app: &App, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
+    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("   pKd {p}"));
+    let of = app
+        .titration()
+        .tubes
+        .iter()
+        .filter(|t| t.level.is_some())
+        .count();
+    let stale = if app.is_current() {
+        ""
+    } else {
+        "   refitting ..."
+    };
+    let background = values::background(fit);
+    vec![
+        line("Kd", &values::kd(protocol, fit), &p_kd),
+        line("sites", &values::sites(protocol, fit), ""),
+        line(
+            "ns",
+            &values::ns(fit),
+            &format!("   background {}", background.value),
+        ),
+        Line::from(format!(
+            " {}   CV found {} %   {} of {of} tubes used   {}{stale}",
+            fit.model.words(),
+            significant(100.0 * fit.cv, 2),
+            fit.tubes_used,
+            values::TAKEN_AS_EXACT,
+        )),
+    ]
+}
+
+/// The column where the answer with suspects begins.
+const BESIDE: usize = 45;
+
+/// The same with no reading left out, beside the estimates.
+fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>) {
+    let texts = match all {
+        None => vec!["with suspects: no fit".to_string()],
+        Some(fit) => {
+            let one = |s: Shown| format!("{}  {}", s.value, s.interval);
+            vec![
+                format!("with suspects {}", one(values::kd(protocol, fit))),
+                format!("with suspects {}", one(values::sites(protocol, fit))),
+            ]
+        }
+    };
+    for (line, text) in lines.iter_mut().zip(texts) {
+        let gap = BESIDE.saturating_sub(line.width()).max(1);
+        line.push_span(Span::raw(" ".repeat(gap)));
+        line.push_span(Span::styled(format!("| {text}"), style::quiet()));
+    }
+}
+
+/// What the tube kept last or chosen shows, before any fit.
+fn newest(app: &App) -> Line<'static> {
+    let tube = app.bench.last.map_or(app.bench.at, |(no, _)| no);
+    Line::styled(amounts(app, tube).unwrap_or_default(), style::quiet())
+}
+
+fn amounts(app: &App, no: TubeNo) -> Option<String> {
+    let done = app.analysed.as_ref()?;
+    let r = done.analysis.tubes.iter().find(|t| t.tube.no == no)?;
+    let unit = app.titration().protocol.display.concentration;
+    let m = r.measured?;
+    let show = |nm: f64| significant(unit.from_nm(nm), 3);
+    let specific = r
+        .specific_nm
+        .map_or(String::new(), |s| format!("   specific {}", show(s)));
+    let name = clean(&format!("vial {no}"));
+    Some(format!(
+        " {name}   bound {} sd {}   free {}{specific}   {}",
+        show(m.bound_nm),
+        show(m.bound_sd_nm),
+        show(m.free_nm),
+        unit.word()
+    ))
+}

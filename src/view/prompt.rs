@@ -1,0 +1,150 @@
+//! The prompt: what was said, which tube is next, the line being typed, the keys.
+
+use super::style;
+use crate::app::{Access, App, Field, keys};
+use crate::assay::Scale;
+use crate::units::{clean, fixed};
+use ratatui::Frame;
+use ratatui::layout::{Position, Rect};
+use ratatui::text::{Line, Span};
+use ratatui::widgets::Paragraph;
+
+/// Bars that stand as long as what they say holds.
+pub(super) fn bars(app: &App) -> Vec<Line<'static>> {
+    let mut bars = Vec::new();
+    if let (Some(why), false) = (&app.saved.failed, app.is_saved()) {
+        bars.push(Line::styled(
+            format!(" NOT SAVED   {}   trying again ", clean(why)),
+            style::alarm(),
+        ));
+    }
+    if let Access::ReadOnly(why) = &app.access {
+        bars.push(Line::styled(
+            format!(" READ ONLY   {} ", clean(why)),
+            style::alarm(),
+        ));
+    }
+    bars.extend(
+        app.notices
+            .iter()
+            .map(|n| Line::styled(format!(" {} ", clean(n)), style::alarm())),
+    );
+    bars
+}
+
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+    let width = usize::from(area.width);
+    let (label, typed) = entry(app);
+    let cursor = label.chars().count() + typed.chars().take(app.bench.line.visual_cursor()).count();
+    let mut line = vec![
+        Span::raw(label),
+        Span::styled(typed.clone(), style::strong()),
+    ];
+    let saved = saved(app);
+    let used = line.iter().map(Span::width).sum::<usize>();
+    if used + saved.chars().count() + 2 < width {
+        line.push(Span::raw(
+            " ".repeat(width - used - saved.chars().count() - 1),
+        ));
+        line.push(Span::styled(saved, style::quiet()));
+    }
+    let said = Span::styled(
+        format!(" {}", clean(&app.message.text)),
+        if app.message.refusal {
+            style::strong()
+        } else {
+            ratatui::style::Style::new()
+        },
+    );
+    let mark = if app.message.refusal {
+        Span::styled(" !", style::alarm())
+    } else {
+        Span::raw("")
+    };
+    let lines = vec![
+        Line::from(vec![mark, said]),
+        next(app, width),
+        Line::from(line),
+        hints(),
+    ];
+    frame.render_widget(Paragraph::new(lines), area);
+    if app.layers.is_empty() {
+        let x = area.x + (cursor as u16).min(area.width.saturating_sub(1));
+        frame.set_cursor_position(Position::new(x, area.y + 2));
+    }
+}
+
+/// The tube at the prompt, its role in capitals, and how far the rack is.
+fn next(app: &App, width: usize) -> Line<'static> {
+    let t = app.titration();
+    let (read, all) = t.progress();
+    let progress = format!("{read} of {all} ");
+    let Some(tube) = app.tube() else {
+        return Line::default();
+    };
+    let added = tube
+        .level
+        .and_then(|l| t.level(l))
+        .map_or(String::new(), |l| format!("{}   ", clean(&l.added.text)));
+    let done = if t.next_unread().is_none() {
+        "   every tube has a reading or is lost"
+    } else {
+        ""
+    };
+    let again = if app.bench.again { "RECOUNT of " } else { "" };
+    let text = format!(
+        " {again}vial {}   {added}{} {}{done}",
+        tube.no,
+        tube.role.word().to_uppercase(),
+        tube.letter()
+    );
+    let gap = width
+        .saturating_sub(text.chars().count() + progress.chars().count())
+        .max(1);
+    Line::from(vec![
+        Span::styled(text, style::strong()),
+        Span::raw(format!("{}{progress}", " ".repeat(gap))),
+    ])
+}
+
+/// What is asked for, with its unit, and what is typed so far.
+fn entry(app: &App) -> (String, String) {
+    let counter = &app.titration().protocol.counter;
+    let mark = counter.mark.char().to_string();
+    let minutes = fixed(app.offered_minutes(), 2).replace('.', &mark);
+    let what = match counter.fields.scale() {
+        Scale::Counts => "gross counts",
+        Scale::Cpm => "gross cpm",
+    };
+    let typed = app.bench.line.value().to_string();
+    let label = match &app.bench.field {
+        Field::Vial => " go to vial / ".into(),
+        Field::Value if counter.fields.with_minutes() => format!(" {what} > "),
+        Field::Value if counter.fields.scale() == Scale::Counts => {
+            format!(" {what} in {minutes} min > ")
+        }
+        Field::Value => format!(" {what} over {minutes} min > "),
+        Field::Minutes { raw, .. } => format!(" {what} {raw} in minutes (Enter for {minutes}) > "),
+    };
+    (label, typed)
+}
+
+fn saved(app: &App) -> String {
+    match (&app.access, app.is_saved(), app.saved.at) {
+        (Access::ReadOnly(_), ..) => "read only".into(),
+        (_, true, Some(at)) => format!("saved {}", at.clock()),
+        (_, true, None) => "in the file".into(),
+        (_, false, _) if app.saved.failed.is_some() => "NOT SAVED".into(),
+        (_, false, _) => "saving ...".into(),
+    }
+}
+
+/// The keys of the reading loop.
+fn hints() -> Line<'static> {
+    let words: Vec<String> = keys::BENCH
+        .iter()
+        .filter(|b| !b.hint.is_empty())
+        .map(|b| format!("{} {}", b.shown, b.hint))
+        .collect();
+    Line::styled(format!(" {}", words.join("   ")), style::quiet())
+}

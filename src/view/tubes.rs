@@ -1,0 +1,84 @@
+//! Every tube with its amounts: counts, bound, free, specific.
+
+use super::style;
+use crate::app::App;
+use crate::report::values;
+use crate::units::{fixed, grouped, significant};
+use ratatui::Frame;
+use ratatui::layout::Rect;
+use ratatui::style::Style;
+use ratatui::text::Line;
+use ratatui::widgets::Paragraph;
+
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+    let t = app.titration();
+    let unit = t.protocol.display.concentration;
+    let head = format!(
+        " vial {:>8} {:<12} {:>8} {:>6} {:>9} {:>8} {:>8} {:>9}",
+        "added", "", "counts", "min", "bound", "sd", "free", "specific"
+    );
+    let head = Line::styled(format!("{head}  {}", unit.word()), style::quiet());
+    let mut here = 0;
+    let mut lines = Vec::new();
+    let number = |nm: Option<f64>| nm.map_or("-".into(), |nm| significant(unit.from_nm(nm), 3));
+    let decimals = app
+        .analysed
+        .as_ref()
+        .map_or(3, |a| values::decimals(&a.analysis, unit));
+    let amount = |nm: Option<f64>| nm.map_or("-".into(), |nm| fixed(unit.from_nm(nm), decimals));
+    let results = app
+        .analysed
+        .as_ref()
+        .map(|a| a.analysis.tubes.as_slice())
+        .unwrap_or_default();
+    for (i, tube) in t.tubes.iter().enumerate() {
+        let at = app.bench.at == tube.no;
+        if at {
+            here = i;
+        }
+        let added = number(t.added_nm(tube));
+        let role = format!("{} {}", tube.role, tube.letter());
+        // The newest analysis may be of a moment ago; the readings themselves are always of now.
+        let counts = crate::assay::observed(t, tube.no, false);
+        let r = results
+            .iter()
+            .find(|r| r.tube.no == tube.no && counts.is_some());
+        let m = r.and_then(|r| r.measured);
+        let remark = match (
+            t.lost.get(&tube.no),
+            t.kept(tube.no)
+                .iter()
+                .rev()
+                .find_map(|k| k.suspect.as_ref()),
+        ) {
+            (Some(l), _) => format!("  lost, {}", l.why.reason),
+            (None, Some(s)) => format!("  x {}", s.reason),
+            (None, None) => String::new(),
+        };
+        let text = format!(
+            "{}{:>4} {:>8} {:<14} {:>6} {:>6} {:>9} {:>8} {:>8} {:>9}{}",
+            if at { ">" } else { " " },
+            tube.no,
+            added,
+            role,
+            counts.map_or(".".into(), |o| grouped(o.counts)),
+            counts.map_or(String::new(), |o| fixed(o.minutes, 2)),
+            amount(m.map(|m| m.bound_nm)),
+            amount(m.map(|m| m.bound_sd_nm)),
+            number(m.map(|m| m.free_nm)),
+            amount(r.and_then(|r| r.specific_nm)),
+            remark,
+        );
+        lines.push(Line::styled(
+            text,
+            if at { style::strong() } else { Style::new() },
+        ));
+    }
+    let room = usize::from(area.height).saturating_sub(1).max(1);
+    let top = here
+        .saturating_sub(room / 2)
+        .min(lines.len().saturating_sub(room));
+    let mut shown = vec![head];
+    shown.extend(lines.into_iter().skip(top).take(room));
+    frame.render_widget(Paragraph::new(shown), area);
+}
