@@ -177,6 +177,11 @@ impl App {
         self.notebook.titration()
     }
 
+    /// The last part of the file's path.
+    pub fn file_name(&self) -> &str {
+        self.file.rsplit(['/', '\\']).next().unwrap_or(&self.file)
+    }
+
     /// Whether the newest analysis is of the newest entry.
     pub fn is_current(&self) -> bool {
         self.analysed

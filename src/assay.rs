@@ -22,6 +22,8 @@ pub use protocol::{
     Nonspecific, Numbers, Protocol, ProtocolError, Receptor, ReceptorAmount, Separation, SitesUnit,
     Sticks, Unlabelled,
 };
-pub use rack::{Kept, Level, LevelNo, Loss, Made, Note, Role, Titration, Tube, TubeNo};
+pub use rack::{
+    Kept, Level, LevelNo, Loss, Made, Note, Role, Titration, Tube, TubeNo, replicate_letter,
+};
 pub use reading::{Reading, ReadingError, ReadingId, Reason, Scale, Suspicion};
 pub use stamp::{Stamp, StampError};

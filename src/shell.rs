@@ -39,6 +39,11 @@ pub fn now() -> Stamp {
     Stamp::new(at, TimeZone::system().to_offset(at))
 }
 
+/// Columns and rows of the terminal, or 80 by 24 where it does not say.
+pub fn size() -> (u16, u16) {
+    crossterm::terminal::size().unwrap_or((80, 24))
+}
+
 /// Why a sitting ended badly.
 #[derive(Debug, thiserror::Error)]
 #[non_exhaustive]

@@ -13,7 +13,7 @@ pub use measure::{
     SpecificActivity, Typed, UnitError, Volume,
 };
 pub use number::{Mark, NumberError, parse_counts, parse_decimal};
-pub use show::{clean, fixed, grouped, significant};
+pub use show::{clean, fixed, grouped, short, significant};
 
 /// The Avogadro constant in 1/mol, exact since the 2019 revision of the SI (BIPM, SI Brochure, 9th edition).
 pub const AVOGADRO: f64 = 6.022_140_76e23;

@@ -64,7 +64,7 @@ fn too_small(frame: &mut Frame, area: Rect) {
 
 fn draw_title(frame: &mut Frame, area: Rect, app: &App) {
     let title = crate::units::clean(&app.titration().protocol.title);
-    let file = crate::units::clean(&app.file);
+    let file = crate::units::clean(app.file_name());
     let room = usize::from(area.width).saturating_sub(2);
     let file = style::shortened(&file, room / 2);
     let title = style::shortened(&title, room.saturating_sub(file.chars().count() + 2));

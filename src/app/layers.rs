@@ -16,7 +16,7 @@ pub enum ReasonFor {
 }
 
 /// What a line of words is for.
-#[derive(Debug, Clone, PartialEq, Eq)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum LineFor {
     /// The other reason, in words.
     OtherReason(ReasonFor),
@@ -71,7 +71,7 @@ impl App {
             }
             Some(Layer::Line { what, input }) => match key {
                 Key::Enter => {
-                    let (what, words) = (what.clone(), input.value().trim().to_string());
+                    let (what, words) = (*what, input.value().trim().to_string());
                     self.layers.pop();
                     self.line_done(what, words, now)
                 }

@@ -103,12 +103,12 @@ pub struct Tube {
 impl Tube {
     /// The replicate as a letter, or as a number past z.
     pub fn letter(&self) -> String {
-        letter(self.replicate)
+        replicate_letter(self.replicate)
     }
 }
 
 /// `1` as `a`, `2` as `b`, `27` as `27`.
-fn letter(replicate: u16) -> String {
+pub fn replicate_letter(replicate: u16) -> String {
     match u8::try_from(replicate) {
         Ok(n @ 1..=26) => char::from(b'a' + n - 1).to_string(),
         _ => replicate.to_string(),
@@ -208,6 +208,11 @@ impl Titration {
     pub fn is_suspect(&self, no: TubeNo) -> bool {
         let kept = self.kept(no);
         !kept.is_empty() && kept.iter().all(|k| k.suspect.is_some())
+    }
+
+    /// Whether any reading of a tube is flagged.
+    pub fn has_flag(&self, no: TubeNo) -> bool {
+        self.kept(no).iter().any(|k| k.suspect.is_some())
     }
 
     /// Whether any flag stands.

@@ -161,7 +161,7 @@ fn sit(path: &Path, sitting: Sitting) -> Result<(), Failure> {
 /// How the screen begins: fine characters where the locale and the terminal have them.
 fn look(ascii: bool) -> Look {
     let fine = !ascii && glyphs(false) == Glyphs::Braille;
-    let (columns, rows) = crossterm::terminal::size().unwrap_or((80, 24));
+    let (columns, rows) = shell::size();
     Look {
         fine,
         log_axis: true,

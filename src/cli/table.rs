@@ -114,9 +114,10 @@ fn places(header: &StringRecord) -> Result<Places, String> {
         }
     }
     let by_vial = at.contains_key("vial");
-    if !by_vial
-        && !(at.contains_key("role") && at.contains_key("level") && at.contains_key("replicate"))
-    {
+    let by_place = ["level", "role", "replicate"]
+        .iter()
+        .all(|c| at.contains_key(c));
+    if !(by_vial || by_place) {
         return Err(
             "a column `vial`, or `level`, `role` and `replicate`, must say which tube a row is"
                 .into(),

@@ -119,7 +119,8 @@ fn polished<E: Evidence>(
             ended = Ended::Converged;
         }
         let next_cost = evidence.cost(&next);
-        if !(next_cost - cost <= rounding(evidence.scale(), cost)) {
+        let rise = next_cost - cost;
+        if rise.is_nan() || rise > rounding(evidence.scale(), cost) {
             break;
         }
         theta = next;

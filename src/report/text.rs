@@ -6,7 +6,7 @@ use crate::assay::{FieldLine, Kept, Protocol, Reason, Role, Titration, Tube, sit
 use crate::figure::{Glyphs, Scale, isotherm, render};
 use crate::fit::{Fit, Outcome};
 use crate::notebook::{Notebook, What};
-use crate::units::{clean, fixed, grouped, significant};
+use crate::units::{clean, fixed, grouped, short, significant};
 
 /// What every printed summary says about safety, once.
 pub const CAUTION: &str = "Research use only, not for diagnosis or treatment. Handling labelled material follows the local \
@@ -262,12 +262,13 @@ fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         } else {
             "."
         };
-        let some_flag = t.kept(r.tube.no).iter().any(|k| k.suspect.is_some());
+        let some_flag = t.has_flag(r.tube.no);
         out.line(format!(
             "{}{:>4} {:>8}  {:<15} {:>9} {:>6} {:>9} {:>8} {:>8} {:>9}",
             if some_flag { "x" } else { " " },
             r.tube.no,
-            number(r.added_nm),
+            r.added_nm
+                .map_or(String::new(), |nm| short(unit.from_nm(nm), 4)),
             format!("{} {}", r.tube.role, r.tube.letter()),
             r.observed.map_or(lost.into(), |o| grouped(o.counts)),
             r.observed.map_or(String::new(), |o| fixed(o.minutes, 2)),

@@ -139,3 +139,6 @@ pub fn decimals(analysis: &Analysis, unit: DisplayUnit) -> usize {
 
 /// What the intervals leave out.
 pub const TAKEN_AS_EXACT: &str = "stock, efficiency, volume, protein taken as exact";
+
+/// The same in the room of a screen.
+pub const TAKEN_AS_EXACT_SHORT: &str = "stock, efficiency, volume taken as exact";

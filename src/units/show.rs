@@ -22,6 +22,16 @@ pub fn significant(x: f64, digits: usize) -> String {
     format!("{x:.decimals$}")
 }
 
+/// A number to at most `digits` significant digits, no zeros behind the last that says something.
+pub fn short(x: f64, digits: usize) -> String {
+    let text = significant(x, digits);
+    if text.contains('.') && !text.contains('e') {
+        text.trim_end_matches('0').trim_end_matches('.').into()
+    } else {
+        text
+    }
+}
+
 /// A number with a fixed number of decimals, no minus sign on a zero.
 pub fn fixed(x: f64, decimals: usize) -> String {
     let s = format!("{x:.decimals$}");

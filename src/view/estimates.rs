@@ -3,7 +3,7 @@
 use super::style;
 use crate::analysis::Analysis;
 use crate::app::App;
-use crate::assay::{Protocol, TubeNo};
+use crate::assay::{Protocol, TubeNo, sites_shown};
 use crate::fit::{Fit, Outcome};
 use crate::report::values::{self, Shown};
 use crate::units::{clean, significant};
@@ -55,7 +55,7 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
     let interval = if shown.interval.is_empty() {
         String::new()
     } else {
-        format!("   {}", shown.interval)
+        format!("  {}", shown.interval)
     };
     Line::from(vec![
         Span::raw(format!(" {name:<6}")),
@@ -65,18 +65,13 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
 }
 
 fn fitted(app: &App, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
-    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("   pKd {p}"));
+    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("  pKd {p}"));
     let of = app
         .titration()
         .tubes
         .iter()
         .filter(|t| t.level.is_some())
         .count();
-    let stale = if app.is_current() {
-        ""
-    } else {
-        "   refitting ..."
-    };
     let background = values::background(fit);
     vec![
         line("Kd", &values::kd(protocol, fit), &p_kd),
@@ -87,34 +82,49 @@ fn fitted(app: &App, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
             &format!("   background {}", background.value),
         ),
         Line::from(format!(
-            " {}   CV found {} %   {} of {of} tubes used   {}{stale}",
+            " {}   CV {} %   {} of {of} used   {}",
             fit.model.words(),
             significant(100.0 * fit.cv, 2),
             fit.tubes_used,
-            values::TAKEN_AS_EXACT,
+            if app.is_current() {
+                values::TAKEN_AS_EXACT_SHORT
+            } else {
+                "refitting ..."
+            },
         )),
     ]
 }
 
 /// The column where the answer with suspects begins.
-const BESIDE: usize = 45;
+const BESIDE: usize = 42;
 
-/// The same with no reading left out, beside the estimates.
+/// The same with no reading left out, beside the estimates; units stand on the left.
 fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>) {
-    let texts = match all {
-        None => vec!["with suspects: no fit".to_string()],
-        Some(fit) => {
-            let one = |s: Shown| format!("{}  {}", s.value, s.interval);
-            vec![
-                format!("with suspects {}", one(values::kd(protocol, fit))),
-                format!("with suspects {}", one(values::sites(protocol, fit))),
-            ]
+    let bare = |s: Shown, unit: &str| {
+        let value = s.value.replace(&format!(" {unit}"), "");
+        // An open end is said by the value itself: `above 3.1`.
+        if value.starts_with("above") {
+            value
+        } else {
+            format!("{value}  {}", s.interval)
         }
+    };
+    let texts = match all {
+        None => ["no fit".to_string(), String::new()],
+        Some(fit) => [
+            bare(
+                values::kd(protocol, fit),
+                protocol.display.concentration.word(),
+            ),
+            bare(values::sites(protocol, fit), sites_shown(protocol).unit),
+        ],
     };
     for (line, text) in lines.iter_mut().zip(texts) {
         let gap = BESIDE.saturating_sub(line.width()).max(1);
-        line.push_span(Span::raw(" ".repeat(gap)));
-        line.push_span(Span::styled(format!("| {text}"), style::quiet()));
+        line.push_span(Span::styled(
+            format!("{}| with suspects {text}", " ".repeat(gap)),
+            style::quiet(),
+        ));
     }
 }
 

@@ -2,8 +2,8 @@
 
 use super::style;
 use crate::app::App;
-use crate::assay::{LevelNo, Role, Titration, Tube, observed};
-use crate::units::{FMOL_PER_NM_ML, fixed, grouped, significant};
+use crate::assay::{LevelNo, Role, Titration, Tube, observed, replicate_letter};
+use crate::units::{FMOL_PER_NM_ML, fixed, short, significant};
 use ratatui::Frame;
 use ratatui::layout::Rect;
 use ratatui::style::Style;
@@ -18,7 +18,11 @@ pub(super) struct Table {
     here: usize,
     width: u16,
     height: u16,
+    flagged: bool,
 }
+
+/// The gap before the first column of a role.
+const GROUP: usize = 2;
 
 /// How many tubes of a role there are at the level that has most.
 fn widest(t: &Titration, role: Role) -> usize {
@@ -39,18 +43,8 @@ fn cell(app: &App, tube: &Tube, width: usize) -> (String, Style) {
         "lost".into()
     } else if let Some(o) = observed(t, tube.no, false) {
         // A suspect's cross stands before its number, as it does in the plot.
-        let flag = if t.kept(tube.no).iter().any(|k| k.suspect.is_some()) {
-            "x"
-        } else {
-            ""
-        };
-        let counts = grouped(o.counts.round());
-        let counts = if counts.len() + flag.len() + 1 > width {
-            fixed(o.counts, 0)
-        } else {
-            counts
-        };
-        format!("{flag}{counts}")
+        let flag = if t.has_flag(tube.no) { "x" } else { "" };
+        format!("{flag}{}", fixed(o.counts, 0))
     } else if here {
         "_".into()
     } else {
@@ -77,29 +71,24 @@ impl Table {
             .filter_map(|x| observed(t, x.no, false))
             .map(|o| o.counts)
             .fold(0.0, f64::max);
-        let width = if most < 1e5 { 7 } else { 8 };
+        let width = if most < 1e4 {
+            6
+        } else {
+            fixed(most, 0).len() + 2
+        };
         let unit = t.protocol.display.concentration;
         let fitted = app
             .analysed
             .as_ref()
             .is_some_and(|a| a.analysis.fit().is_some());
-        let mut header = format!(" vial {:>6}", unit.word());
-        for (role, word, n) in [
-            (Role::Total, "total", totals),
-            (Role::Nonspecific, "nonsp", others),
-        ] {
+        let mut header = format!("vial {:>5}", unit.word());
+        for (word, n) in [("total", totals), ("nonsp", others)] {
             for i in 0..n {
-                let letter = Tube {
-                    no: crate::assay::TubeNo(1),
-                    role,
-                    level: None,
-                    replicate: i as u16 + 1,
-                }
-                .letter();
-                let head = if i == 0 {
-                    format!("{word} {letter}")
+                let letter = replicate_letter(i as u16 + 1);
+                let (head, width) = if i == 0 {
+                    (format!("{word} {letter}"), width + GROUP)
                 } else {
-                    letter
+                    (letter, width)
                 };
                 header.push_str(&format!("{head:>width$}"));
             }
@@ -115,6 +104,7 @@ impl Table {
             rows: Vec::new(),
             here: 0,
             height,
+            flagged: t.has_flags(),
         };
         table.background(app);
         let at = app.tube().and_then(|x| x.level);
@@ -122,7 +112,7 @@ impl Table {
             if at == Some(l.no) {
                 table.here = table.rows.len();
             }
-            let shown = significant(unit.from_nm(l.added.base()), 3);
+            let shown = short(unit.from_nm(l.added.base()), 3);
             table.level(app, l.no, &shown, (totals, others), width);
         }
         table
@@ -136,9 +126,9 @@ impl Table {
             .filter(|x| x.role == Role::Background)
             .collect();
         let Some(first) = vials.first() else { return };
-        let mut spans = vec![Span::raw(format!("{:>5} {:>6}", first.no, "blank"))];
-        for x in vials {
-            let (text, style) = cell(app, x, 7);
+        let mut spans = vec![Span::raw(format!("{:>4} {:>5}", first.no, "blank"))];
+        for (i, x) in vials.into_iter().enumerate() {
+            let (text, style) = cell(app, x, if i == 0 { 6 + GROUP } else { 7 });
             spans.push(Span::styled(text, style));
         }
         if let Some(b) = crate::assay::background(t, true) {
@@ -165,22 +155,29 @@ impl Table {
             .map(|x| x.no.0)
             .min()
             .map_or(String::new(), |n| n.to_string());
-        let mut spans = vec![Span::raw(format!("{first:>5} {shown:>6}"))];
+        let mut spans = vec![Span::raw(format!("{first:>4} {shown:>5}"))];
         for (role, n) in [(Role::Total, totals), (Role::Nonspecific, others)] {
             for i in 1..=n {
                 let found = tubes
                     .iter()
                     .find(|x| x.role == role && usize::from(x.replicate) == i);
+                let width = if i == 1 { width + GROUP } else { width };
                 let (text, style) =
                     found.map_or((" ".repeat(width), Style::new()), |x| cell(app, x, width));
                 spans.push(Span::styled(text, style));
             }
         }
         if let Some((mean, sd)) = amount(app, level) {
+            // Two digits of the error, which is as far as the amount means anything.
+            let decimals = if sd > 0.0 {
+                (1.0 - sd.log10().floor()).clamp(0.0, 3.0) as usize
+            } else {
+                2
+            };
             spans.push(Span::raw(format!(
                 " {:>6} {:>5}",
-                significant(mean, 3),
-                significant(sd, 2)
+                fixed(mean, decimals),
+                fixed(sd, decimals)
             )));
         }
         self.rows.push(Line::from(spans));
@@ -190,8 +187,14 @@ impl Table {
         self.width
     }
 
-    pub(super) fn draw(self, frame: &mut Frame, area: Rect) {
+    pub(super) fn draw(mut self, frame: &mut Frame, area: Rect) {
         let room = usize::from(self.height).saturating_sub(1).max(1);
+        if self.flagged && self.rows.len() < room {
+            self.rows.push(Line::styled(
+                "   x  suspect, left out of the fit",
+                style::quiet(),
+            ));
+        }
         let over = self.rows.len().saturating_sub(room);
         let top = self.here.saturating_sub(room / 2).min(over);
         let mut lines = vec![self.header];

@@ -3,7 +3,7 @@
 use super::style;
 use crate::app::App;
 use crate::report::values;
-use crate::units::{fixed, grouped, significant};
+use crate::units::{fixed, short, significant};
 use ratatui::Frame;
 use ratatui::layout::Rect;
 use ratatui::style::Style;
@@ -14,10 +14,10 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
     let t = app.titration();
     let unit = t.protocol.display.concentration;
     let head = format!(
-        " vial {:>8} {:<12} {:>8} {:>6} {:>9} {:>8} {:>8} {:>9}",
-        "added", "", "counts", "min", "bound", "sd", "free", "specific"
+        " vial  added {:<13} counts    min     bound       sd    free  specific",
+        unit.word()
     );
-    let head = Line::styled(format!("{head}  {}", unit.word()), style::quiet());
+    let head = Line::styled(head, style::quiet());
     let mut here = 0;
     let mut lines = Vec::new();
     let number = |nm: Option<f64>| nm.map_or("-".into(), |nm| significant(unit.from_nm(nm), 3));
@@ -36,7 +36,9 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
         if at {
             here = i;
         }
-        let added = number(t.added_nm(tube));
+        let added = t
+            .added_nm(tube)
+            .map_or("-".into(), |nm| short(unit.from_nm(nm), 3));
         let role = format!("{} {}", tube.role, tube.letter());
         // The newest analysis may be of a moment ago; the readings themselves are always of now.
         let counts = crate::assay::observed(t, tube.no, false);
@@ -44,30 +46,22 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
             .iter()
             .find(|r| r.tube.no == tube.no && counts.is_some());
         let m = r.and_then(|r| r.measured);
-        let remark = match (
-            t.lost.get(&tube.no),
-            t.kept(tube.no)
-                .iter()
-                .rev()
-                .find_map(|k| k.suspect.as_ref()),
-        ) {
-            (Some(l), _) => format!("  lost, {}", l.why.reason),
-            (None, Some(s)) => format!("  x {}", s.reason),
-            (None, None) => String::new(),
-        };
+        let (suspect, lost) = (t.has_flag(tube.no), t.lost.contains_key(&tube.no));
         let text = format!(
-            "{}{:>4} {:>8} {:<14} {:>6} {:>6} {:>9} {:>8} {:>8} {:>9}{}",
+            "{}{}{:>3} {:>6} {:<13} {:>6} {:>6} {:>9} {:>8} {:>7} {:>9}",
             if at { ">" } else { " " },
+            if suspect { "x" } else { " " },
             tube.no,
             added,
             role,
-            counts.map_or(".".into(), |o| grouped(o.counts)),
+            counts.map_or(if lost { "lost" } else { "." }.into(), |o| fixed(
+                o.counts, 0
+            )),
             counts.map_or(String::new(), |o| fixed(o.minutes, 2)),
             amount(m.map(|m| m.bound_nm)),
             amount(m.map(|m| m.bound_sd_nm)),
             number(m.map(|m| m.free_nm)),
             amount(r.and_then(|r| r.specific_nm)),
-            remark,
         );
         lines.push(Line::styled(
             text,
