@@ -1,15 +1,28 @@
 //! What the program is at a moment, and how events change it: `Event -> update -> Effect`, no I/O.
 
 mod bench;
+mod desk;
+mod draft;
+mod fields;
+mod form;
 pub mod keys;
 mod layers;
+mod result;
+mod sheet;
+mod start;
 
 pub use bench::{Bench, Field};
+pub use desk::{Analysed, Desk, Laid, Saved};
+pub use draft::Draft;
+pub use form::{FieldState, Form, Kind};
 pub use layers::{Layer, LineFor, ReasonFor};
+pub use result::{fit_line, page};
+pub use sheet::Forms;
+pub use start::{Ask, Recent, Start};
 
 use crate::analysis::Analysis;
-use crate::assay::{Stamp, Titration, TubeNo};
-use crate::notebook::{Entry, Notebook, What};
+use crate::assay::{Lab, Stamp, Titration};
+use crate::notebook::Entry;
 use keys::Key;
 use std::sync::Arc;
 
@@ -24,10 +37,18 @@ pub enum Event {
     Resize(u16, u16),
     /// The analysis of a revision is done.
     Analysed(u32, Arc<Analysis>),
-    /// The file holds everything up to a revision.
-    Saved(u32),
+    /// The file holds everything up to a revision, and this is its digest.
+    Saved(u32, String),
     /// A save failed, and why; it is being tried again.
     SaveFailed(u32, String),
+    /// A titration was laid on the bench.
+    Opened(Box<Laid>),
+    /// Something that was asked for could not be done, and why.
+    Refused(String),
+    /// Something that was asked for was done.
+    Done(String),
+    /// What is known of the titrations used lately.
+    Recents(Vec<Recent>),
     /// The terminal is gone or the program is asked to end.
     HangUp,
 }
@@ -39,6 +60,29 @@ pub enum Effect {
     Save(u32, Vec<Arc<Entry>>),
     /// Analyse a revision.
     Analyse(u32, Box<Titration>),
+    /// Open a file for writing.
+    Open(String),
+    /// Make a new file and open it.
+    Create {
+        /// The file.
+        path: String,
+        /// What it begins with.
+        titration: Box<Titration>,
+        /// Who makes it.
+        who: String,
+    },
+    /// Open a fresh copy of a demo.
+    Demo(String),
+    /// Put the titration away: wait for its last save, and let go of the file.
+    PutAway,
+    /// Look up the titrations used lately.
+    Survey,
+    /// Keep the lab's settings.
+    KeepLab(Box<Lab>),
+    /// Write a page beside the titration.
+    WritePage(String),
+    /// Print a page on standard output after leaving.
+    PrintAfter(String),
     /// Sound the bell.
     Bell,
     /// Stop for the shell.
@@ -56,18 +100,7 @@ pub enum Access {
     ReadOnly(String),
 }
 
-/// How far the file is.
-#[derive(Debug, Clone, PartialEq, Eq)]
-pub struct Saved {
-    /// The newest revision that is safely in the file.
-    pub revision: u32,
-    /// When that was known.
-    pub at: Option<Stamp>,
-    /// Why the newest save failed, while it has not succeeded since.
-    pub failed: Option<String>,
-}
-
-/// What the wide part of the screen shows.
+/// What the wide part of the bench shows.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
 pub enum Wide {
     /// The rack, and the plot beside it where there is room.
@@ -103,192 +136,181 @@ pub struct Message {
     pub refusal: bool,
 }
 
-/// The newest finished analysis and the revision it is of.
+impl Message {
+    /// A plain sentence.
+    pub fn said(text: impl Into<String>) -> Message {
+        Message {
+            text: text.into(),
+            refusal: false,
+        }
+    }
+
+    /// A refusal.
+    pub fn refused(text: impl Into<String>) -> Message {
+        Message {
+            text: text.into(),
+            refusal: true,
+        }
+    }
+}
+
+/// The steps of the walk.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
+pub enum Step {
+    /// What happened before the rack.
+    Protocol,
+    /// The rack.
+    Ladder,
+    /// The counter.
+    Counter,
+    /// The tubes, at the bench.
+    Tubes,
+    /// The result.
+    Result,
+}
+
+impl Step {
+    /// All of them in order.
+    pub const ALL: [Step; 5] = [
+        Step::Protocol,
+        Step::Ladder,
+        Step::Counter,
+        Step::Tubes,
+        Step::Result,
+    ];
+
+    /// Its word.
+    pub fn word(self) -> &'static str {
+        match self {
+            Step::Protocol => "protocol",
+            Step::Ladder => "ladder",
+            Step::Counter => "counter",
+            Step::Tubes => "tubes",
+            Step::Result => "result",
+        }
+    }
+
+    /// The step after, or this if it is the last.
+    pub fn next(self) -> Step {
+        Self::ALL.into_iter().find(|s| *s > self).unwrap_or(self)
+    }
+
+    /// The step before, or this if it is the first.
+    pub fn previous(self) -> Step {
+        Self::ALL
+            .into_iter()
+            .rev()
+            .find(|s| *s < self)
+            .unwrap_or(self)
+    }
+}
+
+/// Where one is.
 #[derive(Debug, Clone)]
-pub struct Analysed {
-    /// The revision.
-    pub revision: u32,
-    /// What is said of it.
-    pub analysis: Arc<Analysis>,
+pub enum Scene {
+    /// The start.
+    Start(Box<Start>),
+    /// A titration that is not open yet.
+    Draft(Box<Draft>),
+    /// A titration on the bench.
+    Desk(Box<Desk>),
 }
 
 /// The program at a moment.
 #[derive(Debug, Clone)]
 pub struct App {
-    /// The titration on the bench.
-    pub notebook: Notebook,
-    /// The file's name, as shown.
-    pub file: String,
-    /// Whether it may be changed.
-    pub access: Access,
-    /// Who is at the keyboard.
-    pub who: String,
-    /// Things to be said as long as they hold, e.g. that the file was changed outside.
-    pub notices: Vec<String>,
-    /// The bench.
-    pub bench: Bench,
-    /// What lies over the bench, the topmost last.
-    pub layers: Vec<Layer>,
-    /// The newest finished analysis.
-    pub analysed: Option<Analysed>,
-    /// How far the file is.
-    pub saved: Saved,
+    /// Where one is.
+    pub scene: Scene,
     /// How things are shown.
     pub look: Look,
-    /// The last thing said.
-    pub message: Message,
+    /// The lab's settings.
+    pub lab: Lab,
+    /// Who is at the keyboard.
+    pub who: String,
+    /// Whether leaving a titration leads back to the start.
+    pub from_start: bool,
 }
 
 impl App {
-    /// A titration laid on the bench, at the first tube without a reading; and what to do first.
-    pub fn open(
-        notebook: Notebook,
-        file: String,
-        access: Access,
-        who: String,
-        notices: Vec<String>,
-        look: Look,
-    ) -> (App, Vec<Effect>) {
-        let revision = notebook.revision();
-        let titration = notebook.titration().clone();
-        let bench = Bench::at_first_unread(&titration);
-        let app = App {
-            notebook,
-            file,
-            access,
-            who,
-            notices,
-            bench,
-            layers: Vec::new(),
-            analysed: None,
-            saved: Saved {
-                revision,
-                at: None,
-                failed: None,
+    /// At the start screen; and what to do first.
+    pub fn start(lab: Lab, who: String, look: Look) -> (App, Vec<Effect>) {
+        let scene = Scene::Start(Box::default());
+        (
+            App {
+                scene,
+                look,
+                lab,
+                who,
+                from_start: true,
             },
-            look,
-            message: Message::default(),
-        };
-        (app, vec![Effect::Analyse(revision, Box::new(titration))])
+            vec![Effect::Survey],
+        )
     }
 
-    /// The titration as it stands.
-    pub fn titration(&self) -> &Titration {
-        self.notebook.titration()
-    }
-
-    /// The last part of the file's path.
-    pub fn file_name(&self) -> &str {
-        self.file.rsplit(['/', '\\']).next().unwrap_or(&self.file)
-    }
-
-    /// Whether the newest analysis is of the newest entry.
-    pub fn is_current(&self) -> bool {
-        self.analysed
-            .as_ref()
-            .is_some_and(|a| a.revision == self.notebook.revision())
-    }
-
-    /// Whether everything is safely in the file.
-    pub fn is_saved(&self) -> bool {
-        self.saved.revision >= self.notebook.revision()
+    /// With a titration on the bench; and what to do first.
+    pub fn at_desk(laid: Laid, lab: Lab, who: String, look: Look) -> (App, Vec<Effect>) {
+        let (desk, effects) = Desk::lay(laid, who.clone(), look);
+        (
+            App {
+                scene: Scene::Desk(Box::new(desk)),
+                look,
+                lab,
+                who,
+                from_start: false,
+            },
+            effects,
+        )
     }
 
     /// Takes in what happened and says what is to be done.
     pub fn update(&mut self, event: Event, now: Stamp) -> Vec<Effect> {
         match event {
-            Event::Key(key) => self.key(key, now),
-            Event::Paste(text) => self.paste(&text),
+            Event::HangUp => return vec![Effect::Quit],
             Event::Resize(columns, rows) => {
                 (self.look.columns, self.look.rows) = (columns, rows);
-                Vec::new()
-            }
-            Event::Analysed(revision, analysis) => {
-                // An analysis of an older state than the one shown says nothing new.
-                if self.analysed.as_ref().is_none_or(|a| a.revision < revision) {
-                    self.analysed = Some(Analysed { revision, analysis });
+                if let Scene::Desk(desk) = &mut self.scene {
+                    (desk.look.columns, desk.look.rows) = (columns, rows);
                 }
-                Vec::new()
+                return Vec::new();
             }
-            Event::Saved(revision) => {
-                if revision >= self.saved.revision {
-                    self.saved = Saved {
-                        revision,
-                        at: Some(now),
-                        failed: None,
-                    };
-                }
-                Vec::new()
+            Event::Key(Key::Ctrl('z')) => return vec![Effect::Suspend],
+            Event::Opened(laid) => {
+                let (desk, effects) = Desk::lay(*laid, self.who.clone(), self.look);
+                self.scene = Scene::Desk(Box::new(desk));
+                return effects;
             }
-            Event::SaveFailed(revision, why) => {
-                if revision > self.saved.revision {
-                    self.saved.failed = Some(why);
-                }
-                Vec::new()
-            }
-            Event::HangUp => vec![Effect::Quit],
+            _ => {}
         }
-    }
-
-    fn key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
-        if self.layers.is_empty() {
-            self.bench_key(key, now)
-        } else {
-            self.layer_key(key, now)
-        }
-    }
-
-    fn paste(&mut self, text: &str) -> Vec<Effect> {
-        self.refuse(format!(
-            "{} characters pasted and not taken: type readings one by one, or take a table with `rackside take`",
-            text.chars().count()
-        ));
-        vec![Effect::Bell]
-    }
-
-    fn say(&mut self, text: impl Into<String>) {
-        self.message = Message {
-            text: text.into(),
-            refusal: false,
+        let mut effects = match &mut self.scene {
+            Scene::Start(start) => start.update(event, &mut self.lab, now),
+            Scene::Draft(draft) => draft.update(event, &self.who),
+            Scene::Desk(desk) => desk.update(event, now),
         };
-    }
-
-    fn refuse(&mut self, text: impl Into<String>) {
-        self.message = Message {
-            text: text.into(),
-            refusal: true,
-        };
-    }
-
-    /// Records an entry; on success says what was recorded and asks for a save and an analysis.
-    ///
-    /// `None` where the notebook refused: the refusal is the message then.
-    fn record(&mut self, what: What, now: Stamp) -> Option<(Arc<Entry>, Vec<Effect>)> {
-        if let Access::ReadOnly(why) = &self.access {
-            self.refuse(format!("read only: {why}"));
-            return None;
+        if let Scene::Desk(desk) = &self.scene {
+            self.who.clone_from(&desk.who);
+            self.look = desk.look;
         }
-        let who = self.who.clone();
-        match self.notebook.record(what, now, &who) {
-            Ok(entry) => {
-                let revision = self.notebook.revision();
-                let effects = vec![
-                    Effect::Save(revision, self.notebook.entries().to_vec()),
-                    Effect::Analyse(revision, Box::new(self.titration().clone())),
-                ];
-                Some((entry, effects))
-            }
-            Err(rejection) => {
-                self.refuse(rejection.to_string());
-                None
-            }
-        }
+        self.moved(&mut effects);
+        effects
     }
 
-    /// The tube's name in a sentence, by its number.
-    fn tube_name(&self, no: TubeNo) -> String {
-        let t = self.titration();
-        t.tube(no)
-            .map_or_else(|| format!("vial {no}"), |tube| t.name(tube))
+    /// Leads from one scene to the next where an effect asks for it.
+    fn moved(&mut self, effects: &mut Vec<Effect>) {
+        let leaving = effects.iter().any(|e| matches!(e, Effect::Quit));
+        match &mut self.scene {
+            Scene::Start(start) if start.wants_draft => {
+                self.scene = Scene::Draft(Box::new(Draft::fresh(&self.lab)));
+            }
+            Scene::Draft(draft) if draft.left => {
+                self.scene = Scene::Start(Box::default());
+                effects.push(Effect::Survey);
+            }
+            Scene::Desk(_) if leaving && self.from_start => {
+                effects.retain(|e| !matches!(e, Effect::Quit));
+                effects.extend([Effect::PutAway, Effect::Survey]);
+                self.scene = Scene::Start(Box::default());
+            }
+            _ => {}
+        }
     }
 }

@@ -5,6 +5,7 @@
 
 mod amounts;
 mod described;
+mod lab;
 mod ladder;
 mod protocol;
 mod rack;
@@ -16,6 +17,7 @@ pub use amounts::{
     sites_by_amount, sites_shown,
 };
 pub use described::FieldLine;
+pub use lab::{Lab, PlotGlyphs};
 pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet, SheetError};
 pub use protocol::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Fields, Incubation, Ligand,

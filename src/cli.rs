@@ -2,7 +2,6 @@
 
 mod args;
 mod commands;
-mod demos;
 mod failure;
 mod out;
 mod table;

@@ -1,28 +1,30 @@
 //! The terminal and the threads: events in, effects out. The only place that waits.
 
 mod analyst;
+pub mod demos;
+mod files;
 mod terminal;
 
-use crate::app::{Access, App, Effect, Event, Look, keys};
-use crate::assay::Stamp;
-use crate::notebook::Entry;
-use crate::store::{self, Ended, SaveReport, Saver, Text};
+pub use files::open;
+
+use crate::app::{App, Effect, Event, Look, keys};
+use crate::assay::{Lab, Stamp};
+use crate::store;
 use crate::view;
 use analyst::Analyst;
 use crossterm::event::{Event as TerminalEvent, read};
+use files::Open;
 use jiff::Timestamp;
 use jiff::tz::TimeZone;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
 use std::io;
-use std::sync::Arc;
+use std::path::Path;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use std::thread;
 use std::time::Duration;
 use terminal::Screen;
 
-/// How long leaving waits for the last save.
-const SAVE_PATIENCE: Duration = Duration::from_secs(20);
 /// How long a program that was hung up on may take to end.
 const HANG_UP_PATIENCE: Duration = Duration::from_secs(25);
 
@@ -51,6 +53,14 @@ pub enum ShellError {
     /// The terminal failed.
     #[error("the terminal: {0}")]
     Terminal(#[from] io::Error),
+    /// A file could not be made.
+    #[error("{path}: cannot create: {why}")]
+    CannotCreate {
+        /// The file.
+        path: String,
+        /// Why.
+        why: String,
+    },
     /// The newest entries are not in the file.
     #[error("{file}: entries up to {rev} are not saved: {why}")]
     Unsaved {
@@ -63,83 +73,61 @@ pub enum ShellError {
     },
 }
 
-/// One sitting at the bench, from opening to leaving.
+/// What a sitting begins with.
+#[derive(Debug)]
+pub enum First {
+    /// The start screen.
+    Start,
+    /// A titration, with what is to be said of it as long as it holds.
+    Titration(Box<store::Opened>, Vec<String>),
+}
+
+/// One sitting, from the first screen to leaving. Gives back a page to be printed, if one was asked for.
 ///
 /// # Errors
 /// The terminal cannot be used, or the newest entries could not be saved.
-pub fn sit(
-    opened: store::Opened,
-    who: String,
-    notices: Vec<String>,
-    look: Look,
-) -> Result<(), ShellError> {
+pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<String>, ShellError> {
     crossterm::style::force_color_output(true);
-    let file = opened.path.display().to_string();
     let (send, receive) = channel();
-    let (saver, access, text) = match opened.access {
-        store::Access::Write(target) => {
-            let reports = send.clone();
-            let saver = Saver::spawn(target, move |report| report_save(&reports, report))?;
-            (Some(saver), Access::Writing, opened.text)
-        }
-        store::Access::Read => (None, Access::ReadOnly(read_only(&notices)), opened.text),
-    };
-    let notices = if matches!(access, Access::ReadOnly(_)) {
-        Vec::new()
-    } else {
-        notices
-    };
-    let (app, first) = App::open(opened.notebook, file.clone(), access, who, notices, look);
     let analyst = Analyst::spawn({
         let send = send.clone();
         move |rev, analysis| drop(send.send(Incoming::Event(Event::Analysed(rev, analysis))))
     })?;
+    let (app, effects, open) = match first {
+        First::Start => {
+            let (app, effects) = App::start(lab, who, look);
+            (app, effects, None)
+        }
+        First::Titration(opened, notices) => {
+            let (laid, open) = files::lay(*opened, notices, &send)?;
+            let (app, effects) = App::at_desk(laid, lab, who, look);
+            (app, effects, Some(open))
+        }
+    };
+    let screen = Screen::enter()?;
+    watch_signals(send.clone())?;
+    watch_terminal(send.clone())?;
     let mut sitting = Sitting {
         app,
         analyst,
-        saver,
-        text,
-        screen: Screen::enter()?,
+        open,
+        send,
+        screen,
         gone: false,
+        print: None,
     };
-    watch_signals(send.clone())?;
-    watch_terminal(send)?;
-    let ran = sitting.run(first, &receive);
+    let ran = sitting.run(effects, &receive);
     sitting.screen.leave();
-    let ended = sitting.saver.map(|s| s.finish(SAVE_PATIENCE));
-    match ended {
-        Some(Ended::Unsaved { rev, error }) => Err(ShellError::Unsaved {
-            file,
-            rev,
-            why: error.to_string(),
-        }),
-        Some(Ended::StillWriting) => {
-            let rev = sitting.app.notebook.revision();
-            Err(ShellError::Unsaved {
-                file,
-                rev,
-                why: "the disk did not answer in time".into(),
-            })
-        }
-        // A terminal that went away is how a dropped link looks: everything is kept, so nothing failed.
-        _ if sitting.gone => Ok(()),
-        _ => ran.map_err(ShellError::Terminal),
+    let gone = sitting.gone;
+    let print = sitting.print.take();
+    if let Some(open) = sitting.open.take() {
+        open.put_away()?;
     }
-}
-
-fn read_only(notices: &[String]) -> String {
-    notices
-        .first()
-        .cloned()
-        .unwrap_or_else(|| "opened for reading".into())
-}
-
-fn report_save(send: &Sender<Incoming>, report: SaveReport) {
-    let event = match report {
-        SaveReport::Saved { rev } => Event::Saved(rev),
-        SaveReport::Failed { rev, error } => Event::SaveFailed(rev, error.to_string()),
-    };
-    drop(send.send(Incoming::Event(event)));
+    match ran {
+        // A terminal that went away is how a dropped link looks: everything is kept, so nothing failed.
+        Err(e) if !gone => Err(e.into()),
+        _ => Ok(print),
+    }
 }
 
 fn watch_signals(send: Sender<Incoming>) -> io::Result<()> {
@@ -196,11 +184,13 @@ fn translated(event: TerminalEvent) -> Incoming {
 struct Sitting {
     app: App,
     analyst: Analyst,
-    saver: Option<Saver>,
-    text: Text,
+    open: Option<Open>,
+    send: Sender<Incoming>,
     screen: Screen,
     /// The terminal went away.
     gone: bool,
+    /// A page to be printed after leaving.
+    print: Option<String>,
 }
 
 impl Sitting {
@@ -213,7 +203,9 @@ impl Sitting {
             // All that is waiting is taken in before anything is drawn: typing never waits for a screen.
             let mut waiting = Some(incoming);
             while let Some(incoming) = waiting {
-                if self.take_in(incoming)? {
+                if let Incoming::Event(event) = incoming
+                    && self.take_in(event)?
+                {
                     return Ok(());
                 }
                 waiting = receive.try_recv().ok();
@@ -224,10 +216,7 @@ impl Sitting {
     }
 
     /// True when it is time to leave.
-    fn take_in(&mut self, incoming: Incoming) -> io::Result<bool> {
-        let Incoming::Event(event) = incoming else {
-            return Ok(false);
-        };
+    fn take_in(&mut self, event: Event) -> io::Result<bool> {
         self.gone |= matches!(event, Event::HangUp);
         let effects = self.app.update(event, now());
         self.carry_out(effects)
@@ -243,8 +232,57 @@ impl Sitting {
     fn carry_out(&mut self, effects: Vec<Effect>) -> io::Result<bool> {
         for effect in effects {
             match effect {
-                Effect::Save(revision, entries) => self.save(revision, &entries),
+                Effect::Save(revision, entries) => {
+                    let fault = self
+                        .open
+                        .as_mut()
+                        .and_then(|o| o.save(revision, &entries).err());
+                    if let Some(why) = fault {
+                        self.take_in(Event::SaveFailed(revision, why))?;
+                    }
+                }
                 Effect::Analyse(revision, titration) => self.analyst.analyse(revision, *titration),
+                Effect::Open(path) => {
+                    let opened =
+                        files::open(Path::new(&path), &self.app.who).map_err(|e| e.to_string());
+                    self.lay(opened)?;
+                }
+                Effect::Create {
+                    path,
+                    titration,
+                    who,
+                } => {
+                    let opened = files::create(Path::new(&path), *titration, &who);
+                    self.lay(opened)?;
+                }
+                Effect::Demo(name) => {
+                    let opened = match demos::find(Some(&name)).map(demos::copy) {
+                        Some(Ok(path)) => {
+                            files::open(&path, &self.app.who).map_err(|e| e.to_string())
+                        }
+                        Some(Err(e)) => Err(e.to_string()),
+                        None => Err(format!("there is no demo `{name}`")),
+                    };
+                    self.lay(opened)?;
+                }
+                Effect::PutAway => {
+                    if let Some(Err(e)) = self.open.take().map(Open::put_away) {
+                        self.take_in(Event::Refused(e.to_string()))?;
+                    }
+                }
+                Effect::Survey => files::survey(self.send.clone())?,
+                Effect::KeepLab(lab) => {
+                    let said = files::keep_lab(&lab);
+                    self.take_in(said.map_or_else(Event::Refused, Event::Done))?;
+                }
+                Effect::WritePage(page) => {
+                    let said = self
+                        .open
+                        .as_ref()
+                        .map_or(Err("no titration is open".into()), |o| o.write_page(&page));
+                    self.take_in(said.map_or_else(Event::Refused, Event::Done))?;
+                }
+                Effect::PrintAfter(page) => self.print = Some(page),
                 Effect::Bell => self.screen.bell()?,
                 Effect::Suspend => self.screen.suspend()?,
                 Effect::Quit => return Ok(true),
@@ -253,16 +291,16 @@ impl Sitting {
         Ok(false)
     }
 
-    fn save(&mut self, revision: u32, entries: &[Arc<Entry>]) {
-        let Some(saver) = &self.saver else { return };
-        let written = self.text.entries() as usize;
-        for entry in entries.iter().skip(written) {
-            if let Err(fault) = self.text.append(entry) {
-                self.app
-                    .update(Event::SaveFailed(revision, fault.to_string()), now());
-                return;
+    /// Lays a titration that was opened on the bench, or says why it was not.
+    fn lay(&mut self, opened: Result<(store::Opened, Vec<String>), String>) -> io::Result<()> {
+        match opened {
+            Err(why) => drop(self.take_in(Event::Refused(why))?),
+            Ok((opened, notices)) => {
+                let (laid, open) = files::lay(opened, notices, &self.send)?;
+                self.open = Some(open);
+                self.take_in(Event::Opened(Box::new(laid)))?;
             }
         }
-        saver.save(revision, self.text.clone());
+        Ok(())
     }
 }

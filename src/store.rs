@@ -5,6 +5,7 @@
 
 mod error;
 pub mod format;
+mod lists;
 mod lock;
 mod places;
 mod save;
@@ -12,6 +13,7 @@ mod saver;
 
 pub use error::StoreError;
 pub use format::Text;
+pub use lists::{keep_lab, lab, recents, remember};
 pub use lock::Holder;
 pub use places::{Places, places};
 pub use save::{Seen, Target};

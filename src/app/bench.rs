@@ -2,7 +2,7 @@
 
 use super::keys::{self, Command, Key};
 use super::layers::{Layer, LineFor, ReasonFor};
-use super::{App, Effect, Wide};
+use super::{Desk, Effect, Message, Wide};
 use crate::assay::{Reading, ReadingId, Role, Scale, Stamp, Titration, Tube, TubeNo};
 use crate::notebook::{Count, What};
 use crate::units::{Mark, NumberError, fixed, parse_counts, parse_decimal};
@@ -79,7 +79,7 @@ fn parse_value(text: &str, scale: Scale, mark: Mark) -> Result<f64, NumberError>
     }
 }
 
-impl App {
+impl Desk {
     /// The tube at the prompt.
     pub fn tube(&self) -> Option<&Tube> {
         self.titration().tube(self.bench.at)
@@ -115,10 +115,7 @@ impl App {
             }
             return Vec::new();
         };
-        let anytime = matches!(
-            command,
-            Command::Keep | Command::Minus | Command::Help | Command::Suspend
-        );
+        let anytime = matches!(command, Command::Keep | Command::Minus | Command::Help);
         if typing && !anytime && key != Key::Ctrl('c') {
             self.refuse("the line is not finished: Enter keeps it, - clears it");
             return Vec::new();
@@ -130,7 +127,7 @@ impl App {
             Command::Recount => self.recount(),
             Command::GoTo => {
                 self.bench.field = Field::Vial;
-                self.message = super::Message::default();
+                self.message = Message::default();
                 Vec::new()
             }
             Command::Previous => self.walk(-1),
@@ -169,7 +166,24 @@ impl App {
                 Vec::new()
             }
             Command::Quit => self.leave(),
-            Command::Suspend => vec![Effect::Suspend],
+            Command::Check => {
+                if self.is_saved() {
+                    self.layers.push(Layer::line(LineFor::Checker));
+                } else {
+                    self.refuse("not saved yet: a check is of what is in the file");
+                }
+                Vec::new()
+            }
+            Command::Close => {
+                self.layers.push(Layer::Close);
+                Vec::new()
+            }
+            Command::Operator => {
+                self.layers.push(Layer::line(LineFor::Operator));
+                Vec::new()
+            }
+            Command::Forward => self.go(self.step.next()),
+            Command::Back => self.go(self.step.previous()),
         }
     }
 
@@ -191,7 +205,7 @@ impl App {
         self.bench.line.handle(request);
         // What was said of an earlier line no longer holds for this one.
         if self.message.refusal {
-            self.message = super::Message::default();
+            self.message = Message::default();
         }
         Vec::new()
     }
@@ -200,7 +214,7 @@ impl App {
     fn clear(&mut self) {
         let at = self.bench.at;
         self.bench.go(at);
-        self.message = super::Message::default();
+        self.message = Message::default();
     }
 
     fn enter(&mut self, now: Stamp) -> Vec<Effect> {
@@ -492,7 +506,7 @@ impl App {
         }
     }
 
-    fn leave(&mut self) -> Vec<Effect> {
+    pub(super) fn leave(&mut self) -> Vec<Effect> {
         if self.saved.failed.is_some() && !self.is_saved() {
             self.layers.push(Layer::LeaveUnsaved);
             return Vec::new();

@@ -108,19 +108,27 @@ pub enum Command {
     Help,
     /// Leaves.
     Quit,
-    /// Stops the program for the shell, to come back with fg.
-    Suspend,
+    /// Records that a second person checked the titration.
+    Check,
+    /// Closes the titration, or opens it again.
+    Close,
+    /// Another person takes the keyboard.
+    Operator,
+    /// To the next step of the walk.
+    Forward,
+    /// To the step before.
+    Back,
 }
 
 /// One row of the table.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub struct Binding {
+pub struct Binding<C> {
     /// The keys that do it.
     pub keys: &'static [Key],
     /// The keys as shown.
     pub shown: &'static str,
     /// What they do.
-    pub command: Command,
+    pub command: C,
     /// In a word or two, for the line of hints; empty where it is not shown there.
     pub hint: &'static str,
     /// In a sentence, for help.
@@ -129,14 +137,14 @@ pub struct Binding {
     pub keypad: bool,
 }
 
-const fn row(
+const fn row<C: Copy>(
     keys: &'static [Key],
     shown: &'static str,
-    command: Command,
+    command: C,
     hint: &'static str,
     help: &'static str,
     keypad: bool,
-) -> Binding {
+) -> Binding<C> {
     Binding {
         keys,
         shown,
@@ -147,8 +155,8 @@ const fn row(
     }
 }
 
-/// The keys of the bench.
-pub const BENCH: &[Binding] = &[
+/// The keys of the bench. Help texts fit beside their keys in 80 columns.
+pub const BENCH: &[Binding<Command>] = &[
     row(
         &[Key::Enter],
         "Enter",
@@ -162,7 +170,7 @@ pub const BENCH: &[Binding] = &[
         "*",
         Command::Suspect,
         "suspect",
-        "flag the reading just kept (or the one at the prompt) as suspect, or take its flag off",
+        "flag the reading just kept, or the one at the prompt; again: unflag",
         true,
     ),
     row(
@@ -178,7 +186,7 @@ pub const BENCH: &[Binding] = &[
         "+",
         Command::Recount,
         "recount",
-        "count the tube just kept (or the one at the prompt) once more; counts and minutes add up",
+        "count the same tube once more; counts and minutes add up",
         true,
     ),
     row(
@@ -262,6 +270,46 @@ pub const BENCH: &[Binding] = &[
         false,
     ),
     row(
+        &[Key::Char('o')],
+        "o",
+        Command::Operator,
+        "",
+        "another person takes the keyboard",
+        false,
+    ),
+    row(
+        &[Key::Char('k')],
+        "k",
+        Command::Check,
+        "",
+        "a second person checked the titration",
+        false,
+    ),
+    row(
+        &[Key::Char('c')],
+        "c",
+        Command::Close,
+        "",
+        "close the titration, or open it again",
+        false,
+    ),
+    row(
+        &[Key::PageUp],
+        "PgUp",
+        Command::Back,
+        "",
+        "back to the counter, the ladder, the protocol: look or correct",
+        false,
+    ),
+    row(
+        &[Key::PageDown],
+        "PgDn",
+        Command::Forward,
+        "",
+        "on to the result, to read, save or print it",
+        false,
+    ),
+    row(
         &[Key::Char('?'), Key::Char('h')],
         "?",
         Command::Help,
@@ -274,22 +322,213 @@ pub const BENCH: &[Binding] = &[
         "q",
         Command::Quit,
         "",
-        "leave; everything is kept, and the titration resumes where it stopped",
-        false,
-    ),
-    row(
-        &[Key::Ctrl('z')],
-        "Ctrl-Z",
-        Command::Suspend,
-        "",
-        "stop for the shell; fg comes back",
+        "leave; everything is kept and resumes where it stopped",
         false,
     ),
 ];
 
+/// What a key asks for at the result.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum ResultCommand {
+    /// A line up.
+    Up,
+    /// A line down.
+    Down,
+    /// A page down, or from the end to the top.
+    Page,
+    /// Saves the page beside the titration.
+    Save,
+    /// Prints the page after leaving.
+    Print,
+    /// Shows the keys.
+    Help,
+    /// Leaves.
+    Quit,
+}
+
+/// The keys of the result.
+pub const RESULT: &[Binding<ResultCommand>] = &[
+    row(&[Key::Up], "Up", ResultCommand::Up, "", "a line up", false),
+    row(
+        &[Key::Down],
+        "Down",
+        ResultCommand::Down,
+        "",
+        "a line down",
+        false,
+    ),
+    row(
+        &[Key::Char(' '), Key::Enter],
+        "Space",
+        ResultCommand::Page,
+        "on",
+        "a page on, from the end to the top",
+        false,
+    ),
+    row(
+        &[Key::Char('s')],
+        "s",
+        ResultCommand::Save,
+        "save as text",
+        "save the page as a text file beside the titration",
+        false,
+    ),
+    row(
+        &[Key::Char('p')],
+        "p",
+        ResultCommand::Print,
+        "print on leaving",
+        "print the page on the terminal when you have left",
+        false,
+    ),
+    row(
+        &[Key::Char('?'), Key::Char('h')],
+        "?",
+        ResultCommand::Help,
+        "keys",
+        "this page",
+        false,
+    ),
+    row(
+        &[Key::Char('q'), Key::Ctrl('c')],
+        "q",
+        ResultCommand::Quit,
+        "leave",
+        "leave",
+        false,
+    ),
+];
+
+/// What a key asks for at the start.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum StartCommand {
+    /// One up.
+    Up,
+    /// One down.
+    Down,
+    /// Opens the one chosen.
+    Open,
+    /// A new titration.
+    New,
+    /// A file by its path.
+    Path,
+    /// A demo.
+    Demo,
+    /// The lab's settings.
+    Lab,
+    /// Shows the keys.
+    Help,
+    /// Leaves.
+    Quit,
+}
+
+/// The keys of the start; digits open a titration of the list.
+pub const START: &[Binding<StartCommand>] = &[
+    row(
+        &[Key::Char('n')],
+        "n",
+        StartCommand::New,
+        "",
+        "a new titration",
+        false,
+    ),
+    row(
+        &[Key::Char('o')],
+        "o",
+        StartCommand::Path,
+        "",
+        "open a file by its path",
+        false,
+    ),
+    row(
+        &[Key::Char('d')],
+        "d",
+        StartCommand::Demo,
+        "",
+        "open a demo: an invented rack to play with",
+        false,
+    ),
+    row(
+        &[Key::Char('l')],
+        "l",
+        StartCommand::Lab,
+        "",
+        "the lab's settings: defaults for a new titration",
+        false,
+    ),
+    row(
+        &[Key::Up],
+        "Up",
+        StartCommand::Up,
+        "",
+        "one up in the list",
+        false,
+    ),
+    row(
+        &[Key::Down],
+        "Down",
+        StartCommand::Down,
+        "",
+        "one down in the list",
+        false,
+    ),
+    row(
+        &[Key::Enter],
+        "Enter",
+        StartCommand::Open,
+        "",
+        "open the titration chosen; its digit does too",
+        false,
+    ),
+    row(
+        &[Key::Char('?'), Key::Char('h')],
+        "?",
+        StartCommand::Help,
+        "",
+        "the keys",
+        false,
+    ),
+    row(
+        &[Key::Char('q'), Key::Ctrl('c'), Key::Esc],
+        "q",
+        StartCommand::Quit,
+        "",
+        "leave",
+        false,
+    ),
+];
+
+/// Keys that work in a form, for help; the form itself takes them.
+pub const FORM: &[(&str, &str)] = &[
+    ("Enter", "to the next field, from the last to the next step"),
+    ("Up Down", "from field to field"),
+    (
+        "arrows",
+        "left and right choose where there is a choice; a digit does too",
+    ),
+    ("PgDn", "to the next step"),
+    ("PgUp", "to the step before"),
+    ("Ctrl-U", "clears the field"),
+    ("Esc", "leaves; what was typed and not recorded is dropped"),
+];
+
 /// What a key does at the bench.
 pub fn bench_command(key: Key) -> Option<Command> {
-    BENCH
+    find(BENCH, key)
+}
+
+/// What a key does at the result.
+pub fn result_command(key: Key) -> Option<ResultCommand> {
+    find(RESULT, key)
+}
+
+/// What a key does at the start.
+pub fn start_command(key: Key) -> Option<StartCommand> {
+    find(START, key)
+}
+
+fn find<C: Copy>(table: &[Binding<C>], key: Key) -> Option<C> {
+    table
         .iter()
         .find(|b| b.keys.contains(&key))
         .map(|b| b.command)
@@ -300,15 +539,22 @@ mod tests {
     use super::*;
     use std::collections::HashSet;
 
-    #[test]
-    fn no_key_is_there_twice() {
+    fn sound<C>(table: &[Binding<C>]) {
         let mut seen = HashSet::new();
-        for b in BENCH {
+        for b in table {
             for k in b.keys {
                 assert!(seen.insert(*k), "{k:?}");
             }
             assert!(!b.help.is_empty() && !b.shown.is_empty());
+            assert!(b.help.len() <= 68, "{} is too long beside its key", b.help);
         }
+    }
+
+    #[test]
+    fn no_key_is_there_twice_and_help_fits() {
+        sound(BENCH);
+        sound(RESULT);
+        sound(START);
     }
 
     #[test]

@@ -1,10 +1,11 @@
 //! What lies over the bench: a menu of reasons, a line of words, help, a question.
 
+use super::form::edit;
 use super::keys::{self, Key};
-use super::{App, Effect};
+use super::{Desk, Effect};
 use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
 use crate::notebook::What;
-use tui_input::{Input, InputRequest};
+use tui_input::Input;
 
 /// What a reason is chosen for.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -22,6 +23,12 @@ pub enum LineFor {
     OtherReason(ReasonFor),
     /// A note about a tube.
     Note(TubeNo),
+    /// Why the protocol is corrected.
+    Amend,
+    /// Who checked the titration.
+    Checker,
+    /// Who is at the keyboard from now on.
+    Operator,
 }
 
 /// One layer; the topmost has the keys.
@@ -41,6 +48,8 @@ pub enum Layer {
         /// The first line shown.
         top: u16,
     },
+    /// Close the titration, or open it again?
+    Close,
     /// The file does not hold everything: leave all the same?
     LeaveUnsaved,
 }
@@ -58,11 +67,8 @@ impl Layer {
     }
 }
 
-impl App {
+impl Desk {
     pub(super) fn layer_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
-        if key == Key::Ctrl('z') {
-            return vec![Effect::Suspend];
-        }
         match self.layers.last_mut() {
             None => Vec::new(),
             Some(Layer::Reasons(what)) => {
@@ -80,7 +86,7 @@ impl App {
                     Vec::new()
                 }
                 key => {
-                    edit_words(input, key, MOST_WORDS);
+                    edit(input, key, MOST_WORDS);
                     Vec::new()
                 }
             },
@@ -93,6 +99,14 @@ impl App {
                     }
                 }
                 Vec::new()
+            }
+            Some(Layer::Close) => {
+                self.layers.pop();
+                match (key, self.titration().closed.is_some()) {
+                    (Key::Char('y'), false) => self.recorded(What::Closed, now, "closed"),
+                    (Key::Char('y'), true) => self.recorded(What::Reopened, now, "open again"),
+                    _ => Vec::new(),
+                }
             }
             Some(Layer::LeaveUnsaved) => match key {
                 Key::Char('y') => vec![Effect::Quit],
@@ -143,7 +157,22 @@ impl App {
                 },
                 now,
             ),
-            LineFor::Note(_) if words.is_empty() => Vec::new(),
+            LineFor::Amend if words.is_empty() => {
+                self.layers.push(Layer::line(LineFor::Amend));
+                self.refuse("a correction needs its reason; Esc goes back");
+                Vec::new()
+            }
+            _ if words.is_empty() => Vec::new(),
+            LineFor::Amend => self.amend(words, now),
+            LineFor::Checker => {
+                let digest = self.saved.digest.clone();
+                self.recorded(What::Checked { by: words, digest }, now, "checked")
+            }
+            LineFor::Operator => {
+                self.say(format!("{words} is at the keyboard"));
+                self.who = words;
+                Vec::new()
+            }
             LineFor::Note(tube) => {
                 let what = What::Noted {
                     tube: Some(tube),
@@ -179,21 +208,4 @@ impl App {
             }
         }
     }
-}
-
-/// A key in a line of words.
-fn edit_words(input: &mut Input, key: Key, most: usize) {
-    let request = match key {
-        Key::Char(c) if input.value().chars().count() < most && !c.is_control() => {
-            InputRequest::InsertChar(c)
-        }
-        Key::Backspace => InputRequest::DeletePrevChar,
-        Key::Delete => InputRequest::DeleteNextChar,
-        Key::Left => InputRequest::GoToPrevChar,
-        Key::Right => InputRequest::GoToNextChar,
-        Key::Home => InputRequest::GoToStart,
-        Key::End => InputRequest::GoToEnd,
-        _ => return,
-    };
-    input.handle(request);
 }

@@ -5,6 +5,7 @@ use std::path::PathBuf;
 
 const EXAMPLES: &str = "\
 Examples:
+  rackside                                   the start screen
   rackside demo                              a half-typed rack to play with
   rackside new --example > protocol.ron      a commented protocol to change
   rackside new rack.ron --from protocol.ron  a new titration
@@ -20,11 +21,11 @@ and the responsible radiation-safety or safety officer; the program checks arith
 
 /// Walks a ligand-binding titration tube by tube: counts in, Kd and sites out, nothing lost.
 #[derive(Debug, Parser)]
-#[command(name = "rackside", version, after_help = EXAMPLES, arg_required_else_help = true)]
+#[command(name = "rackside", version, after_help = EXAMPLES)]
 pub(super) struct Args {
-    /// What to do.
+    /// What to do; nothing shows the start screen.
     #[command(subcommand)]
-    pub command: Command,
+    pub command: Option<Command>,
 }
 
 /// The commands.

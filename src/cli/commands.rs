@@ -2,15 +2,15 @@
 
 use super::args::{Args, Command, Format, Sitting};
 use super::failure::Failure;
-use super::{demos, out, table};
+use super::{out, table};
 use crate::analysis::analyse;
 use crate::app::{Look, Wide};
-use crate::assay::Sheet;
+use crate::assay::{Lab, PlotGlyphs, Sheet};
 use crate::figure::Glyphs;
 use crate::notebook::{Notebook, What};
 use crate::report::{self, Page};
-use crate::shell;
-use crate::store::{self, Holder, StoreError};
+use crate::shell::{self, First, demos};
+use crate::store::{self, Holder};
 use std::env;
 use std::fs;
 use std::io::{self, IsTerminal, Read};
@@ -18,7 +18,11 @@ use std::path::Path;
 use std::process::ExitCode;
 
 pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
-    match args.command {
+    let Some(command) = args.command else {
+        start()?;
+        return Ok(ExitCode::SUCCESS);
+    };
+    match command {
         Command::New { example: true, .. } => out::result(Sheet::EXAMPLE)?,
         Command::New {
             file,
@@ -62,14 +66,25 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
 }
 
 /// Who is at the keyboard, as far as can be told.
-fn operator(named: Option<String>, protocol: &str) -> String {
+fn operator(named: Option<String>, usual: &str) -> String {
     let somebody = |s: &String| !s.trim().is_empty();
     named
         .filter(somebody)
+        .or_else(|| Some(usual.to_string()).filter(somebody))
         .or_else(|| env::var("USER").ok().filter(somebody))
         .or_else(|| env::var("LOGNAME").ok().filter(somebody))
-        .or_else(|| Some(protocol.to_string()).filter(somebody))
         .unwrap_or_else(|| "not named".into())
+}
+
+/// The lab's settings. Ones that cannot be read are said and not used: they are defaults and nothing more.
+fn lab() -> Lab {
+    let Some(places) = store::places() else {
+        return Lab::default();
+    };
+    store::lab(&places).unwrap_or_else(|e| {
+        out::talk(&format!("rackside: {e}; the usual settings are used"));
+        Lab::default()
+    })
 }
 
 fn read_text(path: &Path) -> Result<String, Failure> {
@@ -95,7 +110,13 @@ fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
     };
     let sheet = Sheet::parse(&read_text(from)?).map_err(|e| bad(e.to_string()))?;
     let t = sheet.titration().map_err(|e| bad(e.to_string()))?;
-    let who = operator(named, &t.protocol.operator);
+    let lab = lab();
+    let usual = if lab.operator.is_empty() {
+        &t.protocol.operator
+    } else {
+        &lab.operator
+    };
+    let who = operator(named, usual);
     let since = shell::now();
     let notebook = Notebook::open(t.protocol, t.levels, t.tubes, since, &who)
         .map_err(|e| bad(e.to_string()))?;
@@ -111,15 +132,16 @@ fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
     Ok(())
 }
 
-/// Notices about a file that was opened, to be said on stderr and on the screen.
-fn notices(path: &Path, changed: &[u32]) -> Vec<String> {
-    if changed.is_empty() {
-        return Vec::new();
+/// Says on stderr that a file was changed.
+fn say_changed(path: &Path, changed: &[u32]) {
+    if !changed.is_empty() {
+        let list: Vec<String> = changed.iter().map(ToString::to_string).collect();
+        out::talk(&format!(
+            "{}: changed outside rackside: entries {}",
+            path.display(),
+            list.join(", ")
+        ));
     }
-    let list: Vec<String> = changed.iter().map(ToString::to_string).collect();
-    let notice = format!("changed outside rackside: entries {}", list.join(", "));
-    out::talk(&format!("{}: {notice}", path.display()));
-    vec![notice]
 }
 
 fn open(path: &Path, sitting: Sitting) -> Result<(), Failure> {
@@ -138,29 +160,45 @@ fn on_a_terminal() -> bool {
 }
 
 fn sit(path: &Path, sitting: Sitting) -> Result<(), Failure> {
-    let since = shell::now();
-    let who = operator(sitting.operator, "");
-    let (opened, notices) = match store::open_for_writing(
-        path,
-        &Holder {
-            who: who.clone(),
-            since,
-        },
-    ) {
-        Ok(opened) => {
-            let said = notices(path, &opened.changed);
-            (opened, said)
-        }
-        Err(e @ StoreError::Locked { .. }) => (store::open(path)?, vec![e.to_string()]),
-        Err(e) => return Err(e.into()),
-    };
-    shell::sit(opened, who, notices, look(sitting.ascii))?;
-    Ok(())
+    let lab = lab();
+    let who = operator(sitting.operator, &lab.operator);
+    let (opened, notices) = shell::open(path, &who)?;
+    say_changed(path, &opened.changed);
+    let look = look(sitting.ascii, &lab);
+    printed(shell::sit(
+        First::Titration(Box::new(opened), notices),
+        who,
+        lab,
+        look,
+    )?)
+}
+
+fn start() -> Result<(), Failure> {
+    if !on_a_terminal() {
+        return Err(Failure::new(
+            Failure::USAGE,
+            "the start screen wants a terminal on standard input and output",
+        )
+        .hint("`rackside --help` lists the commands that work without one"));
+    }
+    let lab = lab();
+    let who = operator(None, &lab.operator);
+    let look = look(false, &lab);
+    printed(shell::sit(First::Start, who, lab, look)?)
+}
+
+/// Prints a page that was asked for at the bench.
+fn printed(page: Option<String>) -> Result<(), Failure> {
+    page.map_or(Ok(()), |page| out::result(&page))
 }
 
 /// How the screen begins: fine characters where the locale and the terminal have them.
-fn look(ascii: bool) -> Look {
-    let fine = !ascii && glyphs(false) == Glyphs::Braille;
+fn look(ascii: bool, lab: &Lab) -> Look {
+    let fine = match lab.glyphs {
+        PlotGlyphs::Fine => !ascii,
+        PlotGlyphs::Plain => false,
+        PlotGlyphs::Automatic => glyphs(ascii) == Glyphs::Braille,
+    };
     let (columns, rows) = shell::size();
     Look {
         fine,
@@ -203,7 +241,7 @@ fn take(
         source.display().to_string()
     };
     let since = shell::now();
-    let who = operator(named, "");
+    let who = operator(named, &lab().operator);
     let mut opened = store::open_for_writing(
         path,
         &Holder {
@@ -211,7 +249,7 @@ fn take(
             since,
         },
     )?;
-    notices(path, &opened.changed);
+    say_changed(path, &opened.changed);
     let counts = table::readings(&text, &name, opened.notebook.titration(), recount)?;
     let n = counts.len();
     let entry = opened
@@ -256,7 +294,7 @@ fn page(opened: &store::Opened, format: Format, ascii: bool) -> Result<String, F
 
 fn summary(path: &Path, format: Format, ascii: bool) -> Result<(), Failure> {
     let opened = store::open(path)?;
-    notices(path, &opened.changed);
+    say_changed(path, &opened.changed);
     out::result(&page(&opened, format, ascii)?)
 }
 
@@ -277,12 +315,19 @@ fn check(path: &Path) -> Result<ExitCode, Failure> {
     if opened.changed.is_empty() {
         return Ok(ExitCode::SUCCESS);
     }
-    notices(path, &opened.changed);
+    say_changed(path, &opened.changed);
     Ok(ExitCode::from(Failure::DATA))
 }
 
 fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
-    let demo = demos::find(name)?;
+    let demo = demos::find(name).ok_or_else(|| {
+        let names: Vec<&str> = demos::DEMOS.iter().map(|d| d.name).collect();
+        let name = name.unwrap_or_default();
+        Failure::new(
+            Failure::USAGE,
+            format!("there is no demo `{name}`; there are {}", names.join(", ")),
+        )
+    })?;
     if on_a_terminal() {
         let path = demos::copy(demo)?;
         return sit(&path, sitting);

@@ -57,6 +57,10 @@ impl From<StoreError> for Failure {
 
 impl From<ShellError> for Failure {
     fn from(e: ShellError) -> Self {
-        Failure::new(Failure::IO, e.to_string())
+        let code = match e {
+            ShellError::CannotCreate { .. } => 73,
+            _ => Failure::IO,
+        };
+        Failure::new(code, e.to_string())
     }
 }

@@ -2,9 +2,9 @@
 
 use super::style;
 use crate::analysis::Analysis;
-use crate::app::App;
+use crate::app::Desk;
 use crate::assay::{Protocol, TubeNo, sites_shown};
-use crate::fit::{Fit, Outcome};
+use crate::fit::{Fit, Missing, Outcome};
 use crate::report::values::{self, Shown};
 use crate::units::{clean, significant};
 use ratatui::Frame;
@@ -12,10 +12,10 @@ use ratatui::layout::Rect;
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
-pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let mut lines = match &app.analysed {
         None => vec![Line::styled(" fitting ...", style::quiet())],
-        Some(done) => estimates(app, &done.analysis),
+        Some(done) => estimates(app, &done.analysis, usize::from(area.width)),
     };
     lines.truncate(usize::from(area.height).saturating_sub(1));
     while lines.len() + 1 < usize::from(area.height) {
@@ -25,17 +25,10 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
     frame.render_widget(Paragraph::new(lines), area);
 }
 
-fn estimates(app: &App, analysis: &Analysis) -> Vec<Line<'static>> {
+fn estimates(app: &Desk, analysis: &Analysis, width: usize) -> Vec<Line<'static>> {
     let protocol = &app.titration().protocol;
     match &analysis.outcome {
-        Outcome::TooEarly(missing) => {
-            let mut lines = vec![Line::styled(
-                " too early for Kd; still wanted:",
-                style::strong(),
-            )];
-            lines.extend(missing.iter().map(|m| Line::from(format!("   {m}"))));
-            lines
-        }
+        Outcome::TooEarly(missing) => too_early(missing, width),
         Outcome::NoConvergence => vec![
             Line::styled(" no fit found for these readings", style::strong()),
             Line::from("   look for a reading typed wrong, or at the protocol's units"),
@@ -48,6 +41,28 @@ fn estimates(app: &App, analysis: &Analysis) -> Vec<Line<'static>> {
             lines
         }
     }
+}
+
+/// What is still wanted, as many to a line as there is room for.
+fn too_early(missing: &[Missing], width: usize) -> Vec<Line<'static>> {
+    let mut lines = vec![Line::styled(
+        " too early for Kd; still wanted:",
+        style::strong(),
+    )];
+    let mut text = String::new();
+    for m in missing {
+        let m = m.to_string();
+        if !text.is_empty() && text.len() + m.len() + 5 > width {
+            lines.push(Line::from(format!("   {text}")));
+            text.clear();
+        }
+        if !text.is_empty() {
+            text.push_str("; ");
+        }
+        text.push_str(&m);
+    }
+    lines.push(Line::from(format!("   {text}")));
+    lines
 }
 
 /// A name in bold and what is said of it.
@@ -64,7 +79,7 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
     ])
 }
 
-fn fitted(app: &App, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
+fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
     let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("  pKd {p}"));
     let of = app
         .titration()
@@ -129,12 +144,12 @@ fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>) {
 }
 
 /// What the tube kept last or chosen shows, before any fit.
-fn newest(app: &App) -> Line<'static> {
+fn newest(app: &Desk) -> Line<'static> {
     let tube = app.bench.last.map_or(app.bench.at, |(no, _)| no);
     Line::styled(amounts(app, tube).unwrap_or_default(), style::quiet())
 }
 
-fn amounts(app: &App, no: TubeNo) -> Option<String> {
+fn amounts(app: &Desk, no: TubeNo) -> Option<String> {
     let done = app.analysed.as_ref()?;
     let r = done.analysis.tubes.iter().find(|t| t.tube.no == no)?;
     let unit = app.titration().protocol.display.concentration;

@@ -1,7 +1,7 @@
 //! What lies over the bench.
 
 use super::style;
-use crate::app::{App, Layer, LineFor, ReasonFor, keys};
+use crate::app::{Desk, Layer, LineFor, ReasonFor, Step, keys};
 use crate::assay::Reason;
 use crate::units::clean;
 use ratatui::Frame;
@@ -9,43 +9,70 @@ use ratatui::layout::{Position, Rect};
 use ratatui::text::Line;
 use ratatui::widgets::{Block, Clear, Paragraph};
 
-pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
+    let fine = app.look.fine;
     match app.layers.last() {
         None => {}
         Some(Layer::Reasons(what)) => reasons(frame, area, app, *what),
         Some(Layer::Line { what, input }) => {
             let title = match what {
                 LineFor::OtherReason(_) => {
-                    "the reason, in words (Enter with none is kept as other)".to_string()
+                    "the reason, in words; Enter with none is kept as other".to_string()
                 }
                 LineFor::Note(tube) => format!("note on vial {tube}"),
+                LineFor::Amend => "why the protocol is corrected".into(),
+                LineFor::Checker => format!("checked by whom? digest {}", app.saved.digest),
+                LineFor::Operator => format!("who is at the keyboard? now {}", clean(&app.who)),
             };
-            let inner = panel(
-                frame,
-                area,
-                &title,
-                vec![
-                    Line::from(input.value().to_string()),
-                    Line::styled("Enter keeps it   Esc leaves it", style::quiet()),
-                ],
-                app,
-            );
-            let x = inner.x + (input.visual_cursor() as u16).min(inner.width.saturating_sub(1));
-            frame.set_cursor_position(Position::new(x, inner.y));
+            let lines = vec![
+                Line::from(input.value().to_string()),
+                Line::styled("Enter keeps it   Esc leaves it", style::quiet()),
+            ];
+            let inner = panel(frame, area, &title, lines, fine);
+            cursor(frame, inner, input.visual_cursor());
         }
         Some(Layer::Help { top }) => help(frame, area, app, *top),
+        Some(Layer::Close) => {
+            let (title, text) = match app.titration().closed {
+                None => (
+                    "close the titration?",
+                    "Nothing is added to a closed titration until it is opened again.",
+                ),
+                Some(_) => (
+                    "open it again?",
+                    "The titration is closed; readings and flags can be added again.",
+                ),
+            };
+            let lines = vec![
+                Line::from(text),
+                Line::from("y does it; any other key leaves it."),
+            ];
+            panel(frame, area, title, lines, fine);
+        }
         Some(Layer::LeaveUnsaved) => {
             let text = vec![
                 Line::from("The newest entries are NOT in the file."),
                 Line::from("y leaves and loses them; any other key goes back to the bench."),
             ];
-            panel(frame, area, "leave?", text, app);
+            panel(frame, area, "leave?", text, fine);
         }
     }
 }
 
+/// Puts the cursor into the first line of a panel.
+pub(super) fn cursor(frame: &mut Frame, inner: Rect, column: usize) {
+    let x = inner.x + (column as u16).min(inner.width.saturating_sub(1));
+    frame.set_cursor_position(Position::new(x, inner.y));
+}
+
 /// A box in the middle, above the prompt; returns what is inside.
-fn panel(frame: &mut Frame, area: Rect, title: &str, lines: Vec<Line>, app: &App) -> Rect {
+pub(super) fn panel(
+    frame: &mut Frame,
+    area: Rect,
+    title: &str,
+    lines: Vec<Line>,
+    fine: bool,
+) -> Rect {
     let longest = lines
         .iter()
         .map(Line::width)
@@ -58,7 +85,7 @@ fn panel(frame: &mut Frame, area: Rect, title: &str, lines: Vec<Line>, app: &App
     let y = area.y + (area.height - height) / 2;
     let place = Rect::new(x, y, width, height);
     let mut block = Block::bordered().title(format!(" {title} "));
-    if !app.look.fine {
+    if !fine {
         block = block.border_set(ASCII);
     }
     let inner = block.inner(place);
@@ -85,7 +112,7 @@ const ASCII: ratatui::symbols::border::Set = ratatui::symbols::border::Set {
     horizontal_bottom: "-",
 };
 
-fn reasons(frame: &mut Frame, area: Rect, app: &App, what: ReasonFor) {
+fn reasons(frame: &mut Frame, area: Rect, app: &Desk, what: ReasonFor) {
     let t = app.titration();
     let (tube, verb) = match what {
         ReasonFor::Suspect(tube, _) => (tube, "suspect"),
@@ -97,24 +124,46 @@ fn reasons(frame: &mut Frame, area: Rect, app: &App, what: ReasonFor) {
         .map(|(d, r)| Line::from(format!("{d}  {r}")))
         .collect();
     lines.push(Line::styled("0  leave it", style::quiet()));
-    panel(frame, area, &format!("{verb}: {name}"), lines, app);
+    panel(
+        frame,
+        area,
+        &format!("{verb}: {name}"),
+        lines,
+        app.look.fine,
+    );
 }
 
-fn help(frame: &mut Frame, area: Rect, app: &App, top: u16) {
-    let room = usize::from(area.height).saturating_sub(4);
-    let mut lines = vec![Line::from(
-        "digits and the decimal mark type a reading; the unit stands before the line",
-    )];
-    lines.extend(
-        keys::BENCH
-            .iter()
-            .map(|b| Line::from(format!("{:<7} {}", b.shown, b.help))),
-    );
+fn help(frame: &mut Frame, area: Rect, app: &Desk, top: u16) {
+    let room = usize::from(area.height).saturating_sub(2);
+    let mut lines = Vec::new();
+    if app.step == Step::Result {
+        lines.extend(
+            keys::RESULT
+                .iter()
+                .map(|b| Line::from(format!("{:<7} {}", b.shown, b.help))),
+        );
+        lines.push(Line::from("PgUp    back to the tubes"));
+    } else {
+        lines.push(Line::from(
+            "digits and the decimal mark type a reading; its unit stands before it",
+        ));
+        lines.extend(
+            keys::BENCH
+                .iter()
+                .map(|b| Line::from(format!("{:<7} {}", b.shown, b.help))),
+        );
+    }
     let over = lines.len().saturating_sub(room);
     let lines: Vec<Line> = lines
         .into_iter()
         .skip(usize::from(top).min(over))
         .take(room)
         .collect();
-    panel(frame, area, "keys   (any other key closes)", lines, app);
+    panel(
+        frame,
+        area,
+        "keys   (Up and Down move; any other key closes)",
+        lines,
+        app.look.fine,
+    );
 }

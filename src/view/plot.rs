@@ -1,7 +1,7 @@
 //! The plot beside the rack or alone.
 
 use super::style;
-use crate::app::App;
+use crate::app::Desk;
 use crate::figure::{Class, Glyphs, Scale, isotherm, render};
 use ratatui::Frame;
 use ratatui::layout::Rect;
@@ -9,7 +9,7 @@ use ratatui::style::Style;
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
-pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let (columns, rows) = (usize::from(area.width), usize::from(area.height));
     let Some(done) = &app.analysed else {
         frame.render_widget(

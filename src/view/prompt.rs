@@ -1,7 +1,7 @@
 //! The prompt: what was said, which tube is next, the line being typed, the keys.
 
 use super::style;
-use crate::app::{Access, App, Field, keys};
+use crate::app::{Access, Desk, Field, keys};
 use crate::assay::Scale;
 use crate::units::{clean, fixed};
 use ratatui::Frame;
@@ -10,7 +10,7 @@ use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
 /// Bars that stand as long as what they say holds.
-pub(super) fn bars(app: &App) -> Vec<Line<'static>> {
+pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
     let mut bars = Vec::new();
     if let (Some(why), false) = (&app.saved.failed, app.is_saved()) {
         bars.push(Line::styled(
@@ -32,7 +32,7 @@ pub(super) fn bars(app: &App) -> Vec<Line<'static>> {
     bars
 }
 
-pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let width = usize::from(area.width);
     let (label, typed) = entry(app);
     let cursor = label.chars().count() + typed.chars().take(app.bench.line.visual_cursor()).count();
@@ -48,8 +48,12 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
         ));
         line.push(Span::styled(saved, style::quiet()));
     }
+    let hint = app.hint().filter(|_| app.message.text.is_empty());
     let said = Span::styled(
-        format!(" {}", clean(&app.message.text)),
+        format!(
+            " {}",
+            hint.map_or_else(|| clean(&app.message.text), String::from)
+        ),
         if app.message.refusal {
             style::strong()
         } else {
@@ -75,7 +79,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
 }
 
 /// The tube at the prompt, its role in capitals, and how far the rack is.
-fn next(app: &App, width: usize) -> Line<'static> {
+fn next(app: &Desk, width: usize) -> Line<'static> {
     let t = app.titration();
     let (read, all) = t.progress();
     let progress = format!("{read} of {all} ");
@@ -108,7 +112,7 @@ fn next(app: &App, width: usize) -> Line<'static> {
 }
 
 /// What is asked for, with its unit, and what is typed so far.
-fn entry(app: &App) -> (String, String) {
+fn entry(app: &Desk) -> (String, String) {
     let counter = &app.titration().protocol.counter;
     let mark = counter.mark.char().to_string();
     let minutes = fixed(app.offered_minutes(), 2).replace('.', &mark);
@@ -129,7 +133,7 @@ fn entry(app: &App) -> (String, String) {
     (label, typed)
 }
 
-fn saved(app: &App) -> String {
+fn saved(app: &Desk) -> String {
     match (&app.access, app.is_saved(), app.saved.at) {
         (Access::ReadOnly(_), ..) => "read only".into(),
         (_, true, Some(at)) => format!("saved {}", at.clock()),

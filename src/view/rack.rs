@@ -1,7 +1,7 @@
 //! The rack as a table: a row a level, downward in counting order, the prompt's place marked.
 
 use super::style;
-use crate::app::App;
+use crate::app::Desk;
 use crate::assay::{LevelNo, Role, Titration, Tube, observed, replicate_letter};
 use crate::units::{FMOL_PER_NM_ML, fixed, short, significant};
 use ratatui::Frame;
@@ -36,7 +36,7 @@ fn widest(t: &Titration, role: Role) -> usize {
 }
 
 /// What a tube's cell says.
-fn cell(app: &App, tube: &Tube, width: usize) -> (String, Style) {
+fn cell(app: &Desk, tube: &Tube, width: usize) -> (String, Style) {
     let t = app.titration();
     let here = app.bench.at == tube.no;
     let text = if t.lost.contains_key(&tube.no) {
@@ -62,7 +62,7 @@ fn cell(app: &App, tube: &Tube, width: usize) -> (String, Style) {
 }
 
 impl Table {
-    pub(super) fn of(app: &App, height: u16) -> Table {
+    pub(super) fn of(app: &Desk, height: u16) -> Table {
         let t = app.titration();
         let (totals, others) = (widest(t, Role::Total), widest(t, Role::Nonspecific));
         let most = t
@@ -118,7 +118,7 @@ impl Table {
         table
     }
 
-    fn background(&mut self, app: &App) {
+    fn background(&mut self, app: &Desk) {
         let t = app.titration();
         let vials: Vec<&Tube> = t
             .tubes
@@ -142,7 +142,7 @@ impl Table {
 
     fn level(
         &mut self,
-        app: &App,
+        app: &Desk,
         level: LevelNo,
         shown: &str,
         (totals, others): (usize, usize),
@@ -205,7 +205,7 @@ impl Table {
 
 /// Mean amount in the totals of a level that are in use, in fmol in the tube, with its counting error: specific with
 /// a fit, bound before.
-fn amount(app: &App, level: LevelNo) -> Option<(f64, f64)> {
+fn amount(app: &Desk, level: LevelNo) -> Option<(f64, f64)> {
     let analysis = &app.analysed.as_ref()?.analysis;
     let fmol = FMOL_PER_NM_ML * app.titration().protocol.incubation.volume.base();
     let (mut sum, mut variance, mut n) = (0.0, 0.0, 0.0);

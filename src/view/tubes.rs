@@ -1,7 +1,7 @@
 //! Every tube with its amounts: counts, bound, free, specific.
 
 use super::style;
-use crate::app::App;
+use crate::app::Desk;
 use crate::report::values;
 use crate::units::{fixed, short, significant};
 use ratatui::Frame;
@@ -10,7 +10,7 @@ use ratatui::style::Style;
 use ratatui::text::Line;
 use ratatui::widgets::Paragraph;
 
-pub(super) fn draw(frame: &mut Frame, area: Rect, app: &App) {
+pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let t = app.titration();
     let unit = t.protocol.display.concentration;
     let head = format!(

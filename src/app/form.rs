@@ -1,0 +1,230 @@
+//! A form: fields one below the other, each a line of text or a choice, with one line of help.
+
+use super::keys::Key;
+use tui_input::{Input, InputRequest};
+
+/// What a field holds.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Kind {
+    /// Text that may be left out.
+    Text,
+    /// Text that is needed.
+    Needed,
+    /// One of these.
+    Choice(&'static [&'static str]),
+}
+
+/// One field of a form.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct Spec {
+    /// Its name on the screen, unique in its form.
+    pub name: &'static str,
+    /// Its path in the protocol or the ladder, for errors that name it.
+    pub path: &'static str,
+    /// What it holds.
+    pub kind: Kind,
+    /// One line of help.
+    pub help: &'static str,
+}
+
+/// A field with what is typed in it.
+#[derive(Debug, Clone)]
+pub struct FieldState {
+    /// Which field.
+    pub spec: &'static Spec,
+    /// The line.
+    pub input: Input,
+    /// What is wrong with it, if anything.
+    pub error: Option<String>,
+    /// It may be looked at and not changed here.
+    pub fixed: bool,
+    /// The value as a whole was just reached: typing puts another in its place, an arrow begins to edit it.
+    pub whole: bool,
+}
+
+impl FieldState {
+    /// What is typed.
+    pub fn value(&self) -> &str {
+        self.input.value()
+    }
+}
+
+/// Fields and the place of the cursor.
+#[derive(Debug, Clone)]
+pub struct Form {
+    /// The fields.
+    pub fields: Vec<FieldState>,
+    /// Which one has the cursor.
+    pub at: usize,
+}
+
+/// What a key did to a form.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Did {
+    /// The value of a field changed.
+    Changed,
+    /// The cursor moved.
+    Moved,
+    /// Enter on the last field.
+    Through,
+    /// Nothing of the form's.
+    Nothing,
+}
+
+/// The longest value, in characters.
+const MOST: usize = 300;
+
+impl Form {
+    /// A form with the values that `value` gives its fields.
+    pub fn new(specs: &'static [Spec], value: impl Fn(&Spec) -> String) -> Form {
+        let fields = specs
+            .iter()
+            .map(|spec| FieldState {
+                spec,
+                input: Input::new(value(spec)),
+                error: None,
+                fixed: false,
+                whole: false,
+            })
+            .collect();
+        Form { fields, at: 0 }
+    }
+
+    /// What is typed in a field, without blanks at its ends; empty for a name the form does not have.
+    pub fn value(&self, name: &str) -> &str {
+        self.fields
+            .iter()
+            .find(|f| f.spec.name == name)
+            .map_or("", |f| f.value().trim())
+    }
+
+    /// Makes every field one that is only looked at.
+    pub fn fix(&mut self) {
+        self.fields.iter_mut().for_each(|f| f.fixed = true);
+    }
+
+    /// The field with the cursor.
+    pub fn current(&self) -> Option<&FieldState> {
+        self.fields.get(self.at)
+    }
+
+    /// Forgets all errors and sets these, each `(name or path, what)`.
+    pub fn set_errors(&mut self, errors: &[(String, String)]) {
+        for f in &mut self.fields {
+            f.error = errors
+                .iter()
+                .find(|(at, _)| at == f.spec.name || at == f.spec.path)
+                .map(|(_, what)| what.clone());
+        }
+    }
+
+    /// How many fields are in error.
+    pub fn errors(&self) -> usize {
+        self.fields.iter().filter(|f| f.error.is_some()).count()
+    }
+
+    /// Puts the cursor on the first field in error.
+    pub fn go_to_error(&mut self) {
+        if let Some(i) = self.fields.iter().position(|f| f.error.is_some()) {
+            self.at = i;
+        }
+    }
+
+    /// Takes a key.
+    pub fn key(&mut self, key: Key) -> Did {
+        let before = self.at;
+        let did = self.take(key);
+        if self.at != before
+            && let Some(f) = self.fields.get_mut(self.at)
+        {
+            f.whole = !f.value().is_empty() && !matches!(f.spec.kind, Kind::Choice(_));
+        }
+        did
+    }
+
+    fn take(&mut self, key: Key) -> Did {
+        let last = self.fields.len().saturating_sub(1);
+        match key {
+            Key::Up | Key::BackTab => {
+                self.at = self.at.saturating_sub(1);
+                return Did::Moved;
+            }
+            Key::Down | Key::Tab => {
+                self.at = (self.at + 1).min(last);
+                return Did::Moved;
+            }
+            Key::Enter if self.at >= last => return Did::Through,
+            Key::Enter => {
+                self.at += 1;
+                return Did::Moved;
+            }
+            _ => {}
+        }
+        let Some(field) = self.fields.get_mut(self.at) else {
+            return Did::Nothing;
+        };
+        if field.fixed {
+            return Did::Nothing;
+        }
+        match field.spec.kind {
+            Kind::Choice(options) => choose(field, options, key),
+            Kind::Text | Kind::Needed => {
+                let whole = std::mem::take(&mut field.whole);
+                if whole && matches!(key, Key::Char(_) | Key::Backspace | Key::Delete) {
+                    field.input.reset();
+                    edit(&mut field.input, key, MOST);
+                    return Did::Changed;
+                }
+                edit(&mut field.input, key, MOST)
+            }
+        }
+    }
+}
+
+fn choose(field: &mut FieldState, options: &[&str], key: Key) -> Did {
+    let n = options.len();
+    let here = options
+        .iter()
+        .position(|o| *o == field.value())
+        .unwrap_or(0);
+    let next = match key {
+        Key::Right | Key::Char(' ') => (here + 1) % n,
+        Key::Left => (here + n - 1) % n,
+        // A digit or a first letter chooses directly.
+        Key::Char(c) => match c.to_digit(10) {
+            Some(d) if (1..=n as u32).contains(&d) => d as usize - 1,
+            _ => match options
+                .iter()
+                .position(|o| o.to_lowercase().starts_with(c.to_ascii_lowercase()))
+            {
+                Some(i) => i,
+                None => return Did::Nothing,
+            },
+        },
+        _ => return Did::Nothing,
+    };
+    field.input = Input::new(options[next].into());
+    Did::Changed
+}
+
+/// A key in a line of text.
+pub(super) fn edit(input: &mut Input, key: Key, most: usize) -> Did {
+    let request = match key {
+        Key::Char(c) if c.is_control() || input.value().chars().count() >= most => {
+            return Did::Nothing;
+        }
+        Key::Char(c) => InputRequest::InsertChar(c),
+        Key::Backspace => InputRequest::DeletePrevChar,
+        Key::Delete => InputRequest::DeleteNextChar,
+        Key::Left => InputRequest::GoToPrevChar,
+        Key::Right => InputRequest::GoToNextChar,
+        Key::Home => InputRequest::GoToStart,
+        Key::End => InputRequest::GoToEnd,
+        Key::Ctrl('u') => InputRequest::DeleteLine,
+        _ => return Did::Nothing,
+    };
+    match input.handle(request) {
+        Some(changed) if changed.value => Did::Changed,
+        _ => Did::Moved,
+    }
+}

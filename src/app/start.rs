@@ -1,0 +1,160 @@
+//! The start: titrations used lately, a new one, a file by its path, the demos, the lab's settings.
+
+use super::form::{Did, Form, edit};
+use super::keys::{self, Key, StartCommand};
+use super::sheet::{lab_form, read_lab};
+use super::{Effect, Event, Message};
+use crate::assay::{Lab, Stamp};
+use tui_input::Input;
+
+/// A titration used lately.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Recent {
+    /// Its file.
+    pub path: String,
+    /// What it is called.
+    pub title: String,
+    /// How far it is: `24 of 32, Kd 0.49 nM`, or why it cannot be read.
+    pub state: String,
+}
+
+/// What lies over the start.
+#[derive(Debug, Clone)]
+pub enum Ask {
+    /// The path of a file.
+    Path(Input),
+    /// Which demo.
+    Demo,
+    /// The lab's settings.
+    Lab(Box<Form>),
+    /// The keys.
+    Help,
+}
+
+/// The start screen.
+#[derive(Debug, Clone, Default)]
+pub struct Start {
+    /// Titrations used lately, newest first; `None` until they are looked up.
+    pub recents: Option<Vec<Recent>>,
+    /// Which one the cursor is on.
+    pub at: usize,
+    /// What lies over it.
+    pub ask: Option<Ask>,
+    /// The last thing said.
+    pub message: Message,
+    /// A new titration is wanted.
+    pub(super) wants_draft: bool,
+}
+
+impl Start {
+    pub(super) fn update(&mut self, event: Event, lab: &mut Lab, _now: Stamp) -> Vec<Effect> {
+        match event {
+            Event::Key(key) => self.key(key, lab),
+            Event::Paste(text) => {
+                if let Some(Ask::Path(input)) = &mut self.ask {
+                    for c in text.trim().chars() {
+                        edit(input, Key::Char(c), 1000);
+                    }
+                }
+                Vec::new()
+            }
+            Event::Recents(list) => {
+                self.at = self.at.min(list.len().saturating_sub(1));
+                self.recents = Some(list);
+                Vec::new()
+            }
+            Event::Refused(what) => {
+                self.message = Message::refused(what);
+                vec![Effect::Bell]
+            }
+            Event::Done(what) => {
+                self.message = Message::said(what);
+                Vec::new()
+            }
+            _ => Vec::new(),
+        }
+    }
+
+    fn key(&mut self, key: Key, lab: &mut Lab) -> Vec<Effect> {
+        match self.ask.take() {
+            None => self.choose(key, lab),
+            Some(Ask::Help) => Vec::new(),
+            Some(Ask::Path(mut input)) => match key {
+                Key::Esc => Vec::new(),
+                Key::Enter if input.value().trim().is_empty() => Vec::new(),
+                Key::Enter => vec![Effect::Open(input.value().trim().into())],
+                key => {
+                    edit(&mut input, key, 1000);
+                    self.ask = Some(Ask::Path(input));
+                    Vec::new()
+                }
+            },
+            Some(Ask::Demo) => match key {
+                Key::Char('1') => vec![Effect::Demo("half-typed".into())],
+                Key::Char('2') => vec![Effect::Demo("finished".into())],
+                _ => Vec::new(),
+            },
+            Some(Ask::Lab(form)) => self.lab_key(form, key, lab),
+        }
+    }
+
+    fn lab_key(&mut self, mut form: Box<Form>, key: Key, lab: &mut Lab) -> Vec<Effect> {
+        if key == Key::Esc {
+            self.message = Message::said("the settings are as they were");
+            return Vec::new();
+        }
+        let did = form.key(key);
+        match read_lab(&form) {
+            Err(errors) => {
+                form.set_errors(&errors);
+                if did == Did::Through {
+                    form.go_to_error();
+                }
+            }
+            Ok(read) => {
+                form.set_errors(&[]);
+                if did == Did::Through {
+                    *lab = read.clone();
+                    return vec![Effect::KeepLab(Box::new(read))];
+                }
+            }
+        }
+        self.ask = Some(Ask::Lab(form));
+        Vec::new()
+    }
+
+    fn choose(&mut self, key: Key, lab: &Lab) -> Vec<Effect> {
+        let recents = self.recents.as_deref().unwrap_or_default();
+        let last = recents.len().saturating_sub(1);
+        if let Key::Char(c @ '1'..='9') = key {
+            let i = c as usize - '1' as usize;
+            return recents
+                .get(i)
+                .map_or(Vec::new(), |r| vec![Effect::Open(r.path.clone())]);
+        }
+        let Some(command) = keys::start_command(key) else {
+            if let Key::Char(c) = key {
+                self.message =
+                    Message::refused(format!("`{c}` does nothing here; ? shows the keys"));
+            }
+            return Vec::new();
+        };
+        self.message = Message::default();
+        match command {
+            StartCommand::Up => self.at = self.at.saturating_sub(1),
+            StartCommand::Down => self.at = (self.at + 1).min(last),
+            StartCommand::Open => {
+                return recents
+                    .get(self.at)
+                    .map_or(Vec::new(), |r| vec![Effect::Open(r.path.clone())]);
+            }
+            StartCommand::New => self.wants_draft = true,
+            StartCommand::Path => self.ask = Some(Ask::Path(Input::default())),
+            StartCommand::Demo => self.ask = Some(Ask::Demo),
+            StartCommand::Lab => self.ask = Some(Ask::Lab(Box::new(lab_form(lab)))),
+            StartCommand::Help => self.ask = Some(Ask::Help),
+            StartCommand::Quit => return vec![Effect::Quit],
+        }
+        Vec::new()
+    }
+}
