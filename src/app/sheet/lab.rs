@@ -1,0 +1,67 @@
+//! The lab's settings in their form.
+
+use super::super::fields::{self, GLYPHS, MARKS};
+use super::super::form::Form;
+use super::Errors;
+use super::read::{Reader, prior, share};
+use super::write::cv_fields;
+use crate::assay::{Lab, PlotGlyphs};
+use crate::units::Mark;
+
+/// The form of the lab's settings.
+pub(in crate::app) fn lab_form(lab: &Lab) -> Form {
+    Form::new(fields::LAB, |s| match s.name {
+        "operator" => lab.operator.clone(),
+        "counter" => lab.counter.clone(),
+        "decimal mark" => MARKS[usize::from(lab.mark == Mark::Comma)].into(),
+        "plot characters" => GLYPHS[match lab.glyphs {
+            PlotGlyphs::Automatic => 0,
+            PlotGlyphs::Fine => 1,
+            PlotGlyphs::Plain => 2,
+        }]
+        .into(),
+        name => cv_fields(name, lab.cv_prior, &lab.dilution_error),
+    })
+}
+
+/// The lab's settings as typed.
+pub(in crate::app) fn read_lab(form: &Form) -> Result<Lab, Errors> {
+    let mark = if form.value("decimal mark") == MARKS[1] {
+        Mark::Comma
+    } else {
+        Mark::Point
+    };
+    let mut r = Reader::new(form, mark);
+    let cv_prior = prior(&mut r);
+    let dilution_error = r
+        .maybe("dilution error")
+        .unwrap_or(Lab::default().dilution_error);
+    let glyphs = [PlotGlyphs::Automatic, PlotGlyphs::Fine, PlotGlyphs::Plain]
+        [r.choice("plot characters", &GLYPHS)];
+    if let Some(p) = cv_prior
+        && !(p.centre > 0.0 && p.centre <= 1.0)
+    {
+        r.wrong("tube CV", "more than 0 and at most 100 %");
+    }
+    if let Some(p) = cv_prior
+        && !(p.sd_ln > 0.0 && p.sd_ln <= 10.0)
+    {
+        r.wrong("its factor", "more than 0 and at most 10");
+    }
+    if !(0.0..=0.5).contains(&share(&dilution_error)) {
+        r.wrong("dilution error", "0 to 50 %");
+    }
+    let lab = Lab {
+        operator: r.text("operator"),
+        counter: r.text("counter"),
+        mark,
+        cv_prior,
+        dilution_error,
+        glyphs,
+    };
+    if r.errors.is_empty() {
+        Ok(lab)
+    } else {
+        Err(r.errors)
+    }
+}

@@ -1,0 +1,105 @@
+//! A protocol as it is typed.
+
+use super::super::fields::{BLANKS, MARKS, READING, SITES, STICKS};
+use crate::assay::{
+    BlankKind, CvPrior, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled,
+};
+use crate::units::{Fraction, Mark, Typed, short};
+
+pub(super) fn percent(v: f64) -> String {
+    format!("{} %", short(100.0 * v, 6))
+}
+
+pub(super) fn receptor_text(amount: &ReceptorAmount) -> String {
+    match amount {
+        ReceptorAmount::Unknown => "unknown".into(),
+        ReceptorAmount::Protein(m) => format!("{m} protein"),
+        ReceptorAmount::Tissue(m) => format!("{m} tissue"),
+        ReceptorAmount::Cells(n) if n.text.ends_with("cells") => n.text.clone(),
+        ReceptorAmount::Cells(n) => format!("{n} cells"),
+    }
+}
+
+pub(super) fn text<T: ToString>(value: Option<&T>) -> String {
+    value.map_or(String::new(), ToString::to_string)
+}
+
+pub(super) fn protocol_value(p: &Protocol, name: &str) -> String {
+    let (blocked, ki) = match &p.nonspecific.unlabelled {
+        Unlabelled::SameLigand => ("same".to_string(), String::new()),
+        Unlabelled::Other { name, ki } => (name.clone(), text(ki.as_ref())),
+    };
+    match name {
+        "title" => p.title.clone(),
+        "operator" => p.operator.clone(),
+        "ligand" => p.ligand.name.clone(),
+        "label" => p.ligand.label.clone(),
+        "specific activity" => p.ligand.specific_activity.to_string(),
+        "activity date" => text(p.ligand.activity_date.as_ref()),
+        "lot" => p.ligand.lot.clone(),
+        "preparation" => p.receptor.preparation.clone(),
+        "batch" => p.receptor.batch.clone(),
+        "amount per tube" => receptor_text(&p.receptor.amount),
+        "amount found by" => p.receptor.method.clone(),
+        "volume" => p.incubation.volume.to_string(),
+        "unlabelled" => p.nonspecific.concentration.to_string(),
+        "blocked with" => blocked,
+        "its Ki" => ki,
+        "nonspecific sticks to" => {
+            STICKS[usize::from(p.nonspecific.sticks == Sticks::ToFilter)].into()
+        }
+        "fraction counted" => p.separation.fraction.to_string(),
+        "separation" => p.separation.method.clone(),
+        "filter and soak" => p.separation.filter.clone(),
+        "washes" => p.separation.washes.clone(),
+        "wash time" => text(p.separation.wash_time.as_ref()),
+        "temperature" => text(p.incubation.temperature.as_ref()),
+        "incubation time" => text(p.incubation.time.as_ref()),
+        "buffer" => p.incubation.buffer.clone(),
+        "vehicle" => text(p.incubation.vehicle.as_ref()),
+        "show concentrations" => p.display.concentration.word().into(),
+        "show sites" => SITES[usize::from(p.display.sites == SitesUnit::InTube)].into(),
+        _ => String::new(),
+    }
+}
+
+pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
+    let c = &p.counter;
+    match name {
+        "counter" => c.name.clone(),
+        "efficiency" => c.efficiency.to_string(),
+        "typed per vial" => READING[match c.fields {
+            Fields::Counts => 0,
+            Fields::CountsMinutes => 1,
+            Fields::Cpm => 2,
+            Fields::CpmMinutes => 3,
+        }]
+        .into(),
+        "minutes per tube" => c.minutes.to_string(),
+        "background minutes" => c.background.minutes.to_string(),
+        "background vial" => BLANKS[match c.background.blank {
+            BlankKind::Scintillant => 0,
+            BlankKind::ScintillantAndFilter => 1,
+            BlankKind::EmptyCounter => 2,
+        }]
+        .into(),
+        "decimal mark" => MARKS[usize::from(c.mark == Mark::Comma)].into(),
+        "confidence" => percent(p.numbers.confidence),
+        "try a printout" => "2406".into(),
+        name => cv_fields(name, p.numbers.cv_prior, &p.numbers.dilution_error),
+    }
+}
+
+/// The fields that a lab's settings and a protocol share.
+pub(super) fn cv_fields(
+    name: &str,
+    prior: Option<CvPrior>,
+    dilution_error: &Typed<Fraction>,
+) -> String {
+    match name {
+        "tube CV" => prior.map_or(String::new(), |p| percent(p.centre)),
+        "its factor" => prior.map_or(String::new(), |p| short(p.sd_ln, 6)),
+        "dilution error" => dilution_error.to_string(),
+        _ => String::new(),
+    }
+}
