@@ -241,6 +241,9 @@ pub struct Terminal {
     reader: Option<JoinHandle<()>>,
     size: (u16, u16),
     ended: bool,
+    /// A shell that kills the program when it is given a line; started beforehand, since starting one takes
+    /// longer than a save.
+    trigger: Option<std::process::Child>,
 }
 
 fn size(columns: u16, rows: u16) -> PtySize {
@@ -268,6 +271,12 @@ impl Terminal {
         command.cwd(home.folder.path());
         let child = pair.slave.spawn_command(command).unwrap();
         drop(pair.slave);
+        let id = child.process_id().unwrap();
+        let trigger = Command::new("sh")
+            .args(["-c", &format!("read line && kill -KILL {id}")])
+            .stdin(Stdio::piped())
+            .spawn()
+            .unwrap();
         let shared = Arc::new(Shared {
             state: Mutex::new(State {
                 parser: vt100::Parser::new(some(rows), some(columns), 0),
@@ -291,6 +300,7 @@ impl Terminal {
             reader: Some(reader),
             size: (columns, rows),
             ended: false,
+            trigger: Some(trigger),
         }
     }
 
@@ -412,6 +422,14 @@ impl Terminal {
         assert!(sent.success(), "kill -{name}");
     }
 
+    /// Kills the program, which cannot know of it, within a fraction of a millisecond.
+    pub fn kill(&mut self) {
+        let mut trigger = self.trigger.take().expect("killed twice");
+        let mut line = trigger.stdin.take().unwrap();
+        line.write_all(b"now\n").unwrap();
+        assert!(trigger.wait().unwrap().success(), "kill -KILL");
+    }
+
     /// Takes the terminal away: the master and every copy of it are closed.
     pub fn hang_up(&mut self) {
         self.shared.state().hang_up = true;
@@ -449,6 +467,11 @@ impl Terminal {
 
 impl Drop for Terminal {
     fn drop(&mut self) {
+        if let Some(mut trigger) = self.trigger.take() {
+            // Without a line it goes away.
+            drop(trigger.stdin.take());
+            let _ = trigger.wait();
+        }
         if !self.ended {
             let _ = self.child.kill();
             let _ = self.child.wait();

@@ -2,8 +2,10 @@
 //! counted it; the counts were simulated and one total is low, as if its filter had been torn.
 
 use super::harness::Home;
-use rackside::assay::TubeNo;
-use rackside::store;
+use rackside::assay::{Titration, TubeNo};
+use rackside::notebook::{Entry, What};
+use rackside::store::{self, Opened};
+use std::sync::LazyLock;
 
 /// Vial and counts in counting order, the background first.
 pub const COUNTS: [(u32, u32); 33] = [
@@ -84,10 +86,48 @@ pub fn counted(first: usize) -> Home {
     home
 }
 
+/// A home with the rack in a file of some megabytes, nothing counted yet: so many notes that every save takes
+/// its time, and a kill or a hang-up falls into one.
+pub fn heavy() -> Home {
+    static TEXT: LazyLock<Vec<u8>> = LazyLock::new(|| {
+        let home = fresh();
+        let Opened {
+            notebook, mut text, ..
+        } = store::open(&home.path(FILE)).unwrap();
+        let first = notebook.entries()[0].clone();
+        for n in 2..10_000 {
+            let what = What::Noted {
+                tube: None,
+                text: "invented ".repeat(50),
+            };
+            let (at, who) = (first.at, first.who.clone());
+            text.append(&Entry { n, at, who, what }).unwrap();
+        }
+        text.to_bytes()
+    });
+    let home = Home::new();
+    home.write(FILE, &*TEXT);
+    home
+}
+
+/// The file of a rack, found whole.
+pub struct InFile(Titration);
+
+impl InFile {
+    pub fn of(home: &Home) -> InFile {
+        let opened = store::open(&home.path(FILE)).expect("the file is not whole");
+        assert_eq!(opened.changed, Vec::<u32>::new());
+        InFile(opened.notebook.titration().clone())
+    }
+
+    /// The counts of a vial, every reading apart.
+    pub fn of_vial(&self, vial: u32) -> Vec<f64> {
+        let kept = self.0.kept(TubeNo(vial)).iter();
+        kept.map(|k| k.reading.value).collect()
+    }
+}
+
 /// The counts of a vial in the file, every reading apart; and that the file is whole.
 pub fn in_file(home: &Home, vial: u32) -> Vec<f64> {
-    let opened = store::open(&home.path(FILE)).expect("the file is not whole");
-    assert_eq!(opened.changed, Vec::<u32>::new());
-    let kept = opened.notebook.titration().kept(TubeNo(vial));
-    kept.iter().map(|k| k.reading.value).collect()
+    InFile::of(home).of_vial(vial)
 }
