@@ -1,10 +1,11 @@
 //! Ends nobody planned: a killed program, a terminal that goes away, a machine that shuts down.
 
-use super::harness::{Shown, Terminal, is_kept, one_at_a_time};
-use super::rack::{COUNTS, FILE, InFile, counts_of, fresh, heavy, in_file, role};
+use super::harness::{Home, Shown, Terminal, is_kept, one_at_a_time};
+use super::rack::{COUNTS, FILE, InFile, fresh, heavy, in_file, role};
 use rand::RngExt;
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
+use std::fs;
 use std::time::{Duration, Instant};
 
 /// Types the first readings; the last one is known to be in the file, as the screen has it.
@@ -102,37 +103,54 @@ fn killed_the_moment_a_slow_save_is_promised_the_reading_is_there() {
     }
 }
 
-#[test]
-fn hung_up_in_the_middle_of_a_save_the_program_ends_and_keeps_everything() {
-    let _one = one_at_a_time();
-    let home = heavy();
-    let mut bench = home.sit(&["open", FILE]);
+/// A bench with two readings: one in the file and one kept that could not be saved, since the folder is away.
+/// The next attempt is a while off.
+fn behind_with_saving(home: &Home) -> Terminal {
+    fs::create_dir(home.path("bench")).unwrap();
+    fs::rename(home.path(FILE), home.path("bench/rack.ron")).unwrap();
+    let mut bench = home.sit(&["open", "bench/rack.ron"]);
     bench.wait_prompt(33, "background");
     bench.keypad("267\r");
     bench.wait_saved(33, 267);
+    fs::rename(home.path("bench"), home.path("away")).unwrap();
     bench.keypad("227\r12");
-    // Kept and not saved yet: what is still to be written is what the end has to wait for.
-    bench.wait("227 kept, 12 on the line", |s| {
-        is_kept(s, 1, 227) && s.has_row(&["gross counts", "12"])
+    bench.wait("227 kept and not saved, 12 on the line", |s| {
+        is_kept(s, 1, 227) && s.has("NOT SAVED") && s.has_row(&["gross counts", "12"])
     });
+    bench
+}
+
+fn folder_back(home: &Home) {
+    fs::rename(home.path("away"), home.path("bench")).unwrap();
+}
+
+/// Everything that was kept is in the file; what was on the line never was.
+fn caught_up(home: &Home) {
+    fs::rename(home.path("bench/rack.ron"), home.path(FILE)).unwrap();
+    let file = InFile::of(home);
+    assert_eq!(file.of_vial(33), [267.0]);
+    assert_eq!(file.of_vial(1), [227.0]);
+    assert_eq!(file.of_vial(2), Vec::<f64>::new());
+}
+
+#[test]
+fn hung_up_the_program_ends_and_keeps_everything() {
+    let _one = one_at_a_time();
+    let home = fresh();
+    let mut bench = behind_with_saving(&home);
+    folder_back(&home);
     bench.hang_up();
     let status = bench.end();
     assert!(status.success(), "{status:?}");
-    let file = InFile::of(&home);
-    assert_eq!(file.of_vial(33), [267.0]);
-    assert_eq!(file.of_vial(1), [227.0]);
-    // What was on the line was never kept.
-    assert_eq!(file.of_vial(2), Vec::<f64>::new());
+    caught_up(&home);
 }
 
 fn told_to_end(signal: &str) {
     let _one = one_at_a_time();
     let home = fresh();
-    let mut bench = home.sit(&["open", FILE]);
-    bench.wait_prompt(33, "background");
+    let mut bench = behind_with_saving(&home);
     assert!(!bench.by_lines(), "the bench gets key by key");
-    bench.keypad("267\r");
-    bench.wait_kept(33, counts_of(33));
+    folder_back(&home);
     bench.signal(signal);
     let status = bench.end();
     assert!(status.success(), "{status:?}");
@@ -144,7 +162,7 @@ fn told_to_end(signal: &str) {
         bench.by_lines(),
         "the terminal is left as a shell cannot use it"
     );
-    assert_eq!(in_file(&home, 33), [267.0]);
+    caught_up(&home);
 }
 
 #[test]
@@ -155,4 +173,17 @@ fn told_to_end_the_terminal_is_given_back() {
 #[test]
 fn told_of_a_hang_up_the_terminal_is_given_back() {
     told_to_end("HUP");
+}
+
+#[test]
+fn hung_up_while_the_file_cannot_be_written_the_program_still_ends() {
+    let _one = one_at_a_time();
+    let home = fresh();
+    let mut bench = behind_with_saving(&home);
+    bench.hang_up();
+    // Nothing to see it, but whoever started it is told.
+    assert_eq!(bench.end().exit_code(), 74);
+    folder_back(&home);
+    fs::rename(home.path("bench/rack.ron"), home.path(FILE)).unwrap();
+    assert_eq!(in_file(&home, 33), [267.0]);
 }
