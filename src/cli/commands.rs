@@ -87,13 +87,22 @@ fn lab() -> Lab {
     })
 }
 
+/// How a source is called in a message.
+fn called(path: &Path) -> String {
+    if path == Path::new("-") {
+        "standard input".into()
+    } else {
+        path.display().to_string()
+    }
+}
+
 fn read_text(path: &Path) -> Result<String, Failure> {
+    let name = called(path);
     let io = |e: io::Error| match e.kind() {
-        io::ErrorKind::InvalidData => Failure::new(
-            Failure::DATA,
-            format!("{}: not a text in UTF-8", path.display()),
-        ),
-        _ => Failure::new(Failure::IO, format!("{}: {e}", path.display())),
+        io::ErrorKind::InvalidData => {
+            Failure::new(Failure::DATA, format!("{name}: not a text in UTF-8"))
+        }
+        _ => Failure::new(Failure::IO, format!("{name}: {e}")),
     };
     if path == Path::new("-") {
         let mut text = String::new();
@@ -235,11 +244,7 @@ fn take(
 ) -> Result<(), Failure> {
     let source = readings.unwrap_or(Path::new("-"));
     let text = read_text(source)?;
-    let name = if source == Path::new("-") {
-        "standard input".into()
-    } else {
-        source.display().to_string()
-    };
+    let name = called(source);
     let since = shell::now();
     let who = operator(named, &lab().operator);
     let mut opened = store::open_for_writing(

@@ -114,10 +114,8 @@ fn places(header: &StringRecord) -> Result<Places, String> {
         }
     }
     let by_vial = at.contains_key("vial");
-    let by_place = ["level", "role", "replicate"]
-        .iter()
-        .all(|c| at.contains_key(c));
-    if !(by_vial || by_place) {
+    let by_place = ["level", "role", "replicate"];
+    if !by_vial && !by_place.iter().all(|c| at.contains_key(c)) {
         return Err(
             "a column `vial`, or `level`, `role` and `replicate`, must say which tube a row is"
                 .into(),
@@ -172,9 +170,8 @@ fn tube<'t>(
     places: &Places,
     t: &Titration,
 ) -> Result<Tube, String> {
-    let by_place = place(field, t);
     if !places.by_vial {
-        return by_place;
+        return place(field, t);
     }
     let text = field("vial");
     let no = text
@@ -185,17 +182,36 @@ fn tube<'t>(
         .tube(no)
         .copied()
         .ok_or_else(|| format!("vial: there is no vial {no} in this rack"))?;
-    // Where a row says both, they must agree: a table sorted by mistake is caught here.
-    if let Ok(other) = by_place
-        && other.no != no
-    {
-        return Err(format!(
-            "vial {no} is {}, but the row says {}",
-            t.name(&found),
-            t.name(&other)
-        ));
-    }
+    agrees(field, &found).map_err(|(name, said)| {
+        format!(
+            "the vial is {}, but its {name} in the row is `{said}`",
+            t.name(&found)
+        )
+    })?;
     Ok(found)
+}
+
+/// Where a row says the vial and its place too, or part of it, they must agree: a table sorted by mistake is
+/// caught here. The error is the first column that does not, and what it says.
+fn agrees<'t>(
+    field: &impl Fn(&str) -> &'t str,
+    tube: &Tube,
+) -> Result<(), (&'static str, &'t str)> {
+    let (level, role, replicate) = (field("level"), field("role"), field("replicate"));
+    let same_level = tube.level.is_some_and(|l| level.parse() == Ok(l.0));
+    let columns = [
+        ("level", level, same_level),
+        ("role", role, Role::from_word(role) == Some(tube.role)),
+        (
+            "replicate",
+            replicate,
+            replicate_no(replicate) == Some(tube.replicate),
+        ),
+    ];
+    let other = columns
+        .into_iter()
+        .find(|(_, said, same)| !said.is_empty() && !same);
+    other.map_or(Ok(()), |(name, said, _)| Err((name, said)))
 }
 
 /// The tube of a level, a role and a replicate.

@@ -168,7 +168,7 @@ fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
     {
         line("", values::sites_in_tube(protocol, fit), String::new());
     }
-    line("ns", values::ns(fit), "nonspecific bound per free".into());
+    line("ns", values::ns(fit), "bound per free".into());
     line("background", values::background(fit), String::new());
     out.line(format!(
         "  {}, {} of {tubes} tubes used, tube CV found {} %",
@@ -250,9 +250,7 @@ fn flags(out: &mut Lines, t: &Titration) {
 fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
     let unit = t.protocol.display.concentration;
     out.title(&format!("Rack, amounts in {}", unit.word()));
-    out.line(
-        " vial    added  role               counts    min     bound       sd     free  specific",
-    );
+    out.line(" vial   added role             counts    min     bound      sd    free  specific");
     let number = |nm: Option<f64>| nm.map_or(String::new(), |nm| significant(unit.from_nm(nm), 3));
     let decimals = values::decimals(analysis, unit);
     let amount = |nm: Option<f64>| nm.map_or(String::new(), |nm| fixed(unit.from_nm(nm), decimals));
@@ -264,7 +262,7 @@ fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         };
         let some_flag = t.has_flag(r.tube.no);
         out.line(format!(
-            "{}{:>4} {:>8}  {:<15} {:>9} {:>6} {:>9} {:>8} {:>8} {:>9}",
+            "{}{:>4} {:>7} {:<14} {:>8} {:>6} {:>9} {:>7} {:>7} {:>9}",
             if some_flag { "x" } else { " " },
             r.tube.no,
             r.added_nm
@@ -278,8 +276,9 @@ fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
             amount(r.specific_nm),
         ));
     }
-    out.line("bound: as measured, nonspecific included; sd: of counting; free: added less bound;");
-    out.line("specific: bound less ns x free");
+    let words = "bound: as measured, nonspecific included; sd: of counting; free: added less bound; \
+                 specific: bound less ns x free";
+    out.wrapped(words, "");
 }
 
 fn protocol(out: &mut Lines, p: &Protocol) {
