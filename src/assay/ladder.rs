@@ -209,8 +209,12 @@ impl Ladder {
             vials(Role::Total, Some(level.no), *total, &mut tubes);
             vials(Role::Nonspecific, Some(level.no), *nonspecific, &mut tubes);
         }
-        if tubes.is_empty() {
-            return Err(wrong("total", "no tubes: a rack has at least one"));
+        if !tubes.iter().any(|t| t.role == Role::Total) {
+            let n = tubes.len();
+            return Err(wrong(
+                "total",
+                format!("no total tubes and {n} nonspecific: a rack has total tubes"),
+            ));
         }
         let mut first = Vec::new();
         vials(Role::Background, None, self.background, &mut first);

@@ -1,6 +1,7 @@
 //! What the counter showed, and the doubts a person may have about it.
 
 use super::stamp::Stamp;
+use crate::units::short;
 use serde::{Deserialize, Serialize};
 use std::fmt;
 
@@ -59,7 +60,7 @@ fn is_false(b: &bool) -> bool {
 #[non_exhaustive]
 pub enum ReadingError {
     /// Minutes of zero, negative or not finite.
-    #[error("{minutes} minutes: a tube is counted for more than zero and at most {most} minutes")]
+    #[error("{} minutes: a tube is counted for more than zero and at most {most} minutes", short(*minutes, 6))]
     Minutes {
         /// What was given.
         minutes: f64,
@@ -67,7 +68,7 @@ pub enum ReadingError {
         most: f64,
     },
     /// A number of counts that no counter gives.
-    #[error("{value}: a reading is zero or more, and finite")]
+    #[error("{}: a reading is zero or more, and at most 1e12", short(*value, 6))]
     Value {
         /// What was given.
         value: f64,

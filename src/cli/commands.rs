@@ -11,6 +11,7 @@ use crate::notebook::{Notebook, What};
 use crate::report::{self, Page};
 use crate::shell::{self, First, demos};
 use crate::store::{self, Holder};
+use clap::CommandFactory;
 use std::env;
 use std::fs;
 use std::io::{self, IsTerminal, Read};
@@ -65,6 +66,9 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
     Ok(ExitCode::SUCCESS)
 }
 
+/// Who is at the keyboard where nothing tells.
+const NOBODY: &str = "not named";
+
 /// Who is at the keyboard, as far as can be told.
 fn operator(named: Option<String>, usual: &str) -> String {
     let somebody = |s: &String| !s.trim().is_empty();
@@ -73,7 +77,7 @@ fn operator(named: Option<String>, usual: &str) -> String {
         .or_else(|| Some(usual.to_string()).filter(somebody))
         .or_else(|| env::var("USER").ok().filter(somebody))
         .or_else(|| env::var("LOGNAME").ok().filter(somebody))
-        .unwrap_or_else(|| "not named".into())
+        .unwrap_or_else(|| NOBODY.into())
 }
 
 /// The lab's settings. Ones that cannot be read are said and not used: they are defaults and nothing more.
@@ -119,13 +123,12 @@ fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
     };
     let sheet = Sheet::parse(&read_text(from)?).map_err(|e| bad(e.to_string()))?;
     let t = sheet.titration().map_err(|e| bad(e.to_string()))?;
-    let lab = lab();
-    let usual = if lab.operator.is_empty() {
-        &t.protocol.operator
-    } else {
-        &lab.operator
+    let who = match operator(named, &lab().operator) {
+        who if who == NOBODY && !t.protocol.operator.trim().is_empty() => {
+            t.protocol.operator.clone()
+        }
+        who => who,
     };
-    let who = operator(named, usual);
     let since = shell::now();
     let notebook = Notebook::open(t.protocol, t.levels, t.tubes, since, &who)
         .map_err(|e| bad(e.to_string()))?;
@@ -188,7 +191,11 @@ fn start() -> Result<(), Failure> {
             Failure::USAGE,
             "the start screen wants a terminal on standard input and output",
         )
-        .hint("`rackside --help` lists the commands that work without one"));
+        .hint(format!(
+            "{}
+  `rackside --help` lists what works without one",
+            Args::command().render_usage()
+        )));
     }
     let lab = lab();
     let who = operator(None, &lab.operator);

@@ -46,6 +46,7 @@ pub(super) fn readings(
     let text = text.strip_prefix('\u{feff}').unwrap_or(text);
     let mut reader = ReaderBuilder::new()
         .trim(Trim::All)
+        .delimiter(delimiter(text))
         .comment(Some(b'#'))
         .from_reader(text.as_bytes());
     let header = reader.headers().map_err(|e| bad(1, e.to_string()))?.clone();
@@ -86,6 +87,19 @@ pub(super) fn readings(
         return Err(bad(header_line, "there is no row below the header".into()));
     }
     Ok(counts)
+}
+
+/// What parts the columns: the first of semicolon, tab and comma that the header holds. Instruments with a
+/// decimal comma export the first two.
+fn delimiter(text: &str) -> u8 {
+    let header = text
+        .lines()
+        .find(|l| !l.trim().is_empty() && !l.starts_with('#'))
+        .unwrap_or("");
+    *b";\t"
+        .iter()
+        .find(|c| header.as_bytes().contains(c))
+        .unwrap_or(&b',')
 }
 
 fn row_fault(e: &csv::Error) -> String {

@@ -39,7 +39,10 @@ pub fn open(path: &Path, who: &str) -> Result<(store::Opened, Vec<String>), Stor
     };
     let (opened, mut notices) = match store::open_for_writing(path, &holder) {
         Ok(opened) => (opened, Vec::new()),
-        Err(e @ StoreError::Locked { .. }) => (store::open(path)?, vec![e.to_string()]),
+        Err(StoreError::Locked { holder, .. }) => (
+            store::open(path)?,
+            vec![format!("open elsewhere: {holder}")],
+        ),
         Err(e) => return Err(e),
     };
     if !opened.changed.is_empty() {

@@ -121,7 +121,7 @@ impl<D: Dimension> Measure<D> {
                 allowed: allowed::<D>(),
             });
         };
-        let base = value * factor;
+        let base = scaled(value, *factor);
         if base.is_finite() {
             Ok(Measure::of(base))
         } else {
@@ -130,6 +130,17 @@ impl<D: Dimension> Measure<D> {
                 cause: NumberError::TooLarge { text: text.into() },
             })
         }
+    }
+}
+
+/// `value x factor`; a factor that is one over a whole number divides instead, so that 95 % is 0.95 and
+/// not the number next to it.
+fn scaled(value: f64, factor: f64) -> f64 {
+    let inverse = (1.0 / factor).round();
+    if factor < 1.0 && 1.0 / inverse == factor {
+        value / inverse
+    } else {
+        value * factor
     }
 }
 
@@ -306,6 +317,8 @@ mod tests {
                 .base(),
             2.22,
         );
+        assert_eq!(Fraction::parse("95 %", Mark::Point).unwrap().base(), 0.95);
+        assert_eq!(Volume::parse("7 uL", Mark::Point).unwrap().base(), 0.007);
         close(Minutes::parse("90 s", Mark::Point).unwrap().base(), 1.5);
         close(
             CellCount::parse("2.5e5", Mark::Point).unwrap().base(),

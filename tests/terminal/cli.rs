@@ -59,7 +59,7 @@ fn help_and_wrong_calls() {
         case(&["check", "--help"], 0, &["Example"], &[]),
         case(&["demo", "--help"], 0, &["--list", "Examples"], &[]),
         case(&["--version"], 0, &[env!("CARGO_PKG_VERSION")], &[]),
-        case(&[], 2, &[], &["Usage", CAUTION]),
+        case(&[], 2, &[], &["terminal", "Usage", "--help"]),
         case(&["titrate"], 2, &[], &["titrate", "--help"]),
         case(&["--frobnicate"], 2, &[], &["--frobnicate"]),
         case(&["new"], 2, &[], &["--from"]),

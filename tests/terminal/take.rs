@@ -244,6 +244,18 @@ fn a_titration_in_decimal_comma_takes_no_point() {
         "1 of 33",
     );
     assert_eq!(minutes(&home, 5), 2.5);
+    // Semicolons and tabs part the columns where the header has them.
+    took(
+        &take(&home, "vial;counts;minutes\n6;4812;2,5\n"),
+        "1 reading",
+        "2 of 33",
+    );
+    took(
+        &take(&home, "vial\tcounts\tminutes\n7\t4812\t1,5\n"),
+        "1 reading",
+        "3 of 33",
+    );
+    assert_eq!((minutes(&home, 6), minutes(&home, 7)), (2.5, 1.5));
 }
 
 #[test]
