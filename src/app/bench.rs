@@ -43,11 +43,11 @@ pub struct Bench {
 const MOST_LINE: usize = 24;
 
 impl Bench {
-    /// At the first tube without a reading, or the first of all.
+    /// At the first tube without a reading, or the last of a rack that has them all.
     pub fn at_first_unread(t: &Titration) -> Bench {
-        let first = t.tubes.first().map_or(TubeNo(1), |t| t.no);
+        let newest = t.tubes.last().map_or(TubeNo(1), |t| t.no);
         Bench {
-            at: t.next_unread().unwrap_or(first),
+            at: t.next_unread().unwrap_or(newest),
             again: false,
             field: Field::Value,
             line: Input::default(),

@@ -13,11 +13,12 @@ Examples:
   rackside take rack.ron counts.csv          readings from a table
   rackside summary rack.ron | less           the result on paper
 
-Exit codes: 0 done, 1 failed, 2 wrong call, 65 bad file or data, 73 cannot create, 74 cannot read or
-write, 75 locked by another.
+Exit codes: 0 done, 1 failed, 2 wrong call, 65 bad file or data, 73 cannot
+create, 74 cannot read or write, 75 locked by another.
 
-Research use only, not for diagnosis or treatment. Handling labelled material follows the local rules
-and the responsible radiation-safety or safety officer; the program checks arithmetic, not safety.";
+Research use only, not for diagnosis or treatment. Handling labelled material
+follows the local rules and the responsible radiation-safety or safety officer;
+the program checks arithmetic, not safety.";
 
 /// Walks a ligand-binding titration tube by tube: counts in, Kd and sites out, nothing lost.
 #[derive(Debug, Parser)]
