@@ -401,7 +401,7 @@ impl Desk {
                     self.bench.go(to);
                 }
                 self.bench.last = None;
-                self.say(format!("taken back   {what}   (b brings it back)"));
+                self.say(format!("taken back   {what}   b: undo"));
                 effects
             }
         }
@@ -424,7 +424,9 @@ impl Desk {
                     .entry(target)
                     .map(|e| self.notebook.describe(e))
                     .unwrap_or_default();
-                if let Some(next) = self.titration().next_unread() {
+                let from = self.notebook.entry(target).and_then(|e| tube_of(&e.what));
+                let next = from.map_or_else(|| self.titration().next_unread(), |at| self.after(at));
+                if let Some(next) = next {
                     self.bench.go(next);
                 }
                 self.say(format!("back again   {what}"));

@@ -103,8 +103,8 @@ impl Desk {
             Some(Layer::Close) => {
                 self.layers.pop();
                 match (key, self.titration().closed.is_some()) {
-                    (Key::Char('y'), false) => self.recorded(What::Closed, now, "closed"),
-                    (Key::Char('y'), true) => self.recorded(What::Reopened, now, "open again"),
+                    (Key::Char('y'), false) => self.recorded(What::Closed, now),
+                    (Key::Char('y'), true) => self.recorded(What::Reopened, now),
                     _ => Vec::new(),
                 }
             }
@@ -166,7 +166,7 @@ impl Desk {
             LineFor::Amend => self.amend(words, now),
             LineFor::Checker => {
                 let digest = self.saved.digest.clone();
-                self.recorded(What::Checked { by: words, digest }, now, "checked")
+                self.recorded(What::Checked { by: words, digest }, now)
             }
             LineFor::Operator => {
                 self.say(format!("{words} is at the keyboard"));
@@ -178,18 +178,16 @@ impl Desk {
                     tube: Some(tube),
                     text: words,
                 };
-                self.recorded(what, now, "noted")
+                self.recorded(what, now)
             }
         }
     }
 
     fn reasoned(&mut self, what: ReasonFor, why: Suspicion, now: Stamp) -> Vec<Effect> {
         match what {
-            ReasonFor::Suspect(_, reading) => {
-                self.recorded(What::Flagged { reading, why }, now, "suspect")
-            }
+            ReasonFor::Suspect(_, reading) => self.recorded(What::Flagged { reading, why }, now),
             ReasonFor::Lost(tube) => {
-                let effects = self.recorded(What::Lost { tube, why }, now, "lost");
+                let effects = self.recorded(What::Lost { tube, why }, now);
                 if self.titration().lost.contains_key(&tube) {
                     self.moved_on(tube);
                 }
@@ -199,11 +197,11 @@ impl Desk {
     }
 
     /// Records an entry and reads it back.
-    fn recorded(&mut self, what: What, now: Stamp, verb: &str) -> Vec<Effect> {
+    fn recorded(&mut self, what: What, now: Stamp) -> Vec<Effect> {
         match self.record(what, now) {
             None => vec![Effect::Bell],
             Some((entry, effects)) => {
-                self.say(format!("{verb}   {}", self.notebook.describe(&entry)));
+                self.say(self.notebook.describe(&entry));
                 effects
             }
         }
