@@ -3,3 +3,4 @@
 
 mod racks;
 mod reference_fits;
+mod reference_racks;
