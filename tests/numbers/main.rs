@@ -1,6 +1,7 @@
 //! The numbers, held against published values and independent computations.
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
+mod nist;
 mod racks;
 mod reference_fits;
 mod reference_racks;
