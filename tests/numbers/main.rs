@@ -1,6 +1,8 @@
 //! The numbers, held against published values and independent computations.
 #![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
+mod balance;
+mod conversions;
 mod nist;
 mod racks;
 mod reference_fits;
