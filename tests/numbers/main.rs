@@ -3,6 +3,7 @@
 
 mod balance;
 mod conversions;
+mod dilution;
 mod nist;
 mod racks;
 mod reference_fits;
