@@ -92,7 +92,13 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
         return fallback;
     };
     let ended = done.solver.ended.unwrap_or(Ended::OutOfSteps);
-    polished(evidence, theta, done.state.cost, ended, pinned)
+    // A refit with a parameter pinned is wanted for its cost, which more digits of the others no longer change.
+    let steps = if pinned.is_some() && ended == Ended::Converged {
+        0
+    } else {
+        MOST_POLISH
+    };
+    polished(evidence, theta, done.state.cost, ended, pinned, steps)
 }
 
 /// Undamped steps while the scaled step shrinks: the last digits, which the cost can no longer tell.
@@ -102,10 +108,11 @@ fn polished<E: Evidence>(
     mut cost: f64,
     mut ended: Ended,
     pinned: Option<usize>,
+    steps: usize,
 ) -> Solution {
     let mut step = Step::default();
     let mut last = f64::INFINITY;
-    for _ in 0..MOST_POLISH {
+    for _ in 0..steps {
         if !step.prepare(evidence, &theta, pinned) {
             break;
         }
@@ -179,21 +186,15 @@ impl Step {
             return false;
         }
         self.norms.resize(theta.len(), 0.0);
+        let (norms, downhill) = self.rows.column_sums();
         self.free.clear();
         for (j, t) in theta.iter().enumerate() {
-            if Some(j) == pinned {
-                continue;
-            }
             let l = evidence.limits(j);
-            let downhill = self.rows.downhill(j);
-            if (*t <= l.low && downhill <= 0.0) || (*t >= l.high && downhill >= 0.0) {
+            let held = (*t <= l.low && downhill[j] <= 0.0) || (*t >= l.high && downhill[j] >= 0.0);
+            if Some(j) == pinned || held {
                 continue;
             }
-            let norm = (0..self.rows.len())
-                .map(|i| self.rows.row(i)[j].powi(2))
-                .sum::<f64>()
-                .sqrt();
-            self.norms[j] = self.norms[j].max(norm);
+            self.norms[j] = self.norms[j].max(norms[j]);
             if self.norms[j] > 0.0 {
                 self.free.push(j);
             }
@@ -208,14 +209,13 @@ impl Step {
     fn factor(&mut self) {
         let (m, p) = (self.rows.len(), self.free.len());
         // Rows of zeros below keep the factor square where there are fewer rows than columns.
-        let a = DMatrix::from_fn(m.max(p), p, |i, k| {
-            let j = self.free[k];
-            if i < m {
-                self.rows.row(i)[j] / self.norms[j]
-            } else {
-                0.0
+        let mut a = DMatrix::zeros(m.max(p), p);
+        for (j, mut column) in self.free.iter().zip(a.column_iter_mut()) {
+            let unit = 1.0 / self.norms[*j];
+            for (i, v) in column.iter_mut().take(m).enumerate() {
+                *v = self.rows.row(i)[*j] * unit;
             }
-        });
+        }
         let mut y = DVector::from_fn(m.max(p), |i, _| {
             self.rows.y().get(i).copied().unwrap_or(0.0)
         });

@@ -4,6 +4,7 @@
 mod balance;
 mod conversions;
 mod dilution;
+mod hard_racks;
 mod nist;
 mod racks;
 mod reference_fits;
