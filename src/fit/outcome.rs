@@ -238,7 +238,7 @@ fn estimates(
     let at = Columns::of::<OneClass>();
     let shown = at.background() + 1;
     // Where Kd runs to the top of its search the other parameters run with it.
-    let mut profiles = Profiles::new(evidence, best, cut).opened_by(0);
+    let mut profiles = Profiles::new(evidence, best, cov, cut).opened_by(0);
     others.iter().for_each(|o| profiles.meet(o));
     let se = |j: usize| (!best.at_limit[j]).then(|| cov[(j, j)].sqrt());
     let end = |j: usize, upward: bool, profiles: &mut Profiles<_>| {
@@ -247,7 +247,7 @@ fn estimates(
             low: limits.low,
             high: limits.high.min(best.theta[j] + WIDEST),
         };
-        let found = profiles.end(j, upward, within, se(j));
+        let found = profiles.end(j, upward, within);
         found.better.map_or(Ok(found.end), Err)
     };
     let mut ends = Vec::new();

@@ -3,6 +3,7 @@
 
 use super::evidence::{Evidence, Limits, Scale};
 use super::solver::{Ended, Solution, solve};
+use nalgebra::DMatrix;
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
 /// One end of an interval, on the parameter's own scale.
@@ -95,6 +96,8 @@ const MOST_NARROWINGS: usize = 60;
 const MOST_RESUMED: usize = 4;
 /// How exactly an end is found, on the parameter's own scale (a logarithm for binding).
 const TOLERANCE: f64 = 1e-9;
+/// How exactly the cut is met, relative to its root: as exactly as refits know their cost.
+const NEAR: f64 = 1e-9;
 
 /// The profiles of one solution, and every place under the cut that was met along them.
 ///
@@ -106,6 +109,7 @@ const TOLERANCE: f64 = 1e-9;
 pub struct Profiles<'e, E> {
     evidence: &'e E,
     best: &'e Solution,
+    cov: &'e DMatrix<f64>,
     cut: ProfileCut,
     opens: Option<usize>,
     met: Vec<Met>,
@@ -127,11 +131,17 @@ struct Refit {
 }
 
 impl<'e, E: Evidence> Profiles<'e, E> {
-    /// The profiles of `best`, cut at `cut`.
-    pub fn new(evidence: &'e E, best: &'e Solution, cut: ProfileCut) -> Self {
+    /// The profiles of `best`, cut at `cut`; its covariance `cov` says how far and whereto the first steps go.
+    pub fn new(
+        evidence: &'e E,
+        best: &'e Solution,
+        cov: &'e DMatrix<f64>,
+        cut: ProfileCut,
+    ) -> Self {
         Profiles {
             evidence,
             best,
+            cov,
             cut,
             opens: None,
             met: Vec::new(),
@@ -154,10 +164,10 @@ impl<'e, E: Evidence> Profiles<'e, E> {
         }
     }
 
-    /// The end of the interval of parameter `j`, upward or downward, within `within`; `se` sets the first step.
+    /// The end of the interval of parameter `j`, upward or downward, within `within`.
     ///
     /// The end is open if the cut is not reached within the limits, or as [`Profiles::opened_by`] has it.
-    pub fn end(&mut self, j: usize, upward: bool, within: Limits, se: Option<f64>) -> ProfileEnd {
+    pub fn end(&mut self, j: usize, upward: bool, within: Limits) -> ProfileEnd {
         let sign = if upward { 1.0 } else { -1.0 };
         let wall = if upward { within.high } else { within.low };
         let start = self.best.theta[j];
@@ -165,18 +175,30 @@ impl<'e, E: Evidence> Profiles<'e, E> {
             return End::Open.into();
         }
         let before = self.met.len();
+        // Without the readings' say on the parameter there is no direction to start in, and a step is as good as another.
+        let variance = self.cov[(j, j)];
+        let known = variance > 0.0;
+        let slope = known.then(|| {
+            let along = self.cov.column(j);
+            along.iter().map(|c| sign * c / variance).collect()
+        });
+        let step = if known {
+            self.target() * variance.sqrt()
+        } else {
+            0.25
+        };
         Walk {
             j,
             sign,
             start,
             far: (wall - start).abs(),
             warm: self.best.theta.clone(),
-            slope: None,
+            slope,
             inner: (0.0, 0.0),
             before,
             profiles: self,
         }
-        .end(se)
+        .end(step.clamp(1e-6, 4.0))
         .unwrap_or_else(|stopped| stopped)
     }
 
@@ -218,9 +240,7 @@ struct Walk<'p, 'e, E> {
 }
 
 impl<E: Evidence> Walk<'_, '_, E> {
-    fn end(mut self, se: Option<f64>) -> Result<ProfileEnd, ProfileEnd> {
-        let target = self.profiles.target();
-        let mut step = se.map_or(0.25, |se| target * se).clamp(1e-6, 4.0);
+    fn end(mut self, mut step: f64) -> Result<ProfileEnd, ProfileEnd> {
         for _ in 0..=MOST_RESUMED {
             let outer = self.widen(step)?;
             let end = self.narrow(outer)?;
@@ -290,16 +310,17 @@ impl<E: Evidence> Walk<'_, '_, E> {
         for _ in 0..MOST_NARROWINGS {
             let low = self.inner.0;
             let width = high.distance - low;
-            if width <= TOLERANCE || (high.root - target).abs() <= 1e-10 * target {
+            if width <= TOLERANCE || (high.root - target).abs() <= NEAR * target {
                 break;
             }
             let mut mid = low - low_weight * width / (high_weight - low_weight);
             if !(mid > low && mid < high.distance) {
                 mid = 0.5 * (low + high.distance);
             }
+            self.slope = Some(self.rates(&high));
             let refit = self.refit(mid)?;
             let over = refit.root - target;
-            if over.abs() <= 1e-10 * target {
+            if over.abs() <= NEAR * target {
                 return Ok(refit);
             }
             if over >= 0.0 {
@@ -323,15 +344,20 @@ impl<E: Evidence> Walk<'_, '_, E> {
 
     /// Takes a refit under the cut as the place to go on from.
     fn advance(&mut self, refit: Refit) {
-        let moved = refit.distance - self.inner.0;
-        let rate = |(from, to): (&f64, &f64)| (to - from) / moved;
-        self.slope = Some(self.warm.iter().zip(&refit.theta).map(rate).collect());
+        self.slope = Some(self.rates(&refit));
         self.inner = (refit.distance, refit.root);
         self.warm.clone_from(&refit.theta);
         self.profiles.met.push(Met {
             theta: refit.theta,
             root: refit.root,
         });
+    }
+
+    /// How the parameters move from the last refit under the cut to another one.
+    fn rates(&self, to: &Refit) -> Vec<f64> {
+        let moved = to.distance - self.inner.0;
+        let rate = |(from, to): (&f64, &f64)| (to - from) / moved;
+        self.warm.iter().zip(&to.theta).map(rate).collect()
     }
 
     /// Goes on from the farthest place under the cut, if that is beyond `distance`; open if that is the wall.

@@ -126,7 +126,8 @@ fn polished<E: Evidence>(
             ended = Ended::Converged;
         }
         let next_cost = evidence.cost(&next);
-        if !(next_cost - cost <= rounding(evidence.scale(), cost)) {
+        let rise = next_cost - cost;
+        if rise.is_nan() || rise > rounding(evidence.scale(), cost) {
             break;
         }
         theta = next;
@@ -436,9 +437,11 @@ impl<E: Evidence> Solver<Posed<'_, E>, State> for Scoring {
             self.radius = self.radius.max(2.0 * size);
         }
         // A drop below what rounding shows is the end of what the cost can tell; polishing follows.
+        // A refit with a parameter pinned is wanted for its cost alone.
+        let wanted = if self.pinned.is_some() { 100.0 } else { 1.0 };
         let tiny = match scale {
-            Scale::Known => 1e-13 * (1.0 + cost.abs()),
-            Scale::Estimated => 1e-14 * cost,
+            Scale::Known => 1e-13 * wanted * (1.0 + cost.abs()),
+            Scale::Estimated => 1e-14 * wanted * cost,
         };
         let small_step = size <= 1e-13 * self.scaled_norm(&theta);
         let accepted = next_cost.is_finite() && real >= -slack && (promised > 0.0 || real > 0.0);

@@ -168,13 +168,13 @@ fn puromycin_profile_intervals() {
     let readings = puromycin();
     let (s, cov) = fitted(&readings, 0.05, 200.0);
     let cut = ProfileCut::new(12, 2, 0.95).unwrap();
-    let mut profiles = Profiles::new(&readings, &s, cut);
+    let mut profiles = Profiles::new(&readings, &s, &cov, cut);
     for (j, want) in [
         (0, [0.04692034203, 0.08615691343]),
         (1, [197.3019329, 229.2890551]),
     ] {
         for (upward, want) in [false, true].into_iter().zip(want) {
-            let found = profiles.end(j, upward, Limits::NONE, Some(cov[(j, j)].sqrt()));
+            let found = profiles.end(j, upward, Limits::NONE);
             assert_eq!(found.better, None);
             digits(found.end.value().unwrap().exp(), want, 9);
         }
