@@ -54,6 +54,8 @@ impl<E: Evidence> CostFunction for Posed<'_, E> {
 
 const MOST_STEPS: u64 = 500;
 const MOST_POLISH: usize = 60;
+/// The least ratio of a factor's diagonal at which the normal equations are good for half the digits.
+const WELL_CONDITIONED: f64 = 1e-3;
 
 /// Minimises the cost of `evidence` from `start`; parameter `pinned`, if any, stays where it is.
 ///
@@ -175,6 +177,8 @@ struct Step {
     free: Vec<usize>,
     r: DMatrix<f64>,
     qty: DVector<f64>,
+    /// The normal equations, where the factor comes from them.
+    gram: Option<DMatrix<f64>>,
     /// `order[k]` is the place among `free` of the factor's column `k`.
     order: Vec<usize>,
 }
@@ -203,10 +207,54 @@ impl Step {
         if self.free.is_empty() {
             return false;
         }
-        self.factor();
+        if evidence.scale() == Scale::Estimated || !self.factor_quickly() {
+            self.factor();
+        }
         true
     }
 
+    /// The factor by Cholesky of the normal equations; false where they are too ill-conditioned for it.
+    ///
+    /// Steps are corrected by the next ones, so half the digits of a step are plenty. A row touches few columns
+    /// (one dilution error of many), so this grows with what rows hold and not with rows times columns squared.
+    fn factor_quickly(&mut self) -> bool {
+        let p = self.free.len();
+        let mut gram = DMatrix::zeros(p, p);
+        let mut aty = DVector::zeros(p);
+        let mut held: Vec<(usize, f64)> = Vec::with_capacity(p);
+        let units: Vec<f64> = self.free.iter().map(|j| 1.0 / self.norms[*j]).collect();
+        let lower = gram.as_mut_slice();
+        for (i, y) in self.rows.y().iter().enumerate() {
+            let row = self.rows.row(i);
+            held.clear();
+            for (k, (j, unit)) in self.free.iter().zip(&units).enumerate() {
+                if row[*j] != 0.0 {
+                    held.push((k, row[*j] * unit));
+                }
+            }
+            for (n, (k, v)) in held.iter().enumerate() {
+                aty[*k] += v * y;
+                for (l, w) in &held[..=n] {
+                    lower[l * p + k] += v * w;
+                }
+            }
+        }
+        let Some(cholesky) = gram.clone().cholesky() else {
+            return false;
+        };
+        let l = cholesky.l();
+        let d = l.diagonal();
+        if d.min() < WELL_CONDITIONED * d.max() || !l.solve_lower_triangular_mut(&mut aty) {
+            return false;
+        }
+        self.r = l.transpose();
+        self.qty = aty;
+        self.gram = Some(gram);
+        self.order = (0..p).collect();
+        true
+    }
+
+    /// The factor by column-pivoted QR of the rows.
     fn factor(&mut self) {
         let (m, p) = (self.rows.len(), self.free.len());
         // Rows of zeros below keep the factor square where there are fewer rows than columns.
@@ -222,6 +270,7 @@ impl Step {
         });
         let qr = a.col_piv_qr();
         qr.q_tr_mul(&mut y);
+        self.gram = None;
         self.r = qr.r();
         self.qty = y.rows(0, p).into_owned();
         let mut order = DMatrix::from_fn(1, p, |_, k| k as f64);
@@ -254,6 +303,14 @@ impl Step {
     /// The scaled step with damping `lambda`, and the factor of the stacked system.
     fn damped(&self, lambda: f64) -> Option<(DVector<f64>, DMatrix<f64>)> {
         let p = self.r.ncols();
+        if let Some(gram) = &self.gram {
+            let mut sum = gram.clone();
+            (0..p).for_each(|k| sum[(k, k)] += lambda);
+            let cholesky = sum.cholesky()?;
+            let d = cholesky.solve(&self.r.tr_mul(&self.qty));
+            let r = cholesky.l().transpose();
+            return d.iter().all(|v| v.is_finite()).then_some((d, r));
+        }
         let root = lambda.sqrt();
         let stacked = DMatrix::from_fn(2 * p, p, |i, k| {
             if i < p {

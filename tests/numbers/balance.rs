@@ -281,7 +281,6 @@ fn free_label_to_the_last_digits() {
         let textbook = ((beta * beta + 4.0 * a * kd * total).sqrt() - beta) / (2.0 * a);
         worst_textbook = worst_textbook.max(outside(textbook, truth));
     }
-    println!("free label: worst {worst:e}, by the textbook root {worst_textbook:e}");
     assert!(worst <= 1e-15, "{worst:e}");
     // The bound can be missed: the textbook root misses it by everything.
     assert!(worst_textbook > 0.1, "{worst_textbook:e}");

@@ -114,7 +114,7 @@ fn carrier_free_activity_of_the_nuclides() {
     assert_eq!(AVOGADRO, 6.02214076e23);
     assert_eq!(SECONDS_PER_YEAR, 31_556_926.08);
     let year = SECONDS_PER_YEAR;
-    for (nuclide, half_life, ci_per_mmol, dpm_per_fmol, ci_digits, dpm_digits) in [
+    for (_, half_life, ci_per_mmol, dpm_per_fmol, ci_digits, dpm_digits) in [
         ("H-3", 12.32 * year, 29.018118, 64.420221, 8, 8),
         ("C-14", 5700.0 * year, 0.062719862, 0.13923809, 8, 8),
         ("P-32", 14.263 * DAY, 9154.8243, 20323.71, 8, 7),
@@ -131,7 +131,6 @@ fn carrier_free_activity_of_the_nuclides() {
         ("Ga-68", 67.71 * MINUTE, 2776966.1, 6164864.7, 8, 8),
         ("Zr-89", 78.41 * HOUR, 39966.92, 88726.563, 7, 8),
     ] {
-        println!("{nuclide}");
         let dpm = carrier_free_dpm_per_fmol(half_life);
         digits(dpm, dpm_per_fmol, dpm_digits);
         let one = SpecificActivity::parse("1 Ci/mmol", Mark::Point).unwrap();

@@ -362,24 +362,35 @@ fn levels_over_twelve_powers_of_ten() {
     }
 }
 
-/// A thousand tubes: eight levels of many, then two hundred and fifty levels of four.
+/// A thousand tubes at eight levels.
 #[test]
 fn a_thousand_tubes() {
-    let t = sheet(&[
-        ("total: 2,", "total: 63,"),
-        ("nonspecific: 2,", "nonspecific: 62,"),
-    ]);
-    assert_eq!(t.tubes.len(), 1001);
-    let fit = fitted(&rack(t, sound));
-    no_end_failed(&fit);
-    assert_eq!(fit.tubes_used, 1000);
-    let ladder = "Geometric(lowest: \"0.05 nM\", highest: \"10 nM\", number: 250)";
-    let t = sheet(&[
-        (LEVELS, ladder),
-        ("dilution_error: \"2 %\"", "dilution_error: \"0\""),
-    ]);
-    assert_eq!(t.tubes.len(), 1001);
-    no_end_failed(&fitted(&rack(t, sound)));
+    for error in ["0", "2 %"] {
+        let error = format!("dilution_error: \"{error}\"");
+        let t = sheet(&[
+            ("total: 2,", "total: 63,"),
+            ("nonspecific: 2,", "nonspecific: 62,"),
+            ("dilution_error: \"2 %\"", &error),
+        ]);
+        assert_eq!(t.tubes.len(), 1001);
+        let fit = fitted(&rack(t, sound));
+        no_end_failed(&fit);
+        assert_eq!(fit.tubes_used, 1000);
+    }
+}
+
+/// A thousand tubes at two hundred and fifty levels, with a dilution error for each of them or none.
+#[test]
+fn two_hundred_and_fifty_levels() {
+    for (error, columns) in [("0", 0), ("2 %", 250)] {
+        let error = format!("dilution_error: \"{error}\"");
+        let ladder = "Geometric(lowest: \"0.05 nM\", highest: \"10 nM\", number: 250)";
+        let t = sheet(&[(LEVELS, ladder), ("dilution_error: \"2 %\"", &error)]);
+        assert_eq!(t.tubes.len(), 1001);
+        let fit = fitted(&rack(t, sound));
+        no_end_failed(&fit);
+        assert_eq!(fit.theta.len(), 5 + columns);
+    }
 }
 
 /// The same titration gives the same bits, whatever was analysed before.
