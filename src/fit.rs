@@ -10,6 +10,6 @@ mod start;
 
 pub use evidence::{Evidence, Limits, RowOf, Rows, Scale};
 pub use outcome::{Estimate, Fit, Missing, Model, Outcome, fit_rack};
-pub use profile::{End, ProfileCut, ProfileEnd, profile_end};
+pub use profile::{End, ProfileCut, ProfileEnd, Profiles};
 pub use rack::{Columns, RackEvidence, Sample};
 pub use solver::{Ended, Solution, covariance, solve};

@@ -104,6 +104,19 @@ impl Rows {
         (0..self.len()).map(|i| self.row(i)[j] * self.y[i]).sum()
     }
 
+    /// The norm of every column, and `A'y`.
+    pub fn column_sums(&self) -> (Vec<f64>, Vec<f64>) {
+        let (mut norms, mut downhill) = (vec![0.0; self.dim], vec![0.0; self.dim]);
+        for (i, y) in self.y.iter().enumerate() {
+            for ((v, n), d) in self.row(i).iter().zip(&mut norms).zip(&mut downhill) {
+                *n += v * v;
+                *d += v * y;
+            }
+        }
+        norms.iter_mut().for_each(|n| *n = n.sqrt());
+        (norms, downhill)
+    }
+
     /// Whether every number is finite.
     pub fn finite(&self) -> bool {
         self.a.iter().chain(&self.y).all(|v| v.is_finite())

@@ -1,7 +1,7 @@
 //! What a rack says: estimates with their intervals, or what is still missing for any.
 
 use super::evidence::{Evidence, Limits};
-use super::profile::{End, ProfileCut, profile_end};
+use super::profile::{End, ProfileCut, Profiles};
 use super::rack::{Columns, RackEvidence};
 use super::solver::{Ended, Solution, covariance, solve};
 use super::start;
@@ -185,9 +185,11 @@ pub fn fit_rack(titration: &Titration, flags: bool) -> Outcome {
     else {
         return Outcome::NoConvergence;
     };
-    let Some(mut best) = global(&evidence) else {
+    let mut polished = global(&evidence).into_iter();
+    let Some(mut best) = polished.next() else {
         return Outcome::NoConvergence;
     };
+    let others = polished.as_slice();
     for _ in 0..=MOST_RESTARTS {
         if best.ended != Ended::Converged {
             return Outcome::NoConvergence;
@@ -195,7 +197,7 @@ pub fn fit_rack(titration: &Titration, flags: bool) -> Outcome {
         let Some(cov) = covariance(&evidence, &best) else {
             return Outcome::TooEarly(vec![Missing::NotTellingApart]);
         };
-        match estimates(&evidence, &best, &cov, cut) {
+        match estimates(&evidence, &best, others, &cov, cut) {
             Ok(estimates) => {
                 return Outcome::Fitted(Box::new(described(&evidence, best, cov, estimates)));
             }
@@ -205,61 +207,77 @@ pub fn fit_rack(titration: &Titration, flags: bool) -> Outcome {
     Outcome::NoConvergence
 }
 
-/// The best of the solutions from cold starts.
-fn global(evidence: &RackEvidence<OneClass>) -> Option<Solution> {
+/// The solutions from the best cold starts, best first.
+fn global(evidence: &RackEvidence<OneClass>) -> Vec<Solution> {
     let mut starts: Vec<(f64, Vec<f64>)> = start::one_class(evidence)
         .into_iter()
         .map(|theta| (evidence.cost(&theta), theta))
         .filter(|(cost, _)| cost.is_finite())
         .collect();
     starts.sort_by(|a, b| a.0.total_cmp(&b.0));
-    starts
+    let mut polished: Vec<Solution> = starts
         .iter()
         .take(POLISHED)
         .map(|(_, theta)| solve(evidence, theta, None))
-        .min_by(|a, b| {
-            let failed = |s: &Solution| s.ended != Ended::Converged;
-            failed(a).cmp(&failed(b)).then(a.cost.total_cmp(&b.cost))
-        })
+        .collect();
+    polished.sort_by(|a, b| {
+        let failed = |s: &Solution| s.ended != Ended::Converged;
+        failed(a).cmp(&failed(b)).then(a.cost.total_cmp(&b.cost))
+    });
+    polished
 }
 
 /// Estimates with intervals, or a better place to fit from.
 fn estimates(
     evidence: &RackEvidence<OneClass>,
     best: &Solution,
+    others: &[Solution],
     cov: &DMatrix<f64>,
     cut: ProfileCut,
 ) -> Result<Vec<Estimate>, Vec<f64>> {
     let at = Columns::of::<OneClass>();
-    let names = OneClass::NAMES
-        .iter()
-        .copied()
-        .chain(["ns", "background_cpm"]);
-    let mut out = Vec::new();
-    for (j, name) in names.enumerate() {
+    let shown = at.background() + 1;
+    // Where Kd runs to the top of its search the other parameters run with it.
+    let mut profiles = Profiles::new(evidence, best, cov, cut).opened_by(0);
+    others.iter().for_each(|o| profiles.meet(o));
+    let se = |j: usize| (!best.at_limit[j]).then(|| cov[(j, j)].sqrt());
+    let end = |j: usize, upward: bool, profiles: &mut Profiles<_>| {
         let limits = evidence.limits(j);
-        let se_ln = (!best.at_limit[j]).then(|| cov[(j, j)].sqrt());
         let within = Limits {
             low: limits.low,
             high: limits.high.min(best.theta[j] + WIDEST),
         };
-        // Where Kd runs to the top of its search the other parameters run with it.
-        let end = |upward| {
-            let found = profile_end(evidence, best, j, upward, cut, se_ln, within, Some(0));
-            found.better.map_or(Ok(found.end), Err)
-        };
-        let (low, high) = (end(false)?, end(true)?);
-        out.push(Estimate {
+        let found = profiles.end(j, upward, within);
+        found.better.map_or(Ok(found.end), Err)
+    };
+    let mut ends = Vec::new();
+    for j in 0..shown {
+        ends.push([end(j, false, &mut profiles)?, end(j, true, &mut profiles)?]);
+    }
+    // What later profiles met may lie beyond the ends of earlier ones.
+    for (j, pair) in ends.iter_mut().enumerate() {
+        for (found, upward) in pair.iter_mut().zip([false, true]) {
+            if profiles.contradict(j, upward, *found) {
+                *found = end(j, upward, &mut profiles)?;
+            }
+        }
+    }
+    let names = OneClass::NAMES
+        .iter()
+        .copied()
+        .chain(["ns", "background_cpm"]);
+    let described = names.zip(ends).enumerate().map(|(j, (name, [low, high]))| {
+        let limits = evidence.limits(j);
+        Estimate {
             name,
             value: best.theta[j].exp(),
-            se_ln,
+            se_ln: se(j),
             at_floor: j != 0 && best.at_limit[j] && best.theta[j] <= limits.low,
             low: low.map(f64::exp),
             high: high.map(f64::exp),
-        });
-    }
-    debug_assert_eq!(out.len(), at.background() + 1);
-    Ok(out)
+        }
+    });
+    Ok(described.collect())
 }
 
 /// The farthest an upper end is looked for, on the ln scale: a factor of 1e13, from any floor to any use.

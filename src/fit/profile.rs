@@ -3,6 +3,7 @@
 
 use super::evidence::{Evidence, Limits, Scale};
 use super::solver::{Ended, Solution, solve};
+use nalgebra::DMatrix;
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
 /// One end of an interval, on the parameter's own scale.
@@ -91,149 +92,358 @@ impl From<End> for ProfileEnd {
 
 const MOST_WIDENINGS: usize = 60;
 const MOST_NARROWINGS: usize = 60;
+/// How often a walk is taken up again beyond an end that a place met earlier shows to be no end.
+const MOST_RESUMED: usize = 4;
 /// How exactly an end is found, on the parameter's own scale (a logarithm for binding).
 const TOLERANCE: f64 = 1e-9;
+/// How exactly the cut is met, relative to its root: as exactly as refits know their cost.
+const NEAR: f64 = 1e-9;
 
-/// The end of the interval of parameter `j`, upward or downward, within `within`.
+/// The profiles of one solution, and every place under the cut that was met along them.
 ///
-/// `se` sets the first step. An end is open if the cut is not reached within the limits, or only with parameter
-/// `opens` resting on the top of its own search: then what stopped the profile is the edge of the search
-/// and not the readings.
-#[allow(clippy::too_many_arguments)]
-pub fn profile_end<E: Evidence>(
-    evidence: &E,
-    best: &Solution,
-    j: usize,
-    upward: bool,
+/// A profile may have two branches (Kd far above the levels or among them), and refits that start from the
+/// last one stay on theirs although the other is lower. So every place under the cut is
+/// kept: an interval has to reach at least as far as each of them, and where a profile is about to
+/// cross the cut the best of them is tried as another start.
+#[derive(Debug, Clone)]
+pub struct Profiles<'e, E> {
+    evidence: &'e E,
+    best: &'e Solution,
+    cov: &'e DMatrix<f64>,
     cut: ProfileCut,
-    se: Option<f64>,
-    within: Limits,
     opens: Option<usize>,
-) -> ProfileEnd {
-    let scale = evidence.scale();
-    let sign = if upward { 1.0 } else { -1.0 };
-    let wall = if upward { within.high } else { within.low };
-    let target = cut.cut.sqrt();
-    let start = best.theta[j];
-    if (wall - start) * sign <= 0.0 {
-        return End::Open.into();
+    met: Vec<Met>,
+}
+
+/// A place under the cut.
+#[derive(Debug, Clone)]
+struct Met {
+    theta: Vec<f64>,
+    root: f64,
+}
+
+/// A refit with the parameter pinned some way from the estimate.
+struct Refit {
+    distance: f64,
+    /// The square root of the excess, nearly straight in the parameter.
+    root: f64,
+    theta: Vec<f64>,
+}
+
+impl<'e, E: Evidence> Profiles<'e, E> {
+    /// The profiles of `best`, cut at `cut`; its covariance `cov` says how far and whereto the first steps go.
+    pub fn new(
+        evidence: &'e E,
+        best: &'e Solution,
+        cov: &'e DMatrix<f64>,
+        cut: ProfileCut,
+    ) -> Self {
+        Profiles {
+            evidence,
+            best,
+            cov,
+            cut,
+            opens: None,
+            met: Vec::new(),
+        }
     }
-    let mut warm = best.theta.clone();
-    let mut slope: Option<Vec<f64>> = None;
-    let mut inner = (0.0, 0.0);
-    let mut step = se.map_or(0.25, |se| target * se).clamp(1e-6, 4.0);
-    // Reaching an end of another parameter's search while the cut is still far is remembered by the state at the end.
-    let at = |distance: f64, warm: &[f64], from: f64, slope: &Option<Vec<f64>>| {
-        let mut guess = warm.to_vec();
-        if let Some(s) = slope {
-            guess
-                .iter_mut()
-                .zip(s)
-                .for_each(|(g, s)| *g += s * (distance - from));
+
+    /// Counts an end as open if the cut is reached only with parameter `k` resting on the top of its own search: then
+    /// what stopped the profile is the edge of the search and not the readings.
+    pub fn opened_by(mut self, k: usize) -> Self {
+        self.opens = Some(k);
+        self
+    }
+
+    /// Takes another solution of the same evidence into account, where it is under the cut.
+    pub fn meet(&mut self, other: &Solution) {
+        let root = self.root(other.cost);
+        if other.ended == Ended::Converged && root < self.target() {
+            let theta = other.theta.clone();
+            self.met.push(Met { theta, root });
         }
-        guess[j] = start + sign * distance;
-        let mut done = solve(evidence, &guess, Some(j));
-        if done.ended != Ended::Converged {
-            let mut plain = warm.to_vec();
-            plain[j] = guess[j];
-            done = solve(evidence, &plain, Some(j));
-        }
-        done
-    };
-    let far = (wall - start).abs();
-    let mut outer = None;
-    for _ in 0..MOST_WIDENINGS {
-        let distance = (inner.0 + step).min(far);
-        let done = at(distance, &warm, inner.0, &slope);
-        if done.ended != Ended::Converged {
-            return End::Failed.into();
-        }
-        let excess = cut.excess(scale, best.cost, done.cost);
-        if excess < -1e-6 {
-            return ProfileEnd {
-                end: End::Failed,
-                better: Some(done.theta),
-            };
-        }
-        let root = excess.max(0.0).sqrt();
-        if root >= target {
-            outer = Some((distance, root, done));
-            break;
-        }
-        if distance >= far {
+    }
+
+    /// The end of the interval of parameter `j`, upward or downward, within `within`.
+    ///
+    /// The end is open if the cut is not reached within the limits, or as [`Profiles::opened_by`] has it.
+    pub fn end(&mut self, j: usize, upward: bool, within: Limits) -> ProfileEnd {
+        let sign = if upward { 1.0 } else { -1.0 };
+        let wall = if upward { within.high } else { within.low };
+        let start = self.best.theta[j];
+        if (wall - start) * sign <= 0.0 {
             return End::Open.into();
         }
-        slope = Some(rate(&warm, &done.theta, distance - inner.0));
-        warm = done.theta;
-        // The signed root is nearly straight in the parameter: aim a little beyond the cut, and at most three times as far.
-        let pace = (root - inner.1) / (distance - inner.0);
+        let before = self.met.len();
+        // Without the readings' say on the parameter there is no direction to start in, and a step is as good as another.
+        let variance = self.cov[(j, j)];
+        let known = variance > 0.0;
+        let slope = known.then(|| {
+            let along = self.cov.column(j);
+            along.iter().map(|c| sign * c / variance).collect()
+        });
+        let step = if known {
+            self.target() * variance.sqrt()
+        } else {
+            0.25
+        };
+        Walk {
+            j,
+            sign,
+            start,
+            far: (wall - start).abs(),
+            warm: self.best.theta.clone(),
+            slope,
+            inner: (0.0, 0.0),
+            before,
+            profiles: self,
+        }
+        .end(step.clamp(1e-6, 4.0))
+        .unwrap_or_else(|stopped| stopped)
+    }
+
+    /// Whether a place under the cut lies beyond `end`, which then is none.
+    pub fn contradict(&self, j: usize, upward: bool, end: End) -> bool {
+        let sign = if upward { 1.0 } else { -1.0 };
+        matches!(end, End::At(end) if self.met.iter().any(|m| (m.theta[j] - end) * sign > 1e-6))
+    }
+
+    fn target(&self) -> f64 {
+        self.cut.cut.sqrt()
+    }
+
+    fn excess(&self, cost: f64) -> f64 {
+        self.cut.excess(self.evidence.scale(), self.best.cost, cost)
+    }
+
+    fn root(&self, cost: f64) -> f64 {
+        self.excess(cost).max(0.0).sqrt()
+    }
+}
+
+/// The search for one end: a walk outwards to the cut.
+struct Walk<'p, 'e, E> {
+    profiles: &'p mut Profiles<'e, E>,
+    j: usize,
+    sign: f64,
+    start: f64,
+    /// The distance of the wall.
+    far: f64,
+    /// The last refit under the cut.
+    warm: Vec<f64>,
+    /// How the other parameters moved on the way to it.
+    slope: Option<Vec<f64>>,
+    /// Its distance and root.
+    inner: (f64, f64),
+    /// How many places had been met before this walk.
+    before: usize,
+}
+
+impl<E: Evidence> Walk<'_, '_, E> {
+    fn end(mut self, mut step: f64) -> Result<ProfileEnd, ProfileEnd> {
+        for _ in 0..=MOST_RESUMED {
+            let outer = self.widen(step)?;
+            let end = self.narrow(outer)?;
+            if self.pass(end.distance)? {
+                step = self.stride(self.inner.1 / self.inner.0);
+                continue;
+            }
+            let p = &self.profiles;
+            let edge = |k: usize| k != self.j && end.theta[k] >= p.evidence.limits(k).high;
+            return Ok(if p.opens.is_some_and(edge) {
+                End::Open.into()
+            } else {
+                End::At(self.start + self.sign * end.distance).into()
+            });
+        }
+        Err(End::Failed.into())
+    }
+
+    /// Steps outwards until the cut is crossed.
+    fn widen(&mut self, mut step: f64) -> Result<Refit, ProfileEnd> {
+        let target = self.profiles.target();
+        for _ in 0..MOST_WIDENINGS {
+            let distance = (self.inner.0 + step).min(self.far);
+            let mut refit = self.refit(distance)?;
+            if refit.root >= target {
+                if let Some(other) = self.elsewhere(distance)?
+                    && other.root < refit.root
+                {
+                    refit = other;
+                }
+                if refit.root >= target {
+                    if !self.pass(distance)? {
+                        return Ok(refit);
+                    }
+                    step = self.stride(self.inner.1 / self.inner.0);
+                    continue;
+                }
+            }
+            if distance >= self.far {
+                return Err(End::Open.into());
+            }
+            // The root is nearly straight in the parameter: aim a little beyond the cut, and at most three times as far.
+            let pace = (refit.root - self.inner.1) / (distance - self.inner.0);
+            self.advance(refit);
+            step = self.stride(pace);
+        }
+        Err(End::Open.into())
+    }
+
+    /// How far to go next where the root rises at `pace`.
+    fn stride(&self, pace: f64) -> f64 {
+        let (distance, root) = self.inner;
         let wanted = if pace > 0.0 {
-            1.02 * (target - root) / pace
+            1.02 * (self.profiles.target() - root) / pace
         } else {
             f64::INFINITY
         };
-        inner = (distance, root);
-        step = wanted.clamp(0.02 * distance, 2.0 * distance + 0.25);
+        wanted.clamp(0.02 * distance, 2.0 * distance + 0.25)
     }
-    let Some((mut high, mut high_root, mut at_high)) = outer else {
-        return End::Open.into();
-    };
-    let mut side = 0i32;
-    let (mut low, mut low_root) = inner;
-    let (mut low_weight, mut high_weight) = (low_root - target, high_root - target);
-    for _ in 0..MOST_NARROWINGS {
-        if high - low <= TOLERANCE || (high_root - target).abs() <= 1e-10 * target {
-            break;
+
+    /// Narrows the crossing down: regula falsi with the stale end's weight halved (the Illinois rule).
+    fn narrow(&mut self, outer: Refit) -> Result<Refit, ProfileEnd> {
+        let target = self.profiles.target();
+        let mut high = outer;
+        let (mut low_weight, mut high_weight) = (self.inner.1 - target, high.root - target);
+        let mut side = 0i32;
+        for _ in 0..MOST_NARROWINGS {
+            let low = self.inner.0;
+            let width = high.distance - low;
+            if width <= TOLERANCE || (high.root - target).abs() <= NEAR * target {
+                break;
+            }
+            let mut mid = low - low_weight * width / (high_weight - low_weight);
+            if !(mid > low && mid < high.distance) {
+                mid = 0.5 * (low + high.distance);
+            }
+            self.slope = Some(self.rates(&high));
+            let refit = self.refit(mid)?;
+            let over = refit.root - target;
+            if over.abs() <= NEAR * target {
+                return Ok(refit);
+            }
+            if over >= 0.0 {
+                high = refit;
+                high_weight = over;
+                if side == 1 {
+                    low_weight *= 0.5;
+                }
+                side = 1;
+            } else {
+                self.advance(refit);
+                low_weight = over;
+                if side == -1 {
+                    high_weight *= 0.5;
+                }
+                side = -1;
+            }
         }
-        let mut mid = low - low_weight * (high - low) / (high_weight - low_weight);
-        if !(mid > low && mid < high) {
-            mid = 0.5 * (low + high);
+        Ok(high)
+    }
+
+    /// Takes a refit under the cut as the place to go on from.
+    fn advance(&mut self, refit: Refit) {
+        self.slope = Some(self.rates(&refit));
+        self.inner = (refit.distance, refit.root);
+        self.warm.clone_from(&refit.theta);
+        self.profiles.met.push(Met {
+            theta: refit.theta,
+            root: refit.root,
+        });
+    }
+
+    /// How the parameters move from the last refit under the cut to another one.
+    fn rates(&self, to: &Refit) -> Vec<f64> {
+        let moved = to.distance - self.inner.0;
+        let rate = |(from, to): (&f64, &f64)| (to - from) / moved;
+        self.warm.iter().zip(&to.theta).map(rate).collect()
+    }
+
+    /// Goes on from the farthest place under the cut, if that is beyond `distance`; open if that is the wall.
+    fn pass(&mut self, distance: f64) -> Result<bool, ProfileEnd> {
+        let away = |m: &Met| (m.theta[self.j] - self.start) * self.sign;
+        let farthest = self
+            .profiles
+            .met
+            .iter()
+            .max_by(|a, b| away(a).total_cmp(&away(b)));
+        let Some(m) = farthest.filter(|m| away(m) > distance + 1e-6) else {
+            return Ok(false);
+        };
+        if away(m) >= self.far {
+            return Err(End::Open.into());
         }
-        let done = at(mid, &warm, low, &slope);
-        if done.ended != Ended::Converged {
-            return End::Failed.into();
+        self.inner = (away(m), m.root);
+        self.warm.clone_from(&m.theta);
+        self.slope = None;
+        Ok(true)
+    }
+
+    /// The pinned value at a distance.
+    fn pinned(&self, distance: f64) -> f64 {
+        self.start + self.sign * distance
+    }
+
+    /// The best refit at a distance, started from the last one carried on.
+    fn refit(&self, distance: f64) -> Result<Refit, ProfileEnd> {
+        let mut guess = self.warm.clone();
+        if let Some(slope) = &self.slope {
+            let by = distance - self.inner.0;
+            guess.iter_mut().zip(slope).for_each(|(g, s)| *g += s * by);
         }
-        let excess = cut.excess(scale, best.cost, done.cost);
-        if excess < -1e-6 {
-            return ProfileEnd {
+        let carried = self.solved(distance, guess);
+        let done = if carried.ended == Ended::Converged {
+            carried
+        } else {
+            self.solved(distance, self.warm.clone())
+        };
+        if done.ended == Ended::Converged {
+            self.judged(distance, done)
+        } else {
+            self.elsewhere(distance)?
+                .ok_or_else(|| ProfileEnd::from(End::Failed))
+        }
+    }
+
+    /// The refit from the best of the places met before this walk.
+    fn elsewhere(&self, distance: f64) -> Result<Option<Refit>, ProfileEnd> {
+        let places = self.profiles.met[..self.before].iter().map(|m| {
+            let mut theta = m.theta.clone();
+            theta[self.j] = self.pinned(distance);
+            (self.profiles.evidence.cost(&theta), theta)
+        });
+        let nearest = places
+            .filter(|(cost, _)| cost.is_finite())
+            .min_by(|a, b| a.0.total_cmp(&b.0));
+        let Some((_, theta)) = nearest else {
+            return Ok(None);
+        };
+        let done = self.solved(distance, theta);
+        if done.ended == Ended::Converged {
+            self.judged(distance, done).map(Some)
+        } else {
+            Ok(None)
+        }
+    }
+
+    fn solved(&self, distance: f64, mut guess: Vec<f64>) -> Solution {
+        guess[self.j] = self.pinned(distance);
+        solve(self.profiles.evidence, &guess, Some(self.j))
+    }
+
+    /// A refit by its excess, or the news of a better optimum.
+    fn judged(&self, distance: f64, done: Solution) -> Result<Refit, ProfileEnd> {
+        if self.profiles.excess(done.cost) < -1e-6 {
+            return Err(ProfileEnd {
                 end: End::Failed,
                 better: Some(done.theta),
-            };
+            });
         }
-        let root = excess.max(0.0).sqrt();
-        if (root - target).abs() <= 1e-10 * target {
-            (high, at_high) = (mid, done);
-            break;
-        }
-        // Regula falsi with the stale end's weight halved (the Illinois rule).
-        if root >= target {
-            (high, high_root, at_high) = (mid, root, done);
-            high_weight = root - target;
-            if side == 1 {
-                low_weight *= 0.5;
-            }
-            side = 1;
-        } else {
-            slope = Some(rate(&warm, &done.theta, mid - low));
-            warm = done.theta;
-            (low, low_root) = (mid, root);
-            low_weight = low_root - target;
-            if side == -1 {
-                high_weight *= 0.5;
-            }
-            side = -1;
-        }
+        Ok(Refit {
+            distance,
+            root: self.profiles.root(done.cost),
+            theta: done.theta,
+        })
     }
-    if opens.is_some_and(|k| k != j && at_high.theta[k] >= evidence.limits(k).high) {
-        return End::Open.into();
-    }
-    End::At(start + sign * high).into()
-}
-
-/// How the other parameters move with the pinned one.
-fn rate(from: &[f64], to: &[f64], distance: f64) -> Vec<f64> {
-    from.iter()
-        .zip(to)
-        .map(|(f, t)| (t - f) / distance)
-        .collect()
 }

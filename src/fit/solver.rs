@@ -54,6 +54,8 @@ impl<E: Evidence> CostFunction for Posed<'_, E> {
 
 const MOST_STEPS: u64 = 500;
 const MOST_POLISH: usize = 60;
+/// The least ratio of a factor's diagonal at which the normal equations are good for half the digits.
+const WELL_CONDITIONED: f64 = 1e-3;
 
 /// Minimises the cost of `evidence` from `start`; parameter `pinned`, if any, stays where it is.
 ///
@@ -92,7 +94,13 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
         return fallback;
     };
     let ended = done.solver.ended.unwrap_or(Ended::OutOfSteps);
-    polished(evidence, theta, done.state.cost, ended, pinned)
+    // A refit with a parameter pinned is wanted for its cost, which more digits of the others no longer change.
+    let steps = if pinned.is_some() && ended == Ended::Converged {
+        0
+    } else {
+        MOST_POLISH
+    };
+    polished(evidence, theta, done.state.cost, ended, pinned, steps)
 }
 
 /// Undamped steps while the scaled step shrinks: the last digits, which the cost can no longer tell.
@@ -102,10 +110,11 @@ fn polished<E: Evidence>(
     mut cost: f64,
     mut ended: Ended,
     pinned: Option<usize>,
+    steps: usize,
 ) -> Solution {
     let mut step = Step::default();
     let mut last = f64::INFINITY;
-    for _ in 0..MOST_POLISH {
+    for _ in 0..steps {
         if !step.prepare(evidence, &theta, pinned) {
             break;
         }
@@ -168,6 +177,8 @@ struct Step {
     free: Vec<usize>,
     r: DMatrix<f64>,
     qty: DVector<f64>,
+    /// The normal equations, where the factor comes from them.
+    gram: Option<DMatrix<f64>>,
     /// `order[k]` is the place among `free` of the factor's column `k`.
     order: Vec<usize>,
 }
@@ -180,21 +191,15 @@ impl Step {
             return false;
         }
         self.norms.resize(theta.len(), 0.0);
+        let (norms, downhill) = self.rows.column_sums();
         self.free.clear();
         for (j, t) in theta.iter().enumerate() {
-            if Some(j) == pinned {
-                continue;
-            }
             let l = evidence.limits(j);
-            let downhill = self.rows.downhill(j);
-            if (*t <= l.low && downhill <= 0.0) || (*t >= l.high && downhill >= 0.0) {
+            let held = (*t <= l.low && downhill[j] <= 0.0) || (*t >= l.high && downhill[j] >= 0.0);
+            if Some(j) == pinned || held {
                 continue;
             }
-            let norm = (0..self.rows.len())
-                .map(|i| self.rows.row(i)[j].powi(2))
-                .sum::<f64>()
-                .sqrt();
-            self.norms[j] = self.norms[j].max(norm);
+            self.norms[j] = self.norms[j].max(norms[j]);
             if self.norms[j] > 0.0 {
                 self.free.push(j);
             }
@@ -202,26 +207,70 @@ impl Step {
         if self.free.is_empty() {
             return false;
         }
-        self.factor();
+        if evidence.scale() == Scale::Estimated || !self.factor_quickly() {
+            self.factor();
+        }
         true
     }
 
+    /// The factor by Cholesky of the normal equations; false where they are too ill-conditioned for it.
+    ///
+    /// Steps are corrected by the next ones, so half the digits of a step are plenty. A row touches few columns
+    /// (one dilution error of many), so this grows with what rows hold and not with rows times columns squared.
+    fn factor_quickly(&mut self) -> bool {
+        let p = self.free.len();
+        let mut gram = DMatrix::zeros(p, p);
+        let mut aty = DVector::zeros(p);
+        let mut held: Vec<(usize, f64)> = Vec::with_capacity(p);
+        let units: Vec<f64> = self.free.iter().map(|j| 1.0 / self.norms[*j]).collect();
+        let lower = gram.as_mut_slice();
+        for (i, y) in self.rows.y().iter().enumerate() {
+            let row = self.rows.row(i);
+            held.clear();
+            for (k, (j, unit)) in self.free.iter().zip(&units).enumerate() {
+                if row[*j] != 0.0 {
+                    held.push((k, row[*j] * unit));
+                }
+            }
+            for (n, (k, v)) in held.iter().enumerate() {
+                aty[*k] += v * y;
+                for (l, w) in &held[..=n] {
+                    lower[l * p + k] += v * w;
+                }
+            }
+        }
+        let Some(cholesky) = gram.clone().cholesky() else {
+            return false;
+        };
+        let l = cholesky.l();
+        let d = l.diagonal();
+        if d.min() < WELL_CONDITIONED * d.max() || !l.solve_lower_triangular_mut(&mut aty) {
+            return false;
+        }
+        self.r = l.transpose();
+        self.qty = aty;
+        self.gram = Some(gram);
+        self.order = (0..p).collect();
+        true
+    }
+
+    /// The factor by column-pivoted QR of the rows.
     fn factor(&mut self) {
         let (m, p) = (self.rows.len(), self.free.len());
         // Rows of zeros below keep the factor square where there are fewer rows than columns.
-        let a = DMatrix::from_fn(m.max(p), p, |i, k| {
-            let j = self.free[k];
-            if i < m {
-                self.rows.row(i)[j] / self.norms[j]
-            } else {
-                0.0
+        let mut a = DMatrix::zeros(m.max(p), p);
+        for (j, mut column) in self.free.iter().zip(a.column_iter_mut()) {
+            let unit = 1.0 / self.norms[*j];
+            for (i, v) in column.iter_mut().take(m).enumerate() {
+                *v = self.rows.row(i)[*j] * unit;
             }
-        });
+        }
         let mut y = DVector::from_fn(m.max(p), |i, _| {
             self.rows.y().get(i).copied().unwrap_or(0.0)
         });
         let qr = a.col_piv_qr();
         qr.q_tr_mul(&mut y);
+        self.gram = None;
         self.r = qr.r();
         self.qty = y.rows(0, p).into_owned();
         let mut order = DMatrix::from_fn(1, p, |_, k| k as f64);
@@ -254,6 +303,14 @@ impl Step {
     /// The scaled step with damping `lambda`, and the factor of the stacked system.
     fn damped(&self, lambda: f64) -> Option<(DVector<f64>, DMatrix<f64>)> {
         let p = self.r.ncols();
+        if let Some(gram) = &self.gram {
+            let mut sum = gram.clone();
+            (0..p).for_each(|k| sum[(k, k)] += lambda);
+            let cholesky = sum.cholesky()?;
+            let d = cholesky.solve(&self.r.tr_mul(&self.qty));
+            let r = cholesky.l().transpose();
+            return d.iter().all(|v| v.is_finite()).then_some((d, r));
+        }
         let root = lambda.sqrt();
         let stacked = DMatrix::from_fn(2 * p, p, |i, k| {
             if i < p {
@@ -437,9 +494,11 @@ impl<E: Evidence> Solver<Posed<'_, E>, State> for Scoring {
             self.radius = self.radius.max(2.0 * size);
         }
         // A drop below what rounding shows is the end of what the cost can tell; polishing follows.
+        // A refit with a parameter pinned is wanted for its cost alone.
+        let wanted = if self.pinned.is_some() { 100.0 } else { 1.0 };
         let tiny = match scale {
-            Scale::Known => 1e-13 * (1.0 + cost.abs()),
-            Scale::Estimated => 1e-14 * cost,
+            Scale::Known => 1e-13 * wanted * (1.0 + cost.abs()),
+            Scale::Estimated => 1e-14 * wanted * cost,
         };
         let small_step = size <= 1e-13 * self.scaled_norm(&theta);
         let accepted = next_cost.is_finite() && real >= -slack && (promised > 0.0 || real > 0.0);

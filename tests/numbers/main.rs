@@ -1,5 +1,17 @@
 //! The numbers, held against published values and independent computations.
-#![allow(clippy::unwrap_used, clippy::expect_used, clippy::panic)]
+// Coverage is printed for whoever runs the tests to see.
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    clippy::panic,
+    clippy::print_stdout
+)]
 
+mod balance;
+mod conversions;
+mod dilution;
+mod hard_racks;
+mod nist;
 mod racks;
 mod reference_fits;
+mod reference_racks;
