@@ -13,5 +13,6 @@ mod dilution;
 mod hard_racks;
 mod nist;
 mod racks;
+mod recounts;
 mod reference_fits;
 mod reference_racks;
