@@ -31,6 +31,8 @@ const HANG_UP_PATIENCE: Duration = Duration::from_secs(25);
 /// What reaches the loop.
 enum Incoming {
     Event(Event),
+    /// What is said of the titration that was the n-th on the bench, and of no other.
+    Of(u32, Event),
     /// The terminal gave a key or a size that means nothing here.
     Nothing,
 }
@@ -91,7 +93,9 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
     let (send, receive) = channel();
     let analyst = Analyst::spawn({
         let send = send.clone();
-        move |rev, analysis| drop(send.send(Incoming::Event(Event::Analysed(rev, analysis))))
+        move |laid, rev, analysis| {
+            drop(send.send(Incoming::Of(laid, Event::Analysed(rev, analysis))));
+        }
     })?;
     let (app, effects, open) = match first {
         First::Start => {
@@ -99,7 +103,7 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
             (app, effects, None)
         }
         First::Titration(opened, notices) => {
-            let (laid, open) = files::lay(*opened, notices, &send)?;
+            let (laid, open) = files::lay(*opened, notices, &send, 0)?;
             let (app, effects) = App::at_desk(laid, lab, who, look);
             (app, effects, Some(open))
         }
@@ -111,6 +115,7 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
         app,
         analyst,
         open,
+        laid: 0,
         send,
         screen,
         gone: false,
@@ -185,6 +190,8 @@ struct Sitting {
     app: App,
     analyst: Analyst,
     open: Option<Open>,
+    /// Which titration is on the bench: the answers of threads that still worked for the one before are not taken.
+    laid: u32,
     send: Sender<Incoming>,
     screen: Screen,
     /// The terminal went away.
@@ -203,7 +210,12 @@ impl Sitting {
             // All that is waiting is taken in before anything is drawn: typing never waits for a screen.
             let mut waiting = Some(incoming);
             while let Some(incoming) = waiting {
-                if let Incoming::Event(event) = incoming
+                let event = match incoming {
+                    Incoming::Event(event) => Some(event),
+                    Incoming::Of(laid, event) => (laid == self.laid).then_some(event),
+                    Incoming::Nothing => None,
+                };
+                if let Some(event) = event
                     && self.take_in(event)?
                 {
                     return Ok(());
@@ -241,7 +253,9 @@ impl Sitting {
                         self.take_in(Event::SaveFailed(revision, why))?;
                     }
                 }
-                Effect::Analyse(revision, titration) => self.analyst.analyse(revision, *titration),
+                Effect::Analyse(revision, titration) => {
+                    self.analyst.analyse(self.laid, revision, *titration);
+                }
                 Effect::Open(path) => {
                     let opened =
                         files::open(Path::new(&path), &self.app.who).map_err(|e| e.to_string());
@@ -296,7 +310,8 @@ impl Sitting {
         match opened {
             Err(why) => drop(self.take_in(Event::Refused(why))?),
             Ok((opened, notices)) => {
-                let (laid, open) = files::lay(opened, notices, &self.send)?;
+                self.laid += 1;
+                let (laid, open) = files::lay(opened, notices, &self.send, self.laid)?;
                 self.open = Some(open);
                 self.take_in(Event::Opened(Box::new(laid)))?;
             }
