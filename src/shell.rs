@@ -12,13 +12,13 @@ use crate::assay::{Lab, Stamp};
 use crate::store;
 use crate::view;
 use analyst::Analyst;
-use crossterm::event::{Event as TerminalEvent, read};
+use crossterm::event::{Event as TerminalEvent, poll, read};
 use files::Open;
 use jiff::Timestamp;
 use jiff::tz::TimeZone;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
-use std::io;
+use std::io::{self, IsTerminal};
 use std::path::Path;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use std::thread;
@@ -27,6 +27,9 @@ use terminal::Screen;
 
 /// How long a program that was hung up on may take to end.
 const HANG_UP_PATIENCE: Duration = Duration::from_secs(25);
+
+/// How often a terminal that gives no keys is asked whether it is still there.
+const LOOK: Duration = Duration::from_secs(1);
 
 /// What reaches the loop.
 enum Incoming {
@@ -160,12 +163,13 @@ fn hang_up(send: &Sender<Incoming>) {
 fn watch_terminal(send: Sender<Incoming>) -> io::Result<()> {
     thread::Builder::new().name("keys".into()).spawn(move || {
         loop {
-            match read() {
-                Ok(event) => {
+            match next_event() {
+                Ok(Some(event)) => {
                     if send.send(translated(event)).is_err() {
                         return;
                     }
                 }
+                Ok(None) => {}
                 Err(_) => {
                     hang_up(&send);
                     return;
@@ -174,6 +178,21 @@ fn watch_terminal(send: Sender<Incoming>) -> io::Result<()> {
         }
     })?;
     Ok(())
+}
+
+/// The next event; `None` where there is none for a while and the terminal is still there.
+///
+/// A terminal can vanish without a signal, where whoever started the program keeps the signal to itself. Reading
+/// then finds the end again and again for ever, so it is never left to itself for long.
+fn next_event() -> io::Result<Option<TerminalEvent>> {
+    if poll(LOOK)? {
+        return read().map(Some);
+    }
+    if io::stdin().is_terminal() {
+        Ok(None)
+    } else {
+        Err(io::ErrorKind::UnexpectedEof.into())
+    }
 }
 
 fn translated(event: TerminalEvent) -> Incoming {
