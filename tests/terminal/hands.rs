@@ -109,7 +109,7 @@ fn a_protocol_corrected_later_shows_old_and_new_with_the_reason() {
     fill(&mut bench, "efficiency", "145 %");
     bench.keys(PAGE_DOWN);
     bench.wait("that it stands in the way", |s| {
-        s.has("> efficiency") && s.has("100 %")
+        s.has("> efficiency") && s.has("in the way")
     });
     bench.keys("\x15");
     fill(&mut bench, "efficiency", "40 %");
