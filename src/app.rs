@@ -282,7 +282,15 @@ impl App {
             _ => {}
         }
         let mut effects = match &mut self.scene {
-            Scene::Start(start) => start.update(event, &mut self.lab, now),
+            Scene::Start(start) => {
+                let before = self.lab.operator.clone();
+                let effects = start.update(event, &mut self.lab, now);
+                // Who says in the settings who is usually at the keyboard is at it.
+                if self.lab.operator != before && !self.lab.operator.is_empty() {
+                    self.who.clone_from(&self.lab.operator);
+                }
+                effects
+            }
             Scene::Draft(draft) => draft.update(event, &self.who),
             Scene::Desk(desk) => desk.update(event, now),
         };

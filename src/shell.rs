@@ -12,13 +12,13 @@ use crate::assay::{Lab, Stamp};
 use crate::store;
 use crate::view;
 use analyst::Analyst;
-use crossterm::event::{Event as TerminalEvent, read};
+use crossterm::event::{Event as TerminalEvent, poll, read};
 use files::Open;
 use jiff::Timestamp;
 use jiff::tz::TimeZone;
 use signal_hook::consts::{SIGHUP, SIGINT, SIGTERM};
 use signal_hook::iterator::Signals;
-use std::io;
+use std::io::{self, IsTerminal};
 use std::path::Path;
 use std::sync::mpsc::{Receiver, Sender, channel};
 use std::thread;
@@ -28,9 +28,14 @@ use terminal::Screen;
 /// How long a program that was hung up on may take to end.
 const HANG_UP_PATIENCE: Duration = Duration::from_secs(25);
 
+/// How often a terminal that gives no keys is asked whether it is still there.
+const LOOK: Duration = Duration::from_secs(1);
+
 /// What reaches the loop.
 enum Incoming {
     Event(Event),
+    /// What is said of the titration that was the n-th on the bench, and of no other.
+    Of(u32, Event),
     /// The terminal gave a key or a size that means nothing here.
     Nothing,
 }
@@ -91,7 +96,9 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
     let (send, receive) = channel();
     let analyst = Analyst::spawn({
         let send = send.clone();
-        move |rev, analysis| drop(send.send(Incoming::Event(Event::Analysed(rev, analysis))))
+        move |laid, rev, analysis| {
+            drop(send.send(Incoming::Of(laid, Event::Analysed(rev, analysis))));
+        }
     })?;
     let (app, effects, open) = match first {
         First::Start => {
@@ -99,7 +106,7 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
             (app, effects, None)
         }
         First::Titration(opened, notices) => {
-            let (laid, open) = files::lay(*opened, notices, &send)?;
+            let (laid, open) = files::lay(*opened, notices, &send, 0)?;
             let (app, effects) = App::at_desk(laid, lab, who, look);
             (app, effects, Some(open))
         }
@@ -111,6 +118,7 @@ pub fn sit(first: First, who: String, lab: Lab, look: Look) -> Result<Option<Str
         app,
         analyst,
         open,
+        laid: 0,
         send,
         screen,
         gone: false,
@@ -155,12 +163,13 @@ fn hang_up(send: &Sender<Incoming>) {
 fn watch_terminal(send: Sender<Incoming>) -> io::Result<()> {
     thread::Builder::new().name("keys".into()).spawn(move || {
         loop {
-            match read() {
-                Ok(event) => {
+            match next_event() {
+                Ok(Some(event)) => {
                     if send.send(translated(event)).is_err() {
                         return;
                     }
                 }
+                Ok(None) => {}
                 Err(_) => {
                     hang_up(&send);
                     return;
@@ -169,6 +178,21 @@ fn watch_terminal(send: Sender<Incoming>) -> io::Result<()> {
         }
     })?;
     Ok(())
+}
+
+/// The next event; `None` where there is none for a while and the terminal is still there.
+///
+/// A terminal can vanish without a signal, where whoever started the program keeps the signal to itself. Reading
+/// then finds the end again and again for ever, so it is never left to itself for long.
+fn next_event() -> io::Result<Option<TerminalEvent>> {
+    if poll(LOOK)? {
+        return read().map(Some);
+    }
+    if io::stdin().is_terminal() {
+        Ok(None)
+    } else {
+        Err(io::ErrorKind::UnexpectedEof.into())
+    }
 }
 
 fn translated(event: TerminalEvent) -> Incoming {
@@ -185,6 +209,8 @@ struct Sitting {
     app: App,
     analyst: Analyst,
     open: Option<Open>,
+    /// Which titration is on the bench: the answers of threads that still worked for the one before are not taken.
+    laid: u32,
     send: Sender<Incoming>,
     screen: Screen,
     /// The terminal went away.
@@ -203,7 +229,12 @@ impl Sitting {
             // All that is waiting is taken in before anything is drawn: typing never waits for a screen.
             let mut waiting = Some(incoming);
             while let Some(incoming) = waiting {
-                if let Incoming::Event(event) = incoming
+                let event = match incoming {
+                    Incoming::Event(event) => Some(event),
+                    Incoming::Of(laid, event) => (laid == self.laid).then_some(event),
+                    Incoming::Nothing => None,
+                };
+                if let Some(event) = event
                     && self.take_in(event)?
                 {
                     return Ok(());
@@ -241,7 +272,9 @@ impl Sitting {
                         self.take_in(Event::SaveFailed(revision, why))?;
                     }
                 }
-                Effect::Analyse(revision, titration) => self.analyst.analyse(revision, *titration),
+                Effect::Analyse(revision, titration) => {
+                    self.analyst.analyse(self.laid, revision, *titration);
+                }
                 Effect::Open(path) => {
                     let opened =
                         files::open(Path::new(&path), &self.app.who).map_err(|e| e.to_string());
@@ -296,7 +329,8 @@ impl Sitting {
         match opened {
             Err(why) => drop(self.take_in(Event::Refused(why))?),
             Ok((opened, notices)) => {
-                let (laid, open) = files::lay(opened, notices, &self.send)?;
+                self.laid += 1;
+                let (laid, open) = files::lay(opened, notices, &self.send, self.laid)?;
                 self.open = Some(open);
                 self.take_in(Event::Opened(Box::new(laid)))?;
             }

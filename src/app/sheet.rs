@@ -57,7 +57,7 @@ impl Forms {
             "decimal mark" => MARKS[usize::from(lab.mark == Mark::Comma)].into(),
             "confidence" => "95 %".into(),
             "try a printout" => "2406".into(),
-            name => cv_fields(name, lab.cv_prior, &lab.dilution_error),
+            name => cv_fields(name, lab.cv_prior, &lab.dilution_error, lab.mark),
         });
         Forms {
             protocol,

@@ -27,6 +27,21 @@ pub struct SheetError {
     pub what: String,
 }
 
+/// The longest part of a line that a message shows, in characters.
+const MOST_SHOWN: usize = 60;
+
+/// What a line of a sheet says, without its comment; nothing where it names no field.
+fn reads(text: &str, line: usize) -> String {
+    let line = text.lines().nth(line.saturating_sub(1)).unwrap_or("");
+    let said = line.split("//").next().unwrap_or("").trim();
+    if !said.contains(':') {
+        return String::new();
+    }
+    let shown: String = said.chars().take(MOST_SHOWN).collect();
+    let more = if shown.len() < said.len() { " .." } else { "" };
+    format!("; the line reads `{}{more}`", shown.trim_end_matches(','))
+}
+
 impl Sheet {
     /// A commented sheet to start from; its content is invented.
     pub const EXAMPLE: &'static str = include_str!("example.ron");
@@ -42,7 +57,7 @@ impl Sheet {
             .map_err(|e| SheetError {
                 line: e.span.start.line,
                 column: e.span.start.col,
-                what: e.code.to_string(),
+                what: format!("{}{}", e.code, reads(text, e.span.start.line)),
             })
     }
 

@@ -55,12 +55,21 @@ fn is_false(b: &bool) -> bool {
     !*b
 }
 
+/// A number as found, finite or not.
+fn found(v: f64) -> String {
+    if v.is_finite() {
+        short(v, 6)
+    } else {
+        v.to_string()
+    }
+}
+
 /// Why a reading makes no sense.
 #[derive(Debug, Clone, PartialEq, thiserror::Error)]
 #[non_exhaustive]
 pub enum ReadingError {
     /// Minutes of zero, negative or not finite.
-    #[error("{} minutes: a tube is counted for more than zero and at most {most} minutes", short(*minutes, 6))]
+    #[error("{} minutes: a tube is counted for more than zero and at most {most} minutes", found(*minutes))]
     Minutes {
         /// What was given.
         minutes: f64,
@@ -68,7 +77,7 @@ pub enum ReadingError {
         most: f64,
     },
     /// A number of counts that no counter gives.
-    #[error("{}: a reading is zero or more, and at most 1e12", short(*value, 6))]
+    #[error("{}: a reading is zero or more, and at most 1e12", found(*value))]
     Value {
         /// What was given.
         value: f64,

@@ -10,6 +10,7 @@ use crate::figure::Glyphs;
 use crate::notebook::{Notebook, What};
 use crate::report::{self, Page};
 use crate::shell::{self, First, demos};
+use crate::store::format::MOST_BYTES;
 use crate::store::{self, Holder};
 use clap::CommandFactory;
 use std::env;
@@ -102,18 +103,28 @@ fn called(path: &Path) -> String {
 
 fn read_text(path: &Path) -> Result<String, Failure> {
     let name = called(path);
-    let io = |e: io::Error| match e.kind() {
-        io::ErrorKind::InvalidData => {
-            Failure::new(Failure::DATA, format!("{name}: not a text in UTF-8"))
+    let io = |e: io::Error| Failure::new(Failure::IO, format!("{name}: {e}"));
+    let bad = |what: &str| Failure::new(Failure::DATA, format!("{name}: {what}"));
+    let source: Box<dyn Read> = if path == Path::new("-") {
+        Box::new(io::stdin().lock())
+    } else {
+        // A pipe is as good as a file here; a folder is not.
+        if fs::metadata(path).map_err(io)?.is_dir() {
+            return Err(bad("not a file"));
         }
-        _ => Failure::new(Failure::IO, format!("{name}: {e}")),
+        Box::new(fs::File::open(path).map_err(io)?)
     };
-    if path == Path::new("-") {
-        let mut text = String::new();
-        io::stdin().lock().read_to_string(&mut text).map_err(io)?;
-        return Ok(text);
+    let mut bytes = Vec::new();
+    source
+        .take(MOST_BYTES as u64 + 1)
+        .read_to_end(&mut bytes)
+        .map_err(io)?;
+    if bytes.len() > MOST_BYTES {
+        return Err(bad(&format!(
+            "too large; at most {MOST_BYTES} bytes are read"
+        )));
     }
-    fs::read_to_string(path).map_err(io)
+    String::from_utf8(bytes).map_err(|_| bad("not a text in UTF-8"))
 }
 
 fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {

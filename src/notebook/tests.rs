@@ -183,10 +183,10 @@ fn one_bad_reading_refuses_the_whole_entry() {
     for (change, words) in [
         (
             (|r| r.value = f64::INFINITY) as fn(&mut Reading),
-            "zero or more, and finite",
+            "inf: a reading is zero or more, and at most 1e12",
         ),
-        (|r| r.value = f64::NAN, "zero or more"),
-        (|r| r.value = -1.0, "zero or more"),
+        (|r| r.value = f64::NAN, "NaN: a reading is zero or more"),
+        (|r| r.value = -1.0, "-1: a reading is zero or more"),
         (|r| r.minutes = 0.0, "0 minutes"),
         (|r| r.quench = Some(f64::INFINITY), "quench"),
         (|r| r.pass = 0, "pass 0"),

@@ -48,7 +48,7 @@ pub fn text(page: &Page) -> String {
     protocol(&mut out, &t.protocol);
     amendments(&mut out, page.notebook);
     notes(&mut out, t);
-    record(&mut out, page, t);
+    record(&mut out, page);
     out.blank();
     out.wrapped(CAUTION, "");
     out.0
@@ -356,7 +356,7 @@ fn notes(out: &mut Lines, t: &Titration) {
     }
 }
 
-fn record(out: &mut Lines, page: &Page, t: &Titration) {
+fn record(out: &mut Lines, page: &Page) {
     out.title("Record");
     let mut hands: Vec<&str> = Vec::new();
     for e in page.notebook.entries() {
@@ -373,15 +373,25 @@ fn record(out: &mut Lines, page: &Page, t: &Titration) {
         &clean(&format!("  written by {}", hands.join(", "))),
         "    ",
     );
-    for (at, by, digest) in &t.checked {
-        let now = if digest == page.digest {
+    for e in page.notebook.entries() {
+        let What::Checked { by, digest } = &e.what else {
+            continue;
+        };
+        if !page.notebook.is_live(e.n) {
+            continue;
+        }
+        // A check is an entry too, so the digest seen is never that of the file with the check in it: what
+        // counts is whether anything but checks, closing and opening again came after it.
+        let same = |w: &What| matches!(w, What::Checked { .. } | What::Closed | What::Reopened);
+        let later = page.notebook.entries().iter().filter(|l| l.n > e.n);
+        let now = if later.map(|l| &l.what).all(same) {
             ""
         } else {
             ", of an earlier state"
         };
         out.line(clean(&format!(
             "  checked {} by {by}, digest {digest}{now}",
-            at.minute()
+            e.at.minute()
         )));
     }
     out.line(format!("  rackside {}", page.version));

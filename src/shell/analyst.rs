@@ -8,7 +8,7 @@ use std::thread;
 
 #[derive(Default)]
 struct Slot {
-    question: Option<(u32, Titration)>,
+    question: Option<(u32, u32, Titration)>,
     over: bool,
 }
 
@@ -30,25 +30,26 @@ pub(super) struct Analyst {
 }
 
 impl Analyst {
-    /// Starts the thread; `answer` is called on it with every analysis.
+    /// Starts the thread; `answer` is called on it with every analysis, and with which titration and which
+    /// revision of it that is of.
     pub(super) fn spawn(
-        answer: impl Fn(u32, Arc<Analysis>) + Send + 'static,
+        answer: impl Fn(u32, u32, Arc<Analysis>) + Send + 'static,
     ) -> io::Result<Analyst> {
         let shared = Arc::new(Shared::default());
         let ours = Arc::clone(&shared);
         thread::Builder::new()
             .name("analyst".into())
             .spawn(move || {
-                while let Some((revision, titration)) = next(&ours) {
-                    answer(revision, Arc::new(analyse(&titration)));
+                while let Some((laid, revision, titration)) = next(&ours) {
+                    answer(laid, revision, Arc::new(analyse(&titration)));
                 }
             })?;
         Ok(Analyst { shared })
     }
 
     /// Asks for an analysis in place of one that still waits.
-    pub(super) fn analyse(&self, revision: u32, titration: Titration) {
-        self.shared.slot().question = Some((revision, titration));
+    pub(super) fn analyse(&self, laid: u32, revision: u32, titration: Titration) {
+        self.shared.slot().question = Some((laid, revision, titration));
         self.shared.changed.notify_all();
     }
 }
@@ -61,7 +62,7 @@ impl Drop for Analyst {
 }
 
 /// The next question; `None` when there will be no more.
-fn next(shared: &Shared) -> Option<(u32, Titration)> {
+fn next(shared: &Shared) -> Option<(u32, u32, Titration)> {
     let mut slot = shared.slot();
     loop {
         if slot.over {

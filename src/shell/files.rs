@@ -72,11 +72,13 @@ pub(super) fn create(
     Ok((opened, Vec::new()))
 }
 
-/// What the bench gets of an opened titration, and what the shell keeps of it. It is remembered as used lately.
+/// What the bench gets of an opened titration, the n-th of the sitting, and what the shell keeps of it. It is
+/// remembered as used lately.
 pub(super) fn lay(
     opened: store::Opened,
     mut notices: Vec<String>,
     send: &Sender<Incoming>,
+    n: u32,
 ) -> io::Result<(Laid, Open)> {
     if let Some(places) = store::places() {
         // A list that cannot be kept is no reason not to work.
@@ -87,7 +89,7 @@ pub(super) fn lay(
         store::Access::Write(target) => {
             let (send, digests) = (send.clone(), Arc::clone(&digests));
             let saver = Saver::spawn(target, move |report| {
-                drop(send.send(Incoming::Event(said(report, &digests))));
+                drop(send.send(Incoming::Of(n, said(report, &digests))));
             })?;
             (Some(saver), Access::Writing)
         }

@@ -11,6 +11,7 @@ use crossterm::terminal::{
 use ratatui::backend::CrosstermBackend;
 use ratatui::{Frame, Terminal};
 use std::io::{self, BufWriter, Stdout, Write, stdout};
+use std::mem::ManuallyDrop;
 use std::sync::Once;
 use std::sync::atomic::{AtomicBool, Ordering};
 
@@ -24,7 +25,9 @@ static OURS: AtomicBool = AtomicBool::new(false);
 
 /// The terminal while it is ours; given back on drop, and by a panic.
 pub(super) struct Screen {
-    terminal: Terminal<CrosstermBackend<Out>>,
+    /// Never dropped: on its way out it would show the cursor, which [`release`] does already, and complain on
+    /// standard error where it cannot, which panics if that has gone together with the terminal.
+    terminal: ManuallyDrop<Terminal<CrosstermBackend<Out>>>,
 }
 
 fn seize() -> io::Result<()> {
@@ -52,11 +55,9 @@ fn release() {
     }
 }
 
-fn terminal() -> io::Result<Terminal<CrosstermBackend<Out>>> {
-    Terminal::new(CrosstermBackend::new(BufWriter::with_capacity(
-        BUFFER,
-        stdout(),
-    )))
+fn terminal() -> io::Result<ManuallyDrop<Terminal<CrosstermBackend<Out>>>> {
+    let out = BufWriter::with_capacity(BUFFER, stdout());
+    Terminal::new(CrosstermBackend::new(out)).map(ManuallyDrop::new)
 }
 
 impl Screen {

@@ -83,9 +83,15 @@ pub enum NumberError {
         /// The mark in force.
         wanted: Mark,
     },
-    /// Too large to be finite, or too large for a count.
-    #[error("`{text}` is too large to be a reading")]
+    /// Too large to be finite.
+    #[error("`{text}` is too large; a finite number is allowed")]
     TooLarge {
+        /// What was typed.
+        text: String,
+    },
+    /// Too large for a count.
+    #[error("`{text}` is too large; counts are at most 1e12")]
+    TooManyCounts {
         /// What was typed.
         text: String,
     },
@@ -169,7 +175,7 @@ pub fn parse_counts(text: &str, mark: Mark) -> Result<f64, NumberError> {
     }
     match digits.parse::<f64>() {
         Ok(v) if v <= MOST_COUNTS => Ok(v),
-        _ => Err(NumberError::TooLarge { text: t.into() }),
+        _ => Err(NumberError::TooManyCounts { text: t.into() }),
     }
 }
 

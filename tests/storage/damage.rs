@@ -176,9 +176,24 @@ fn the_layout_is_held_to() {
         ("5.0 nM", "5.0\\u{1b}[2J nM", 2, "unit"),
         ("04T10", "04\\u{9b}2JT10", 2, "not a date"),
         (",what:Counted", ",\u{1b}[2J:1,what:Counted", 3, ""),
-        ("value:5.0", "value:1e999", 3, "zero or more, and finite"),
-        ("value:5.0", "value:inf", 3, "zero or more, and finite"),
-        ("value:5.0", "value:NaN", 3, "zero or more, and finite"),
+        (
+            "value:5.0",
+            "value:1e999",
+            3,
+            "inf: a reading is zero or more",
+        ),
+        (
+            "value:5.0",
+            "value:inf",
+            3,
+            "inf: a reading is zero or more",
+        ),
+        (
+            "value:5.0",
+            "value:NaN",
+            3,
+            "NaN: a reading is zero or more",
+        ),
         ("minutes:2.0", "minutes:1e999", 3, "minutes"),
     ] {
         let edited = whole.replace(from, to);

@@ -17,6 +17,11 @@ pub const PATIENCE: Duration = Duration::from_secs(30);
 
 const PROGRAM: &str = env!("CARGO_BIN_EXE_rackside");
 
+/// A line of the shell in which `rackside` is the program.
+pub fn called(line: &str) -> String {
+    line.replace("rackside", PROGRAM)
+}
+
 /// What ends a synchronised update: the screen is whole then, and only then.
 const UPDATE_BEGINS: &[u8] = b"\x1b[?2026h";
 const UPDATE_ENDS: &[u8] = b"\x1b[?2026l";
@@ -93,7 +98,7 @@ impl Home {
     /// Runs a line of the shell in which `rackside` is the program.
     pub fn shell(&self, line: &str) -> Ran {
         let mut command = Command::new("sh");
-        command.args(["-c", &line.replace("rackside", PROGRAM)]);
+        command.args(["-c", &called(line)]);
         self.ran(command, "")
     }
 
@@ -119,7 +124,14 @@ impl Home {
 
     /// Starts the program in a pseudo-terminal of 80 columns and 24 rows.
     pub fn sit(&self, args: &[&str]) -> Terminal {
-        Terminal::start(self, args, 80, 24)
+        Terminal::start(self, PROGRAM, args, 80, 24)
+    }
+
+    /// Starts a shell in such a pseudo-terminal; `rackside` in its arguments is the program.
+    pub fn sit_in_shell(&self, args: &[&str]) -> Terminal {
+        let args: Vec<String> = args.iter().map(|a| called(a)).collect();
+        let args: Vec<&str> = args.iter().map(String::as_str).collect();
+        Terminal::start(self, "sh", &args, 80, 24)
     }
 }
 
@@ -260,9 +272,9 @@ fn some(n: u16) -> NonZero<u16> {
 }
 
 impl Terminal {
-    fn start(home: &Home, args: &[&str], columns: u16, rows: u16) -> Terminal {
+    fn start(home: &Home, program: &str, args: &[&str], columns: u16, rows: u16) -> Terminal {
         let pair = native_pty_system().openpty(size(columns, rows)).unwrap();
-        let mut command = CommandBuilder::new(PROGRAM);
+        let mut command = CommandBuilder::new(program);
         command.args(args);
         command.env_clear();
         for (name, value) in home.environment() {
@@ -402,6 +414,30 @@ impl Terminal {
     /// Everything the program wrote.
     pub fn raw(&self) -> Vec<u8> {
         self.shared.state().raw.clone()
+    }
+
+    /// Waits until nothing was written for a while, and gives how many bytes there are by then.
+    #[track_caller]
+    pub fn settled(&self, quiet: Duration) -> usize {
+        let by = Instant::now() + PATIENCE;
+        let mut state = self.shared.state();
+        let (mut bytes, mut since) = (state.raw.len(), Instant::now());
+        loop {
+            assert!(Instant::now() < by, "the terminal is never still");
+            let left = quiet.saturating_sub(since.elapsed());
+            if left.is_zero() {
+                return bytes;
+            }
+            state = self
+                .shared
+                .changed
+                .wait_timeout(state, left)
+                .unwrap_or_else(PoisonError::into_inner)
+                .0;
+            if state.raw.len() != bytes {
+                (bytes, since) = (state.raw.len(), Instant::now());
+            }
+        }
     }
 
     /// Whether the terminal hands lines on as a shell has it, rather than key by key.

@@ -1,7 +1,7 @@
 //! One rack, invented: eight levels, two total and two nonspecific tubes each, one background vial. Nobody
 //! counted it; the counts were simulated and one total is low, as if its filter had been torn.
 
-use super::harness::Home;
+use super::harness::{Home, Terminal};
 use rackside::assay::{Titration, TubeNo};
 use rackside::notebook::{Entry, What};
 use rackside::store::{self, Opened};
@@ -84,6 +84,15 @@ pub fn counted(first: usize) -> Home {
     let home = fresh();
     let _ = home.run_with(&["take", FILE, "-"], &table(first)).done();
     home
+}
+
+/// Types the readings of some vials, each when the prompt asks for it, and waits for each to be read back.
+pub fn type_through(bench: &mut Terminal, vials: impl IntoIterator<Item = u32>) {
+    for vial in vials {
+        bench.wait_prompt(vial, role(vial));
+        bench.keypad(&format!("{}\r", counts_of(vial)));
+        bench.wait_kept(vial, counts_of(vial));
+    }
 }
 
 /// A home with the rack in a file of some megabytes, nothing counted yet: so many notes that every save takes

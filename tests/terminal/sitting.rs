@@ -2,17 +2,8 @@
 
 use super::harness::{Home, Terminal, one_at_a_time};
 use super::json::summary;
-use super::rack::{COUNTS, FILE, SUSPECT, counts_of, fresh, role};
+use super::rack::{COUNTS, FILE, SUSPECT, counts_of, fresh, role, type_through};
 use rackside::units::significant;
-
-/// Types the readings of some vials, each when the prompt asks for it, and waits for each to be read back.
-fn type_through(bench: &mut Terminal, vials: impl IntoIterator<Item = u32>) {
-    for vial in vials {
-        bench.wait_prompt(vial, role(vial));
-        bench.keypad(&format!("{}\r", counts_of(vial)));
-        bench.wait_kept(vial, counts_of(vial));
-    }
-}
 
 fn first_half(bench: &mut Terminal) {
     bench.wait_prompt(33, "background");

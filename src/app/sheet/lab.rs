@@ -20,7 +20,7 @@ pub(in crate::app) fn lab_form(lab: &Lab) -> Form {
             PlotGlyphs::Plain => 2,
         }]
         .into(),
-        name => cv_fields(name, lab.cv_prior, &lab.dilution_error),
+        name => cv_fields(name, lab.cv_prior, &lab.dilution_error, lab.mark),
     })
 }
 

@@ -6,8 +6,13 @@ use crate::assay::{
 };
 use crate::units::{Fraction, Mark, Typed, short};
 
-pub(super) fn percent(v: f64) -> String {
-    format!("{} %", short(100.0 * v, 6))
+pub(super) fn percent(v: f64, mark: Mark) -> String {
+    format!("{} %", number(100.0 * v, mark))
+}
+
+/// A number as it would be typed with a decimal mark.
+fn number(v: f64, mark: Mark) -> String {
+    short(v, 6).replace('.', &mark.char().to_string())
 }
 
 pub(super) fn receptor_text(amount: &ReceptorAmount) -> String {
@@ -84,9 +89,9 @@ pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
         }]
         .into(),
         "decimal mark" => MARKS[usize::from(c.mark == Mark::Comma)].into(),
-        "confidence" => percent(p.numbers.confidence),
+        "confidence" => percent(p.numbers.confidence, c.mark),
         "try a printout" => "2406".into(),
-        name => cv_fields(name, p.numbers.cv_prior, &p.numbers.dilution_error),
+        name => cv_fields(name, p.numbers.cv_prior, &p.numbers.dilution_error, c.mark),
     }
 }
 
@@ -95,10 +100,11 @@ pub(super) fn cv_fields(
     name: &str,
     prior: Option<CvPrior>,
     dilution_error: &Typed<Fraction>,
+    mark: Mark,
 ) -> String {
     match name {
-        "tube CV" => prior.map_or(String::new(), |p| percent(p.centre)),
-        "its factor" => prior.map_or(String::new(), |p| short(p.sd_ln, 6)),
+        "tube CV" => prior.map_or(String::new(), |p| percent(p.centre, mark)),
+        "its factor" => prior.map_or(String::new(), |p| number(p.sd_ln, mark)),
         "dilution error" => dilution_error.to_string(),
         _ => String::new(),
     }
