@@ -282,7 +282,7 @@ impl App {
             _ => {}
         }
         let mut effects = match &mut self.scene {
-            Scene::Start(start) => start.update(event, &mut self.lab, now),
+            Scene::Start(start) => start.update(event, &mut self.lab, self.look),
             Scene::Draft(draft) => draft.update(event, &self.who),
             Scene::Desk(desk) => desk.update(event, now),
         };

@@ -2,7 +2,7 @@
 
 use super::form::edit;
 use super::keys::{self, Key};
-use super::{Desk, Effect};
+use super::{Desk, Effect, Step};
 use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
 use crate::notebook::What;
 use tui_input::Input;
@@ -91,8 +91,13 @@ impl Desk {
                 }
             },
             Some(Layer::Help { top }) => {
+                let lines = match self.step {
+                    Step::Result => keys::result_help(self.look.columns),
+                    _ => keys::bench_help(self.look.columns),
+                };
+                let most = keys::help_over(lines.len(), self.look.rows);
                 match key {
-                    Key::Down => *top = top.saturating_add(1).min(keys::BENCH.len() as u16),
+                    Key::Down => *top = top.saturating_add(1).min(most),
                     Key::Up => *top = top.saturating_sub(1),
                     _ => {
                         self.layers.pop();
@@ -103,8 +108,8 @@ impl Desk {
             Some(Layer::Close) => {
                 self.layers.pop();
                 match (key, self.titration().closed.is_some()) {
-                    (Key::Char('y'), false) => self.recorded(What::Closed, now, "closed"),
-                    (Key::Char('y'), true) => self.recorded(What::Reopened, now, "open again"),
+                    (Key::Char('y'), false) => self.recorded(What::Closed, now),
+                    (Key::Char('y'), true) => self.recorded(What::Reopened, now),
                     _ => Vec::new(),
                 }
             }
@@ -166,7 +171,7 @@ impl Desk {
             LineFor::Amend => self.amend(words, now),
             LineFor::Checker => {
                 let digest = self.saved.digest.clone();
-                self.recorded(What::Checked { by: words, digest }, now, "checked")
+                self.recorded(What::Checked { by: words, digest }, now)
             }
             LineFor::Operator => {
                 self.say(format!("{words} is at the keyboard"));
@@ -178,18 +183,16 @@ impl Desk {
                     tube: Some(tube),
                     text: words,
                 };
-                self.recorded(what, now, "noted")
+                self.recorded(what, now)
             }
         }
     }
 
     fn reasoned(&mut self, what: ReasonFor, why: Suspicion, now: Stamp) -> Vec<Effect> {
         match what {
-            ReasonFor::Suspect(_, reading) => {
-                self.recorded(What::Flagged { reading, why }, now, "suspect")
-            }
+            ReasonFor::Suspect(_, reading) => self.recorded(What::Flagged { reading, why }, now),
             ReasonFor::Lost(tube) => {
-                let effects = self.recorded(What::Lost { tube, why }, now, "lost");
+                let effects = self.recorded(What::Lost { tube, why }, now);
                 if self.titration().lost.contains_key(&tube) {
                     self.moved_on(tube);
                 }
@@ -199,11 +202,11 @@ impl Desk {
     }
 
     /// Records an entry and reads it back.
-    fn recorded(&mut self, what: What, now: Stamp, verb: &str) -> Vec<Effect> {
+    fn recorded(&mut self, what: What, now: Stamp) -> Vec<Effect> {
         match self.record(what, now) {
             None => vec![Effect::Bell],
             Some((entry, effects)) => {
-                self.say(format!("{verb}   {}", self.notebook.describe(&entry)));
+                self.say(self.notebook.describe(&entry));
                 effects
             }
         }
