@@ -284,7 +284,7 @@ impl App {
         let mut effects = match &mut self.scene {
             Scene::Start(start) => {
                 let before = self.lab.operator.clone();
-                let effects = start.update(event, &mut self.lab, now);
+                let effects = start.update(event, &mut self.lab, self.look);
                 // Who says in the settings who is usually at the keyboard is at it.
                 if self.lab.operator != before && !self.lab.operator.is_empty() {
                     self.who.clone_from(&self.lab.operator);

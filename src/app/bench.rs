@@ -92,7 +92,9 @@ impl Desk {
     }
 
     pub(super) fn bench_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
-        let typing = !self.bench.line.value().is_empty();
+        // A number whose minutes are still wanted is on the line too, and no key may drop it unseen.
+        let typing = !self.bench.line.value().is_empty()
+            || matches!(self.bench.field, Field::Minutes { .. });
         match key {
             Key::Char(c) if c.is_ascii_digit() || matches!(c, '.' | ',' | ' ') => {
                 return self.typed(c);
@@ -494,10 +496,11 @@ impl Desk {
         if self.titration().wants_reading(at) {
             self.layers.push(Layer::Reasons(ReasonFor::Lost(at)));
         } else {
-            self.refuse(format!(
-                "{} has a reading or is lost already; a reading is flagged with *",
-                self.tube_name(at)
-            ));
+            self.refuse(if self.titration().kept(at).is_empty() {
+                format!("vial {at} is lost already; - takes the newest entry back")
+            } else {
+                format!("vial {at} has a reading and cannot be lost; * flags it")
+            });
         }
         Vec::new()
     }

@@ -7,7 +7,7 @@ use super::layers::{Layer, LineFor};
 use super::{Access, Effect, Event, Forms, Look, Message, Step, page};
 use crate::analysis::Analysis;
 use crate::assay::{Level, Protocol, Stamp, Titration, TubeNo};
-use crate::notebook::{Entry, Notebook, What};
+use crate::notebook::{Entry, Notebook, Rejection, What};
 use std::sync::Arc;
 
 /// How far the file is.
@@ -136,6 +136,19 @@ impl Desk {
         self.saved.revision >= self.notebook.revision()
     }
 
+    /// What has to be said as long as it holds, a line each; its first words say most, should the line be cut.
+    pub fn standing(&self) -> Vec<String> {
+        let mut bars = Vec::new();
+        if let (Some(why), false) = (&self.saved.failed, self.is_saved()) {
+            bars.push(format!("NOT SAVED, trying again   {why}"));
+        }
+        if let Access::ReadOnly(why) = &self.access {
+            bars.push(format!("READ ONLY   {why}"));
+        }
+        bars.extend(self.notices.iter().cloned());
+        bars
+    }
+
     /// What helps a person at their first readings; nothing once they know.
     pub fn hint(&self) -> Option<&'static str> {
         if self.titration().closed.is_some() {
@@ -208,11 +221,20 @@ impl Desk {
         } else if self.forms.is_none() {
             let t = self.titration();
             let mut forms = Forms::of(&t.protocol, &t.levels);
-            if matches!(self.access, Access::ReadOnly(_)) || t.closed.is_some() {
+            let fixed = match (&self.access, &t.closed) {
+                (Access::ReadOnly(_), _) => Some("read only: this can be looked at, not corrected"),
+                (_, Some(_)) => {
+                    Some("closed: this can be looked at; c at the tubes opens it again")
+                }
+                _ => None,
+            };
+            if fixed.is_some() {
                 forms.fix();
             }
             self.forms = Some(forms);
-            self.say("a correction is recorded with its reason when you leave; Esc drops it");
+            self.say(fixed.unwrap_or(
+                "a correction is recorded with its reason when you leave; Esc drops it",
+            ));
         }
         self.step = to;
         self.top = 0;
@@ -243,7 +265,7 @@ impl Desk {
         let Some(forms) = &mut self.forms else {
             return Vec::new();
         };
-        match forms.of_step_mut(step).key(key) {
+        match forms.key(step, key) {
             Did::Through => return self.go(step.next()),
             Did::Changed => forms.check(Some(&levels)),
             Did::Moved | Did::Nothing => {}
@@ -255,6 +277,10 @@ impl Desk {
     /// What the forms say: `None` where they are wrong, `Some(None)` where they say nothing new.
     fn amended(&self, forms: &Forms) -> Option<Option<(Protocol, Vec<Level>)>> {
         let t = self.titration();
+        // A form may show a number or a text more plainly than the notebook has it; that is no correction.
+        if forms.say_the_same(&Forms::of(&t.protocol, &t.levels)) {
+            return Some(None);
+        }
         let protocol = forms.protocol().ok()?;
         let levels = forms.levels(&t.levels).ok()?;
         Some((protocol != t.protocol || levels != t.levels).then_some((protocol, levels)))
@@ -300,7 +326,10 @@ impl Desk {
     }
 
     fn result_key(&mut self, key: Key) -> Vec<Effect> {
-        let page_rows = usize::from(self.look.rows).saturating_sub(5).max(1);
+        // Title, rule, message and keys take four rows, and one line of a page is seen again on the next.
+        let page_rows = usize::from(self.look.rows)
+            .saturating_sub(5 + self.standing().len())
+            .max(1);
         let Some(command) = keys::result_command(key) else {
             return Vec::new();
         };
@@ -342,7 +371,7 @@ impl Desk {
             }
             _ => {
                 self.refuse(format!(
-                    "{} characters pasted and not taken: type readings, or take a table with `rackside take`",
+                    "{} characters pasted, not taken; type readings, or use `rackside take`",
                     text.chars().count()
                 ));
                 vec![Effect::Bell]
@@ -377,7 +406,13 @@ impl Desk {
                 Some((entry, effects))
             }
             Err(rejection) => {
-                self.refuse(rejection.to_string());
+                self.refuse(match &rejection {
+                    // At the bench the key that helps is known.
+                    Rejection::Closed { at, .. } => {
+                        format!("the titration was closed at {at}; c opens it again")
+                    }
+                    other => other.to_string(),
+                });
                 None
             }
         }

@@ -60,7 +60,7 @@ impl Draft {
                     let key = Key::Char(c);
                     let _ = match &mut self.path {
                         Some(input) => edit(input, key, 1000),
-                        None => self.form_mut().key(key),
+                        None => self.forms.key(self.step, key),
                     };
                 }
                 self.untouched = false;
@@ -89,7 +89,7 @@ impl Draft {
             Key::Esc | Key::Ctrl('c') => self.leaving = true,
             Key::PageDown => self.go(true),
             Key::PageUp => self.go(false),
-            key => match self.form_mut().key(key) {
+            key => match self.forms.key(self.step, key) {
                 Did::Changed => {
                     self.untouched = false;
                     self.forms.check(None);

@@ -1,6 +1,7 @@
 //! A form: fields one below the other, each a line of text or a choice, with one line of help.
 
 use super::keys::Key;
+use crate::units::clean;
 use tui_input::{Input, InputRequest};
 
 /// What a field holds.
@@ -210,9 +211,9 @@ fn choose(field: &mut FieldState, options: &[&str], key: Key) -> Did {
 /// A key in a line of text.
 pub(super) fn edit(input: &mut Input, key: Key, most: usize) -> Did {
     let request = match key {
-        Key::Char(c) if c.is_control() || input.value().chars().count() >= most => {
-            return Did::Nothing;
-        }
+        // What no screen would show is not taken either: the cursor stands where one sees it.
+        Key::Char(c) if clean(c.encode_utf8(&mut [0; 4])).is_empty() => return Did::Nothing,
+        Key::Char(_) if input.value().chars().count() >= most => return Did::Nothing,
         Key::Char(c) => InputRequest::InsertChar(c),
         Key::Backspace => InputRequest::DeletePrevChar,
         Key::Delete => InputRequest::DeleteNextChar,

@@ -1,5 +1,9 @@
 //! The one table of keys: it decides what a key does, and help and hints are read off it.
 
+mod help;
+
+pub use help::{bench_help, help_over, result_help, start_help};
+
 use crossterm::event::{KeyCode, KeyEvent, KeyEventKind, KeyModifiers};
 
 /// A key as the program knows it.
@@ -369,7 +373,7 @@ pub const RESULT: &[Binding<ResultCommand>] = &[
         &[Key::Char('s')],
         "s",
         ResultCommand::Save,
-        "save as text",
+        "save",
         "save the page as a text file beside the titration",
         false,
     ),
@@ -546,7 +550,7 @@ mod tests {
                 assert!(seen.insert(*k), "{k:?}");
             }
             assert!(!b.help.is_empty() && !b.shown.is_empty());
-            assert!(b.help.len() <= 68, "{} is too long beside its key", b.help);
+            assert!(b.help.len() <= 67, "{} is too long beside its key", b.help);
         }
     }
 

@@ -2,7 +2,7 @@
 
 use super::form::edit;
 use super::keys::{self, Key};
-use super::{Desk, Effect};
+use super::{Desk, Effect, Step};
 use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
 use crate::notebook::What;
 use tui_input::Input;
@@ -91,8 +91,13 @@ impl Desk {
                 }
             },
             Some(Layer::Help { top }) => {
+                let lines = match self.step {
+                    Step::Result => keys::result_help(self.look.columns),
+                    _ => keys::bench_help(self.look.columns),
+                };
+                let most = keys::help_over(lines.len(), self.look.rows);
                 match key {
-                    Key::Down => *top = top.saturating_add(1).min(keys::BENCH.len() as u16),
+                    Key::Down => *top = top.saturating_add(1).min(most),
                     Key::Up => *top = top.saturating_sub(1),
                     _ => {
                         self.layers.pop();

@@ -4,15 +4,16 @@ mod lab;
 mod read;
 mod write;
 
-pub(super) use lab::{lab_form, read_lab};
+pub(super) use lab::{lab_form, lab_key, read_lab};
 
 use super::Step;
 use super::fields::{self, BLANKS, LAID, MADE, MARKS, READING, SITES, STICKS, UNITS};
-use super::form::Form;
+use super::form::{Did, Form};
+use super::keys::Key;
 use crate::assay::{Dilution, Lab, Ladder, LadderError, Level, Levels, Protocol, Sheet};
 use crate::units::Mark;
 use read::{Reader, exceptions, list, read_protocol};
-use write::{counter_value, cv_fields, protocol_value};
+use write::{counter_value, cv_fields, follow_mark, protocol_value};
 
 /// What stands in the way, each with the name or the path of its field.
 pub type Errors = Vec<(String, String)>;
@@ -74,7 +75,7 @@ impl Forms {
                 .iter()
                 .map(|l| l.added.text.clone())
                 .collect::<Vec<_>>()
-                .join("  ")
+                .join(" ")
         });
         let counter = Form::new(fields::COUNTER, |s| counter_value(p, s.name));
         Forms {
@@ -100,6 +101,28 @@ impl Forms {
             Step::Ladder => &mut self.ladder,
             _ => &mut self.counter,
         }
+    }
+
+    /// Takes a key in the form of a step. Where another decimal mark is chosen, the numbers of that form follow it.
+    pub(super) fn key(&mut self, step: Step, key: Key) -> Did {
+        let before = self.mark();
+        let did = self.of_step_mut(step).key(key);
+        let mark = self.mark();
+        follow_mark(&mut self.counter, before, mark);
+        did
+    }
+
+    /// Whether every field that is kept holds the same text as in `other`.
+    pub(super) fn say_the_same(&self, other: &Forms) -> bool {
+        let values = |f: &Forms| -> Vec<String> {
+            [&f.protocol, &f.ladder, &f.counter]
+                .into_iter()
+                .flat_map(|form| &form.fields)
+                .filter(|field| !field.spec.path.is_empty())
+                .map(|field| field.value().to_string())
+                .collect()
+        };
+        values(self) == values(other)
     }
 
     /// Makes all fields ones that are only looked at.

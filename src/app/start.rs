@@ -2,9 +2,9 @@
 
 use super::form::{Did, Form, edit};
 use super::keys::{self, Key, StartCommand};
-use super::sheet::{lab_form, read_lab};
-use super::{Effect, Event, Message};
-use crate::assay::{Lab, Stamp};
+use super::sheet::{lab_form, lab_key, read_lab};
+use super::{Effect, Event, Look, Message};
+use crate::assay::Lab;
 use tui_input::Input;
 
 /// A titration used lately.
@@ -27,8 +27,11 @@ pub enum Ask {
     Demo,
     /// The lab's settings.
     Lab(Box<Form>),
-    /// The keys.
-    Help,
+    /// The keys, here and in the forms, from a line down.
+    Help {
+        /// The first line shown.
+        top: u16,
+    },
 }
 
 /// The start screen.
@@ -47,9 +50,9 @@ pub struct Start {
 }
 
 impl Start {
-    pub(super) fn update(&mut self, event: Event, lab: &mut Lab, _now: Stamp) -> Vec<Effect> {
+    pub(super) fn update(&mut self, event: Event, lab: &mut Lab, look: Look) -> Vec<Effect> {
         match event {
-            Event::Key(key) => self.key(key, lab),
+            Event::Key(key) => self.key(key, lab, look),
             Event::Paste(text) => {
                 if let Some(Ask::Path(input)) = &mut self.ask {
                     for c in text.trim().chars() {
@@ -75,10 +78,24 @@ impl Start {
         }
     }
 
-    fn key(&mut self, key: Key, lab: &mut Lab) -> Vec<Effect> {
+    fn key(&mut self, key: Key, lab: &mut Lab, look: Look) -> Vec<Effect> {
         match self.ask.take() {
             None => self.choose(key, lab),
-            Some(Ask::Help) => Vec::new(),
+            Some(Ask::Help { top }) => {
+                match key {
+                    Key::Down => {
+                        let most = keys::help_over(keys::start_help(look.columns).len(), look.rows);
+                        let top = (top + 1).min(most);
+                        self.ask = Some(Ask::Help { top });
+                    }
+                    Key::Up => {
+                        let top = top.saturating_sub(1);
+                        self.ask = Some(Ask::Help { top });
+                    }
+                    _ => {}
+                }
+                Vec::new()
+            }
             Some(Ask::Path(mut input)) => match key {
                 Key::Esc => Vec::new(),
                 Key::Enter if input.value().trim().is_empty() => Vec::new(),
@@ -103,7 +120,7 @@ impl Start {
             self.message = Message::said("the settings are as they were");
             return Vec::new();
         }
-        let did = form.key(key);
+        let did = lab_key(&mut form, key);
         match read_lab(&form) {
             Err(errors) => {
                 form.set_errors(&errors);
@@ -152,7 +169,7 @@ impl Start {
             StartCommand::Path => self.ask = Some(Ask::Path(Input::default())),
             StartCommand::Demo => self.ask = Some(Ask::Demo),
             StartCommand::Lab => self.ask = Some(Ask::Lab(Box::new(lab_form(lab)))),
-            StartCommand::Help => self.ask = Some(Ask::Help),
+            StartCommand::Help => self.ask = Some(Ask::Help { top: 0 }),
             StartCommand::Quit => return vec![Effect::Quit],
         }
         Vec::new()

@@ -34,9 +34,9 @@ fn estimates(app: &Desk, analysis: &Analysis, width: usize) -> Vec<Line<'static>
             Line::from("   look for a reading typed wrong, or at the protocol's units"),
         ],
         Outcome::Fitted(fit) => {
-            let mut lines = fitted(app, protocol, fit);
+            let mut lines = fitted(app, protocol, fit, width);
             if let Some(all) = &analysis.all_readings {
-                beside(&mut lines, protocol, all.fit());
+                beside(&mut lines, protocol, all.fit(), width);
             }
             lines
         }
@@ -79,7 +79,7 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
     ])
 }
 
-fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
+fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<'static>> {
     let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("  pKd {p}"));
     let of = app
         .titration()
@@ -88,6 +88,21 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
         .filter(|t| t.level.is_some())
         .count();
     let background = values::background(fit);
+    let model = format!(
+        " {}   CV {} %   {} of {of} used",
+        fit.model.words(),
+        significant(100.0 * fit.cv, 2),
+        fit.tubes_used,
+    );
+    let after = if app.is_current() {
+        values::TAKEN_AS_EXACT_SHORT
+    } else {
+        "refitting ..."
+    };
+    let model = match format!("{model}   {after}") {
+        whole if whole.len() <= width => whole,
+        _ => model,
+    };
     vec![
         line("Kd", &values::kd(protocol, fit), &p_kd),
         line("sites", &values::sites(protocol, fit), ""),
@@ -96,25 +111,16 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit) -> Vec<Line<'static>> {
             &values::ns(fit),
             &format!("   background {}", background.value),
         ),
-        Line::from(format!(
-            " {}   CV {} %   {} of {of} used   {}",
-            fit.model.words(),
-            significant(100.0 * fit.cv, 2),
-            fit.tubes_used,
-            if app.is_current() {
-                values::TAKEN_AS_EXACT_SHORT
-            } else {
-                "refitting ..."
-            },
-        )),
+        Line::from(model),
     ]
 }
 
 /// The column where the answer with suspects begins.
 const BESIDE: usize = 42;
 
-/// The same with no reading left out, beside the estimates; units stand on the left.
-fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>) {
+/// The same with no reading left out, beside the estimates; units stand on the left. Where there is no room, Kd alone
+/// takes the line of the nonspecific binding: half a number would be read as a whole one.
+fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>, width: usize) {
     let bare = |s: Shown, unit: &str| {
         let value = s.value.replace(&format!(" {unit}"), "");
         // An open end is said by the value itself: `above 3.1`.
@@ -134,6 +140,17 @@ fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>) {
             bare(values::sites(protocol, fit), sites_shown(protocol).unit),
         ],
     };
+    let wanted = texts
+        .iter()
+        .map(|t| BESIDE + "| with suspects ".len() + t.len());
+    if wanted.max() > Some(width) {
+        let [kd, _] = texts;
+        let unit = protocol.display.concentration.word();
+        if let Some(line) = lines.get_mut(2) {
+            *line = Line::styled(format!(" with suspects  Kd {kd}  {unit}"), style::quiet());
+        }
+        return;
+    }
     for (line, text) in lines.iter_mut().zip(texts) {
         let gap = BESIDE.saturating_sub(line.width()).max(1);
         line.push_span(Span::styled(

@@ -29,16 +29,14 @@ pub(super) fn draw_draft(frame: &mut Frame, area: Rect, draft: &Draft, fine: boo
         "Enter next   PgDn next step   PgUp back   Esc leave",
     );
     if let Some(input) = &draft.path {
-        let lines = vec![
-            Line::from(input.value().to_string()),
-            Line::styled(
-                "Enter makes the file and goes to the tubes   Esc goes back",
-                style::quiet(),
-            ),
-            Line::from(clean(&draft.message.text)),
-        ];
-        let inner = layers::panel(frame, area, "the file to keep it in", lines, fine);
-        layers::cursor(frame, inner, input.visual_cursor());
+        let mut below = vec![Line::styled(
+            "Enter makes the file and goes to the tubes   Esc goes back",
+            style::quiet(),
+        )];
+        if !draft.message.text.is_empty() {
+            below.push(Line::styled(clean(&draft.message.text), style::strong()));
+        }
+        layers::ask(frame, area, "the file to keep it in", input, below, fine);
     }
     if draft.leaving {
         let lines = vec![
@@ -119,49 +117,46 @@ fn fields(frame: &mut Frame, area: Rect, form: &Form) {
         .map(|(i, f)| field(f, i == form.at, usize::from(area.width)))
         .collect();
     frame.render_widget(Paragraph::new(lines), area);
-    if let Some(f) = form
+    let column = form
         .current()
-        .filter(|f| !matches!(f.spec.kind, Kind::Choice(_)))
-    {
-        let (_, cut) = shown_value(f);
-        let x = VALUE + f.input.visual_cursor().saturating_sub(cut);
-        let x = area.x + (x as u16).min(area.width.saturating_sub(1));
+        .and_then(|f| cursor(f, usize::from(area.width)));
+    if let Some(column) = column {
+        let x = area.x + (column as u16).min(area.width.saturating_sub(1));
         frame.set_cursor_position(Position::new(x, area.y + (form.at - top) as u16));
     }
 }
 
-/// The part of a value that has room, and how many characters before it have not.
-fn shown_value(f: &FieldState) -> (String, usize) {
-    let text = clean(f.value());
-    let over = text
-        .chars()
-        .count()
-        .saturating_sub(WIDEST.max(f.input.visual_cursor().min(WIDEST)));
-    let cut = over.min(f.input.visual_cursor().saturating_sub(WIDEST));
-    (text.chars().skip(cut).collect(), cut)
+/// The columns a value has in a form of a width.
+fn room(width: usize) -> usize {
+    width.saturating_sub(VALUE + 1)
 }
 
-fn field(f: &FieldState, here: bool, width: usize) -> Line<'static> {
+/// The column of the cursor in a form of a width, where the field is one to be typed in.
+pub(super) fn cursor(f: &FieldState, width: usize) -> Option<usize> {
+    let typed = !matches!(f.spec.kind, Kind::Choice(_));
+    typed.then(|| VALUE + style::window(&f.input, room(width)).1)
+}
+
+/// A line of a form: its mark, its name, its value and what is wrong with it, cut where the line ends.
+pub(super) fn field(f: &FieldState, here: bool, width: usize) -> Line<'static> {
     let mark = if here { ">" } else { " " };
     let name = Span::styled(
         format!("{mark} {:<w$}", f.spec.name, w = VALUE - 2),
         if here { style::strong() } else { Style::new() },
     );
-    let (value, _) = shown_value(f);
+    let error = f.error.as_deref().map(clean);
     let value = match f.spec.kind {
-        Kind::Choice(_) if here && !f.fixed => format!("< {value} >"),
-        _ => value,
+        Kind::Choice(_) if here && !f.fixed => format!("< {} >", f.value()),
+        // The one being typed has the whole line: what is wrong with it stands below as well.
+        _ if here => style::window(&f.input, room(width)).0,
+        _ if error.is_some() => style::shortened(&clean(f.value()), WIDEST),
+        _ => style::shortened(&clean(f.value()), room(width)),
     };
-    // The value keeps its room; what is wrong with it stands behind, cut where the line ends.
-    let error = f
-        .error
-        .as_deref()
-        .map(|e| format!("  {}", clean(e)))
-        .unwrap_or_default();
-    let error = style::shortened(
-        &error,
-        width.saturating_sub(VALUE + value.chars().count() + 1),
-    );
+    let left = room(width).saturating_sub(Span::raw(&value).width() + 2);
+    let error = match error {
+        Some(e) if left > 8 => format!("  {}", style::shortened(&e, left)),
+        _ => String::new(),
+    };
     let value_style = match here {
         true if f.whole => style::chosen(),
         true => style::strong(),
@@ -174,31 +169,48 @@ fn field(f: &FieldState, here: bool, width: usize) -> Line<'static> {
     ])
 }
 
+/// A text broken at a blank so that its first part fits, and the rest if it does not fit whole.
+fn broken(text: &str, columns: usize) -> (String, Option<String>) {
+    if Span::raw(text).width() <= columns {
+        return (text.into(), None);
+    }
+    let mut first = String::new();
+    for word in text.split(' ') {
+        if Span::raw(first.as_str()).width() + 1 + Span::raw(word).width() > columns {
+            break;
+        }
+        if !first.is_empty() {
+            first.push(' ');
+        }
+        first.push_str(word);
+    }
+    let rest = text[first.len()..].trim_start().to_string();
+    (first, Some(rest))
+}
+
 /// Help, what is wrong, what was said, the keys.
 fn foot(frame: &mut Frame, area: Rect, form: &Form, message: &Message, fine: bool, hints: &str) {
     let glyph = if fine { "─" } else { "-" };
     let width = usize::from(area.width);
     let current = form.current();
-    let help = current.map_or(String::new(), |f| format!(" {}", f.spec.help));
-    let wrong = match (
-        message.text.is_empty(),
-        current.and_then(|f| f.error.as_deref()),
-    ) {
-        (false, _) => Line::styled(
-            format!(" {}", clean(&message.text)),
-            if message.refusal {
-                style::strong()
-            } else {
-                Style::new()
-            },
-        ),
-        (true, Some(e)) => Line::styled(format!(" {}", clean(e)), style::strong()),
-        (true, None) => Line::default(),
+    let help = current.map_or("", |f| f.spec.help);
+    let error = current.and_then(|f| f.error.as_deref());
+    let (said, weight) = match (message.text.is_empty(), error) {
+        (false, _) if message.refusal => (clean(&message.text), style::strong()),
+        (false, _) => (clean(&message.text), Style::new()),
+        (true, Some(e)) => (clean(e), style::strong()),
+        (true, None) => (String::new(), Style::new()),
     };
+    // What is wrong matters more than the help, and takes its line too where it is long.
+    let (first, second) = match broken(&said, width.saturating_sub(2)) {
+        (first, Some(rest)) => (Line::styled(format!(" {first}"), weight), rest),
+        (_, None) => (Line::from(format!(" {help}")), said),
+    };
+    let second = style::shortened(&format!(" {second}"), width);
     let lines = vec![
         Line::styled(glyph.repeat(width), style::quiet()),
-        Line::from(help),
-        wrong,
+        first,
+        Line::styled(second, weight),
         Line::styled(format!(" {hints}"), style::quiet()),
     ];
     frame.render_widget(Paragraph::new(lines), area);

@@ -3,11 +3,13 @@
 use super::style;
 use crate::app::{Desk, Layer, LineFor, ReasonFor, Step, keys};
 use crate::assay::Reason;
+use crate::notebook::reading_in_words;
 use crate::units::clean;
 use ratatui::Frame;
 use ratatui::layout::{Position, Rect};
 use ratatui::text::Line;
 use ratatui::widgets::{Block, Clear, Paragraph};
+use tui_input::Input;
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let fine = app.look.fine;
@@ -24,12 +26,11 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
                 LineFor::Checker => format!("checked by whom? digest {}", app.saved.digest),
                 LineFor::Operator => format!("who is at the keyboard? now {}", clean(&app.who)),
             };
-            let lines = vec![
-                Line::from(input.value().to_string()),
-                Line::styled("Enter keeps it   Esc leaves it", style::quiet()),
-            ];
-            let inner = panel(frame, area, &title, lines, fine);
-            cursor(frame, inner, input.visual_cursor());
+            let below = vec![Line::styled(
+                "Enter keeps it   Esc leaves it",
+                style::quiet(),
+            )];
+            ask(frame, area, &title, input, below, fine);
         }
         Some(Layer::Help { top }) => help(frame, area, app, *top),
         Some(Layer::Close) => {
@@ -59,6 +60,23 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     }
 }
 
+/// A box with a line that is being typed, and what stands below it.
+pub(super) fn ask(
+    frame: &mut Frame,
+    area: Rect,
+    title: &str,
+    input: &Input,
+    below: Vec<Line>,
+    fine: bool,
+) {
+    // The border takes two columns on each side, and the cursor stands behind what is typed.
+    let (text, column) = style::window(input, usize::from(area.width).saturating_sub(4));
+    let mut lines = vec![Line::from(format!("{text} "))];
+    lines.extend(below);
+    let inner = panel(frame, area, title, lines, fine);
+    cursor(frame, inner, column);
+}
+
 /// Puts the cursor into the first line of a panel.
 pub(super) fn cursor(frame: &mut Frame, inner: Rect, column: usize) {
     let x = inner.x + (column as u16).min(inner.width.saturating_sub(1));
@@ -78,7 +96,7 @@ pub(super) fn panel(
         .map(Line::width)
         .max()
         .unwrap_or(0)
-        .max(title.chars().count() + 2);
+        .max(Line::from(title).width() + 2);
     let width = (longest as u16 + 4).clamp(40.min(area.width), area.width);
     let height = (lines.len() as u16 + 2).min(area.height);
     let x = area.x + (area.width - width) / 2;
@@ -94,7 +112,13 @@ pub(super) fn panel(
         width: inner.width.saturating_sub(2),
         ..inner
     };
-    frame.render_widget(Clear, place);
+    // A blank column on either side keeps what lies below from running into the border.
+    let margin = Rect {
+        x: place.x.saturating_sub(1).max(area.x),
+        width: (place.width + 2).min(area.width),
+        ..place
+    };
+    frame.render_widget(Clear, margin.intersection(area));
     frame.render_widget(block, place);
     frame.render_widget(Paragraph::new(lines), inner);
     inner
@@ -115,8 +139,12 @@ const ASCII: ratatui::symbols::border::Set = ratatui::symbols::border::Set {
 fn reasons(frame: &mut Frame, area: Rect, app: &Desk, what: ReasonFor) {
     let t = app.titration();
     let (tube, verb) = match what {
-        ReasonFor::Suspect(tube, _) => (tube, "suspect"),
-        ReasonFor::Lost(tube) => (tube, "lost"),
+        ReasonFor::Suspect(tube, id) => {
+            let kept = t.kept(tube).iter().find(|k| k.id == id);
+            let reading = kept.map_or(String::new(), |k| reading_in_words(&k.reading));
+            (tube, format!("suspect: {reading}, "))
+        }
+        ReasonFor::Lost(tube) => (tube, "lost: ".into()),
     };
     let name = t.tube(tube).map_or(String::new(), |x| clean(&t.name(x)));
     let mut lines: Vec<Line> = Reason::MENU
@@ -124,46 +152,28 @@ fn reasons(frame: &mut Frame, area: Rect, app: &Desk, what: ReasonFor) {
         .map(|(d, r)| Line::from(format!("{d}  {r}")))
         .collect();
     lines.push(Line::styled("0  leave it", style::quiet()));
-    panel(
-        frame,
-        area,
-        &format!("{verb}: {name}"),
-        lines,
-        app.look.fine,
-    );
+    panel(frame, area, &format!("{verb}{name}"), lines, app.look.fine);
 }
 
 fn help(frame: &mut Frame, area: Rect, app: &Desk, top: u16) {
+    let lines = match app.step {
+        Step::Result => keys::result_help(area.width),
+        _ => keys::bench_help(area.width),
+    };
+    scrolled(frame, area, &lines, top, app.look.fine);
+}
+
+/// The keys, from a line down.
+pub(super) fn scrolled(frame: &mut Frame, area: Rect, lines: &[String], top: u16, fine: bool) {
     let room = usize::from(area.height).saturating_sub(2);
-    let mut lines = Vec::new();
-    if app.step == Step::Result {
-        lines.extend(
-            keys::RESULT
-                .iter()
-                .map(|b| Line::from(format!("{:<7} {}", b.shown, b.help))),
-        );
-        lines.push(Line::from("PgUp    back to the tubes"));
-    } else {
-        lines.push(Line::from(
-            "digits and the decimal mark type a reading; its unit stands before it",
-        ));
-        lines.extend(
-            keys::BENCH
-                .iter()
-                .map(|b| Line::from(format!("{:<7} {}", b.shown, b.help))),
-        );
-    }
-    let over = lines.len().saturating_sub(room);
-    let lines: Vec<Line> = lines
-        .into_iter()
-        .skip(usize::from(top).min(over))
-        .take(room)
-        .collect();
-    panel(
-        frame,
-        area,
-        "keys   (Up and Down move; any other key closes)",
-        lines,
-        app.look.fine,
-    );
+    let (title, skip) = match keys::help_over(lines.len(), area.height) {
+        0 => ("keys   (any other key closes)", 0),
+        over => (
+            "keys   (Up and Down move; any other key closes)",
+            over.min(top),
+        ),
+    };
+    let shown = lines.iter().skip(skip.into()).take(room);
+    let lines = shown.map(|l| Line::from(l.as_str())).collect();
+    panel(frame, area, title, lines, fine);
 }

@@ -9,27 +9,15 @@ use ratatui::layout::{Position, Rect};
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
+/// Columns from which on everything is said in full.
+const WIDE: usize = 78;
+
 /// Bars that stand as long as what they say holds.
 pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
-    let mut bars = Vec::new();
-    if let (Some(why), false) = (&app.saved.failed, app.is_saved()) {
-        bars.push(Line::styled(
-            format!(" NOT SAVED   {}   trying again ", clean(why)),
-            style::alarm(),
-        ));
-    }
-    if let Access::ReadOnly(why) = &app.access {
-        bars.push(Line::styled(
-            format!(" READ ONLY   {} ", clean(why)),
-            style::alarm(),
-        ));
-    }
-    bars.extend(
-        app.notices
-            .iter()
-            .map(|n| Line::styled(format!(" {} ", clean(n)), style::alarm())),
-    );
-    bars
+    app.standing()
+        .iter()
+        .map(|said| Line::styled(format!(" {} ", clean(said)), style::alarm()))
+        .collect()
 }
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
@@ -52,7 +40,10 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let said = Span::styled(
         format!(
             " {}",
-            hint.map_or_else(|| clean(&app.message.text), String::from)
+            style::shortened(
+                &hint.map_or_else(|| clean(&app.message.text), String::from),
+                width.saturating_sub(3)
+            )
         ),
         if app.message.refusal {
             style::strong()
@@ -69,7 +60,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
         Line::from(vec![mark, said]),
         next(app, width),
         Line::from(line),
-        hints(),
+        hints(width),
     ];
     frame.render_widget(Paragraph::new(lines), area);
     if app.layers.is_empty() {
@@ -90,10 +81,10 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
         .level
         .and_then(|l| t.level(l))
         .map_or(String::new(), |l| format!("{}   ", clean(&l.added.text)));
-    let done = if t.next_unread().is_none() {
-        "   every tube has a reading or is lost"
-    } else {
-        ""
+    let done = match t.next_unread() {
+        None if width >= WIDE => "   every tube has a reading or is lost",
+        None => "   none left",
+        Some(_) => "",
     };
     let again = if app.bench.again { "RECOUNT of " } else { "" };
     let text = format!(
@@ -143,12 +134,15 @@ fn saved(app: &Desk) -> String {
     }
 }
 
-/// The keys of the reading loop.
-fn hints() -> Line<'static> {
-    let words: Vec<String> = keys::BENCH
+/// The keys of the reading loop, as far as there is room; the last of them, which shows all keys, always.
+fn hints(width: usize) -> Line<'static> {
+    let mut words: Vec<String> = keys::BENCH
         .iter()
         .filter(|b| !b.hint.is_empty())
         .map(|b| format!("{} {}", b.shown, b.hint))
         .collect();
+    while words.len() > 1 && words.join("   ").len() >= width {
+        words.remove(words.len() - 2);
+    }
     Line::styled(format!(" {}", words.join("   ")), style::quiet())
 }

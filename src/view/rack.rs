@@ -197,6 +197,14 @@ impl Table {
         }
         let over = self.rows.len().saturating_sub(room);
         let top = self.here.saturating_sub(room / 2).min(over);
+        if over > 0 {
+            let place = format!("{}-{} of {}", top + 1, top + room, self.rows.len());
+            let gap = usize::from(area.width).saturating_sub(self.header.width());
+            if gap > place.len() {
+                let place = Span::raw(format!("{place:>gap$}"));
+                self.header.push_span(place);
+            }
+        }
         let mut lines = vec![self.header];
         lines.extend(self.rows.into_iter().skip(top).take(room));
         frame.render_widget(Paragraph::new(lines), area);

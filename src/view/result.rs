@@ -33,7 +33,10 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     style::rule(frame, rule, app.look.fine);
     frame.render_widget(Paragraph::new(bars), warnings);
     frame.render_widget(
-        Paragraph::new(Line::from(format!(" {}", clean(&app.message.text)))),
+        Paragraph::new(style::shortened(
+            &format!(" {}", clean(&app.message.text)),
+            usize::from(said.width),
+        )),
         said,
     );
     let words: Vec<String> = keys::RESULT
@@ -41,7 +44,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
         .filter(|b| !b.hint.is_empty())
         .map(|b| format!("{} {}", b.shown, b.hint))
         .collect();
-    let place = format!("{} of {all} ", (app.top + room).min(all));
+    let place = format!(" {} of {all} ", (app.top + room).min(all));
     let left = format!(" {}  PgUp tubes", words.join("  "));
     let gap = usize::from(hints.width).saturating_sub(left.chars().count() + place.chars().count());
     let line = Line::from(vec![

@@ -1,6 +1,6 @@
 //! The start screen.
 
-use super::{layers, style};
+use super::{form, layers, style};
 use crate::app::{Ask, Start, keys};
 use crate::report::CAUTION;
 use crate::units::clean;
@@ -9,6 +9,9 @@ use ratatui::layout::{Constraint, Layout, Rect};
 use ratatui::style::Style;
 use ratatui::text::{Line, Span};
 use ratatui::widgets::{Paragraph, Wrap};
+
+/// Columns of the state of a titration used lately.
+const STATE: usize = 38;
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, start: &Start, fine: bool) {
     let [title, list, keys_area, said, rule, caution] = Layout::vertical([
@@ -54,12 +57,11 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, start: &Start, fine: bool) {
     match &start.ask {
         None => {}
         Some(Ask::Path(input)) => {
-            let lines = vec![
-                Line::from(input.value().to_string()),
-                Line::styled("Enter opens it   Esc leaves it", style::quiet()),
-            ];
-            let inner = layers::panel(frame, area, "the path of a titration", lines, fine);
-            layers::cursor(frame, inner, input.visual_cursor());
+            let below = vec![Line::styled(
+                "Enter opens it   Esc leaves it",
+                style::quiet(),
+            )];
+            layers::ask(frame, area, "the path of a titration", input, below, fine);
         }
         Some(Ask::Demo) => {
             let lines = vec![
@@ -70,12 +72,9 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, start: &Start, fine: bool) {
             layers::panel(frame, area, "a demo", lines, fine);
         }
         Some(Ask::Lab(form)) => lab(frame, area, form, fine),
-        Some(Ask::Help) => {
-            let lines: Vec<Line> = keys::START
-                .iter()
-                .map(|b| Line::from(format!("{:<6} {}", b.shown, b.help)))
-                .collect();
-            layers::panel(frame, area, "keys   (any key closes)", lines, fine);
+        Some(Ask::Help { top }) => {
+            let lines = keys::start_help(area.width);
+            layers::scrolled(frame, area, &lines, *top, fine);
         }
     }
 }
@@ -93,23 +92,32 @@ fn recents(start: &Start, width: usize) -> Vec<Line<'static>> {
             ));
         }
         Some(list) => {
+            let room = width.saturating_sub(STATE + 6);
             for (i, r) in list.iter().enumerate() {
                 let here = i == start.at;
-                let title = style::shortened(&clean(&r.title), width.saturating_sub(44));
+                let title = style::shortened(&clean(&r.title), room);
                 let text = format!(
-                    "{}{}  {title:<w$}  {}",
+                    "{}{}  {title:<room$}  {}",
                     if here { ">" } else { " " },
                     i + 1,
-                    clean(&r.state),
-                    w = width.saturating_sub(44)
+                    style::shortened(&clean(&r.state), STATE),
                 );
                 lines.push(Line::styled(
                     text,
                     if here { style::strong() } else { Style::new() },
                 ));
-                if here {
+                if here && clean(&r.state).chars().count() > STATE {
+                    // What is wrong with a file stands at the end of what is said, behind its path.
+                    lines.push(Line::from(format!(
+                        "    {}",
+                        style::ending(&clean(&r.state), width.saturating_sub(5))
+                    )));
+                } else if here {
                     lines.push(Line::styled(
-                        format!("     {}", clean(&r.path)),
+                        format!(
+                            "    {}",
+                            style::ending(&clean(&r.path), width.saturating_sub(5))
+                        ),
                         style::quiet(),
                     ));
                 }
@@ -120,42 +128,25 @@ fn recents(start: &Start, width: usize) -> Vec<Line<'static>> {
 }
 
 fn lab(frame: &mut Frame, area: Rect, form: &crate::app::Form, fine: bool) {
+    let width = usize::from(area.width).saturating_sub(4);
     let mut lines: Vec<Line> = form
         .fields
         .iter()
         .enumerate()
-        .map(|(i, f)| {
-            let mark = if i == form.at { ">" } else { " " };
-            let error = f
-                .error
-                .as_deref()
-                .map(|e| format!("  {}", clean(e)))
-                .unwrap_or_default();
-            Line::styled(
-                format!("{mark} {:<18} {}{error}", f.spec.name, clean(f.value())),
-                if i == form.at {
-                    style::strong()
-                } else {
-                    Style::new()
-                },
-            )
-        })
+        .map(|(i, f)| form::field(f, i == form.at, width))
         .collect();
+    let current = form.current();
     lines.push(Line::default());
-    lines.push(Line::from(form.current().map_or("", |f| f.spec.help)));
+    lines.push(Line::from(current.map_or("", |f| f.spec.help)));
+    let wrong = current.and_then(|f| f.error.as_deref()).unwrap_or_default();
+    lines.push(Line::styled(clean(wrong), style::strong()));
     lines.push(Line::styled(
         "Enter next, and keeps them from the last   Esc leaves them as they were",
         style::quiet(),
     ));
     let inner = layers::panel(frame, area, "the lab's settings", lines, fine);
-    if let Some(f) = form.current() {
-        layers::cursor(
-            frame,
-            Rect {
-                y: inner.y + form.at as u16,
-                ..inner
-            },
-            21 + f.input.visual_cursor(),
-        );
+    if let Some(column) = current.and_then(|f| form::cursor(f, width)) {
+        let y = inner.y + form.at as u16;
+        layers::cursor(frame, Rect { y, ..inner }, column);
     }
 }

@@ -1,10 +1,11 @@
 //! The lab's settings in their form.
 
 use super::super::fields::{self, GLYPHS, MARKS};
-use super::super::form::Form;
+use super::super::form::{Did, Form};
+use super::super::keys::Key;
 use super::Errors;
 use super::read::{Reader, prior, share};
-use super::write::cv_fields;
+use super::write::{cv_fields, follow_mark};
 use crate::assay::{Lab, PlotGlyphs};
 use crate::units::Mark;
 
@@ -24,13 +25,26 @@ pub(in crate::app) fn lab_form(lab: &Lab) -> Form {
     })
 }
 
-/// The lab's settings as typed.
-pub(in crate::app) fn read_lab(form: &Form) -> Result<Lab, Errors> {
-    let mark = if form.value("decimal mark") == MARKS[1] {
+fn mark_of(form: &Form) -> Mark {
+    if form.value("decimal mark") == MARKS[1] {
         Mark::Comma
     } else {
         Mark::Point
-    };
+    }
+}
+
+/// Takes a key in the form of the lab's settings; its numbers follow the decimal mark.
+pub(in crate::app) fn lab_key(form: &mut Form, key: Key) -> Did {
+    let before = mark_of(form);
+    let did = form.key(key);
+    let mark = mark_of(form);
+    follow_mark(form, before, mark);
+    did
+}
+
+/// The lab's settings as typed.
+pub(in crate::app) fn read_lab(form: &Form) -> Result<Lab, Errors> {
+    let mark = mark_of(form);
     let mut r = Reader::new(form, mark);
     let cv_prior = prior(&mut r);
     let dilution_error = r

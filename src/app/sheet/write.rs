@@ -1,18 +1,54 @@
 //! A protocol as it is typed.
 
 use super::super::fields::{BLANKS, MARKS, READING, SITES, STICKS};
+use super::super::form::Form;
 use crate::assay::{
     BlankKind, CvPrior, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled,
 };
 use crate::units::{Fraction, Mark, Typed, short};
+use tui_input::Input;
 
-pub(super) fn percent(v: f64, mark: Mark) -> String {
-    format!("{} %", number(100.0 * v, mark))
+/// The shortest text of 6 to 17 digits that is read as what was written, if one is.
+fn written(v: f64, reads: impl Fn(&str) -> bool) -> Option<String> {
+    (6..=17)
+        .map(|digits| short(v, digits))
+        .find(|text| reads(text))
 }
 
-/// A number as it would be typed with a decimal mark.
 fn number(v: f64, mark: Mark) -> String {
-    short(v, 6).replace('.', &mark.char().to_string())
+    let text = written(v, |text| text.parse() == Ok(v)).unwrap_or_else(|| v.to_string());
+    text.replace('.', &mark.char().to_string())
+}
+
+/// A share in percent; as a bare number where no percentage is read as the same to the last bit.
+pub(super) fn percent(v: f64, mark: Mark) -> String {
+    let reads = |text: &str| {
+        Typed::<Fraction>::parse(&format!("{text} %"), Mark::Point)
+            .is_ok_and(|read| read.base() == v)
+    };
+    match written(100.0 * v, reads) {
+        Some(text) => format!("{} %", text.replace('.', &mark.char().to_string())),
+        None => number(v, mark),
+    }
+}
+
+/// Numbers of a form in another decimal mark than the one they were written in.
+pub(super) fn follow_mark(form: &mut Form, from: Mark, to: Mark) {
+    const NUMBERS: [&str; 5] = [
+        "tube CV",
+        "its factor",
+        "dilution error",
+        "confidence",
+        "try a printout",
+    ];
+    if from == to {
+        return;
+    }
+    for f in &mut form.fields {
+        if NUMBERS.contains(&f.spec.name) && f.value().contains(from.char()) {
+            f.input = Input::new(f.value().replace(from.char(), &to.char().to_string()));
+        }
+    }
 }
 
 pub(super) fn receptor_text(amount: &ReceptorAmount) -> String {
