@@ -60,7 +60,7 @@ fn is_false(b: &bool) -> bool {
 #[non_exhaustive]
 pub enum ReadingError {
     /// Minutes of zero, negative or not finite.
-    #[error("{} minutes: allowed is more than 0 and at most {most}", short(*minutes, 6))]
+    #[error("{} minutes: allowed is more than zero and at most {most}", short(*minutes, 6))]
     Minutes {
         /// What was given.
         minutes: f64,
