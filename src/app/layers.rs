@@ -4,7 +4,7 @@ use super::form::edit;
 use super::keys::{self, Key};
 use super::{Desk, Effect, Step};
 use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
-use crate::notebook::What;
+use crate::notebook::{What, reading_in_words};
 use tui_input::Input;
 
 /// What a reason is chosen for.
@@ -190,7 +190,20 @@ impl Desk {
 
     fn reasoned(&mut self, what: ReasonFor, why: Suspicion, now: Stamp) -> Vec<Effect> {
         match what {
-            ReasonFor::Suspect(_, reading) => self.recorded(What::Flagged { reading, why }, now),
+            ReasonFor::Suspect(tube, reading) => {
+                let kept = self.titration().kept(tube).iter();
+                let number = kept
+                    .filter(|k| k.id == reading)
+                    .map(|k| reading_in_words(&k.reading))
+                    .next()
+                    .unwrap_or_default();
+                let said = format!("suspect, {why}: {number}, {}", self.tube_name(tube));
+                let effects = self.recorded(What::Flagged { reading, why }, now);
+                if !self.message.refusal {
+                    self.say(said);
+                }
+                effects
+            }
             ReasonFor::Lost(tube) => {
                 let effects = self.recorded(What::Lost { tube, why }, now);
                 if self.titration().lost.contains_key(&tube) {

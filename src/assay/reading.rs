@@ -69,7 +69,7 @@ fn found(v: f64) -> String {
 #[non_exhaustive]
 pub enum ReadingError {
     /// Minutes of zero, negative or not finite.
-    #[error("{} minutes: allowed is more than 0 and at most {most}", found(*minutes))]
+    #[error("{} minutes: allowed is more than zero and at most {most}", found(*minutes))]
     Minutes {
         /// What was given.
         minutes: f64,

@@ -186,7 +186,7 @@ fn rules() -> Vec<Rule> {
             "no minutes",
             with_minutes(),
             "267\n0\n",
-            "0 minutes: allowed is more than 0",
+            "0 minutes: allowed is more than zero",
         ),
         refused(
             "minutes beyond sense",
@@ -339,7 +339,7 @@ fn rules() -> Vec<Rule> {
             "a flag",
             half(),
             "1521\n*2",
-            "flagged filter torn: 1 521 counts, vial 21",
+            "suspect, filter torn: 1 521 counts, vial 21, 2 nM, total a",
             2,
         ),
         taken("a flag off", half(), "1521\n*2*", "flag off   vial 21", 3),
@@ -347,7 +347,7 @@ fn rules() -> Vec<Rule> {
             "a reason in words",
             half(),
             "1521\n*7tip\n",
-            "flagged other",
+            "suspect, other",
             2,
         ),
         taken(
