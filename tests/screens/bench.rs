@@ -316,7 +316,7 @@ fn rules() -> Vec<Rule> {
             "a minus takes back and reads back",
             half(),
             "1521\n-",
-            "taken back   1 521 counts, vial 21, 2 nM, total a   (b brings it back)",
+            "taken back   1 521 counts, vial 21, 2 nM, total a   b: undo",
             2,
         ),
         taken(
