@@ -119,7 +119,7 @@ pub(super) fn lay(
 
 fn said(report: SaveReport, digests: &Digests) -> Event {
     match report {
-        SaveReport::Failed { rev, error } => Event::SaveFailed(rev, error.to_string()),
+        SaveReport::Failed { rev, error } => Event::SaveFailed(rev, error.in_short()),
         SaveReport::Saved { rev } => {
             let mut known = digests.lock().unwrap_or_else(PoisonError::into_inner);
             known.retain(|(r, _)| *r >= rev);

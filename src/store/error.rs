@@ -109,6 +109,15 @@ impl StoreError {
         }
     }
 
+    /// What happened, without the file it happened to: for a place that shows the file already.
+    pub fn in_short(&self) -> String {
+        let whole = self.to_string();
+        match whole.split_once(": ") {
+            Some((_, rest)) => rest.to_string(),
+            None => whole,
+        }
+    }
+
     /// Whether trying the same again may help.
     pub fn may_pass(&self) -> bool {
         matches!(

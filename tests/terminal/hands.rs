@@ -192,7 +192,7 @@ fn notes_lost_tubes_checks_and_closing_are_recorded_and_shown() {
         !s.has("close the titration?") && s.has("closed") && s.says_saved()
     });
     bench.keypad("69\r");
-    bench.wait("the refusal", |s| s.has("was closed by tester"));
+    bench.wait("the refusal", |s| s.has("the titration was closed at"));
     bench.keypad("-");
     let text = running(&page(&home));
     assert!(
@@ -206,7 +206,7 @@ fn notes_lost_tubes_checks_and_closing_are_recorded_and_shown() {
     bench.keys("c");
     bench.wait_text("open it again?");
     bench.keys("y");
-    bench.wait("open again", |s| s.has("open again") && s.says_saved());
+    bench.wait("open again", |s| s.has("reopened") && s.says_saved());
     bench.keypad("69\r");
     bench.wait_saved(7, 69);
     leave(bench);
