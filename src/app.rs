@@ -24,7 +24,11 @@ use crate::analysis::Analysis;
 use crate::assay::{Lab, Stamp, Titration};
 use crate::notebook::Entry;
 use keys::Key;
+use std::collections::BTreeMap;
 use std::sync::Arc;
+
+/// What is typed in the forms of a titration that is not open yet, by the name of its field.
+pub type Typed = BTreeMap<String, String>;
 
 /// Something that happened.
 #[derive(Debug, Clone)]
@@ -49,6 +53,8 @@ pub enum Event {
     Done(String),
     /// What is known of the titrations used lately.
     Recents(Vec<Recent>),
+    /// A titration was being typed when the terminal went away.
+    KeptDraft(Typed),
     /// The terminal is gone or the program is asked to end.
     HangUp,
 }
@@ -77,6 +83,10 @@ pub enum Effect {
     PutAway,
     /// Look up the titrations used lately.
     Survey,
+    /// Keep what is typed of a titration that is not open yet, for the next start.
+    KeepDraft(Typed),
+    /// Forget it: the titration is open, or given up.
+    DropDraft,
     /// Keep the lab's settings.
     KeepLab(Box<Lab>),
     /// Write a page beside the titration.
@@ -265,7 +275,13 @@ impl App {
     /// Takes in what happened and says what is to be done.
     pub fn update(&mut self, event: Event, now: Stamp) -> Vec<Effect> {
         match event {
-            Event::HangUp => return vec![Effect::Quit],
+            Event::HangUp => {
+                let kept = match &self.scene {
+                    Scene::Draft(draft) => draft.typed().map(Effect::KeepDraft),
+                    _ => None,
+                };
+                return kept.into_iter().chain([Effect::Quit]).collect();
+            }
             Event::Resize(columns, rows) => {
                 (self.look.columns, self.look.rows) = (columns, rows);
                 if let Scene::Desk(desk) = &mut self.scene {
@@ -275,8 +291,10 @@ impl App {
             }
             Event::Key(Key::Ctrl('z')) => return vec![Effect::Suspend],
             Event::Opened(laid) => {
-                let (desk, effects) = Desk::lay(*laid, self.who.clone(), self.look);
+                let drafted = matches!(self.scene, Scene::Draft(_));
+                let (desk, mut effects) = Desk::lay(*laid, self.who.clone(), self.look);
                 self.scene = Scene::Desk(Box::new(desk));
+                effects.extend(drafted.then_some(Effect::DropDraft));
                 return effects;
             }
             _ => {}
@@ -307,11 +325,15 @@ impl App {
         let leaving = effects.iter().any(|e| matches!(e, Effect::Quit));
         match &mut self.scene {
             Scene::Start(start) if start.wants_draft => {
-                self.scene = Scene::Draft(Box::new(Draft::fresh(&self.lab)));
+                let draft = match start.kept.take() {
+                    Some(typed) => Draft::resumed(&self.lab, &typed),
+                    None => Draft::fresh(&self.lab),
+                };
+                self.scene = Scene::Draft(Box::new(draft));
             }
             Scene::Draft(draft) if draft.left => {
                 self.scene = Scene::Start(Box::default());
-                effects.push(Effect::Survey);
+                effects.extend([Effect::DropDraft, Effect::Survey]);
             }
             Scene::Desk(_) if leaving && self.from_start => {
                 effects.retain(|e| !matches!(e, Effect::Quit));

@@ -304,6 +304,8 @@ impl Sitting {
                     }
                 }
                 Effect::Survey => files::survey(self.send.clone())?,
+                Effect::KeepDraft(typed) => files::keep_draft(&typed),
+                Effect::DropDraft => files::drop_draft(),
                 Effect::KeepLab(lab) => {
                     let said = files::keep_lab(&lab);
                     self.take_in(said.map_or_else(Event::Refused, Event::Done))?;

@@ -13,7 +13,7 @@ mod saver;
 
 pub use error::StoreError;
 pub use format::Text;
-pub use lists::{keep_lab, lab, recents, remember};
+pub use lists::{draft, drop_draft, keep_draft, keep_lab, lab, recents, remember};
 pub use lock::Holder;
 pub use places::{Places, places};
 pub use save::{Seen, Target};

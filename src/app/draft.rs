@@ -2,7 +2,7 @@
 
 use super::form::{Did, Form, edit};
 use super::keys::Key;
-use super::{Effect, Event, Forms, Message, Step};
+use super::{Effect, Event, Forms, Message, Step, Typed};
 use crate::assay::Lab;
 use tui_input::Input;
 
@@ -41,6 +41,20 @@ impl Draft {
             untouched: true,
             left: false,
         }
+    }
+
+    /// Forms as they were typed before the terminal went away.
+    pub(super) fn resumed(lab: &Lab, typed: &Typed) -> Draft {
+        let mut draft = Draft::fresh(lab);
+        draft.forms.fill(typed);
+        draft.untouched = false;
+        draft.message = Message::said("here is what was typed before the terminal went away");
+        draft
+    }
+
+    /// What is typed, to be kept when the terminal goes away; nothing where nobody typed.
+    pub(super) fn typed(&self) -> Option<Typed> {
+        (!self.untouched).then(|| self.forms.typed())
     }
 
     /// The form in sight.

@@ -6,10 +6,10 @@ mod write;
 
 pub(super) use lab::{lab_form, lab_key, read_lab};
 
-use super::Step;
 use super::fields::{self, BLANKS, LAID, MADE, MARKS, READING, SITES, STICKS, UNITS};
 use super::form::{Did, Form};
 use super::keys::Key;
+use super::{Step, Typed};
 use crate::assay::{Dilution, Lab, Ladder, LadderError, Level, Levels, Protocol, Sheet};
 use crate::units::Mark;
 use read::{Reader, exceptions, list, read_protocol};
@@ -130,6 +130,38 @@ impl Forms {
         for form in [&mut self.protocol, &mut self.ladder, &mut self.counter] {
             form.fix();
         }
+    }
+
+    /// Every field that holds something, by its form and name.
+    pub(super) fn typed(&self) -> Typed {
+        let forms = [
+            ("protocol", &self.protocol),
+            ("ladder", &self.ladder),
+            ("counter", &self.counter),
+        ];
+        let fields = forms.into_iter().flat_map(|(form, f)| {
+            f.fields
+                .iter()
+                .map(move |x| (format!("{form}/{}", x.spec.name), x.value().to_string()))
+        });
+        fields.collect()
+    }
+
+    /// Puts back what was typed; names that no form has are passed over.
+    pub(super) fn fill(&mut self, typed: &Typed) {
+        let forms = [
+            ("protocol", &mut self.protocol),
+            ("ladder", &mut self.ladder),
+            ("counter", &mut self.counter),
+        ];
+        for (form, f) in forms {
+            for x in &mut f.fields {
+                if let Some(value) = typed.get(&format!("{form}/{}", x.spec.name)) {
+                    x.input = tui_input::Input::new(crate::units::clean(value));
+                }
+            }
+        }
+        self.check(None);
     }
 
     /// The decimal mark chosen.

@@ -3,7 +3,7 @@
 use super::form::{Did, Form, edit};
 use super::keys::{self, Key, StartCommand};
 use super::sheet::{lab_form, lab_key, read_lab};
-use super::{Effect, Event, Look, Message};
+use super::{Effect, Event, Look, Message, Typed};
 use crate::assay::Lab;
 use tui_input::Input;
 
@@ -45,6 +45,8 @@ pub struct Start {
     pub ask: Option<Ask>,
     /// The last thing said.
     pub message: Message,
+    /// What was being typed when the terminal went away.
+    pub kept: Option<Typed>,
     /// A new titration is wanted.
     pub(super) wants_draft: bool,
 }
@@ -64,6 +66,13 @@ impl Start {
             Event::Recents(list) => {
                 self.at = self.at.min(list.len().saturating_sub(1));
                 self.recents = Some(list);
+                Vec::new()
+            }
+            Event::KeptDraft(typed) => {
+                self.kept = Some(typed);
+                self.message = Message::said(
+                    "a titration was being typed when the terminal went away; n goes on with it",
+                );
                 Vec::new()
             }
             Event::Refused(what) => {

@@ -1,7 +1,7 @@
 //! The solver: damped scoring steps on the rows, accepted on the true cost.
 //!
-//! Moré's trust region (J. J. Moré 1978, "The Levenberg-Marquardt algorithm: implementation and theory",
-//! Lecture Notes in Mathematics 630:105; from memory): columns scaled by the largest norm met, the step found from a
+//! Moré's trust region (J. J. Moré 1978, "The Levenberg-Marquardt algorithm: implementation and theory", in G. A. Watson (ed.),
+//! Numerical Analysis, Springer, p. 105; from memory): columns scaled by the largest norm met, the step found from a
 //! column-pivoted QR, the damping from the stacked system. With expected information in place of `J'J`
 //! the steps are Fisher scoring. Runs as a solver of the `argmin` executor.
 

@@ -2,7 +2,7 @@
 
 use super::{Incoming, ShellError, now};
 use crate::analysis::analyse;
-use crate::app::{Access, Event, Laid, Recent, fit_line};
+use crate::app::{Access, Event, Laid, Recent, Typed, fit_line};
 use crate::assay::{Lab, Titration};
 use crate::notebook::{Entry, Notebook};
 use crate::store::{self, Ended, Holder, SaveReport, Saver, StoreError, Text};
@@ -212,7 +212,11 @@ pub(super) fn survey(send: Sender<Incoming>) -> io::Result<()> {
     thread::Builder::new()
         .name("survey".into())
         .spawn(move || {
-            let files = store::places().map_or(Vec::new(), |p| store::recents(&p));
+            let places = store::places();
+            if let Some(typed) = places.as_ref().and_then(store::draft) {
+                drop(send.send(Incoming::Event(Event::KeptDraft(typed))));
+            }
+            let files = places.map_or(Vec::new(), |p| store::recents(&p));
             let recents = files
                 .iter()
                 .filter(|f| f.exists())
@@ -240,6 +244,20 @@ fn recent(path: &Path) -> Recent {
             title: "cannot be read".into(),
             state: e.to_string(),
         },
+    }
+}
+
+/// Keeps what is being typed of a new titration. The terminal has gone: there is nobody to tell if it fails.
+pub(super) fn keep_draft(typed: &Typed) {
+    if let Some(places) = store::places() {
+        drop(store::keep_draft(&places, typed));
+    }
+}
+
+/// Forgets what was being typed of a new titration.
+pub(super) fn drop_draft() {
+    if let Some(places) = store::places() {
+        store::drop_draft(&places);
     }
 }
 

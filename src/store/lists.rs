@@ -4,6 +4,7 @@ use super::error::StoreError;
 use super::places::Places;
 use crate::assay::Lab;
 use serde::{Deserialize, Serialize};
+use std::collections::BTreeMap;
 use std::fs;
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -72,6 +73,31 @@ pub fn lab(places: &Places) -> Result<Lab, StoreError> {
 /// They cannot be written.
 pub fn keep_lab(places: &Places, lab: &Lab) -> Result<(), StoreError> {
     write(&lab_file(places), lab)
+}
+
+fn draft_file(places: &Places) -> PathBuf {
+    places.state.join("draft.ron")
+}
+
+/// What was being typed of a new titration when the terminal went away, by the name of its field.
+pub fn draft(places: &Places) -> Option<BTreeMap<String, String>> {
+    read(&draft_file(places))
+        .ok()
+        .and_then(|text| ron::from_str(&text).ok())
+}
+
+/// Keeps what is being typed of a new titration.
+///
+/// # Errors
+/// It cannot be written.
+pub fn keep_draft(places: &Places, typed: &BTreeMap<String, String>) -> Result<(), StoreError> {
+    write(&draft_file(places), typed)
+}
+
+/// Forgets what was being typed.
+pub fn drop_draft(places: &Places) {
+    // There may be none, which is as good.
+    let _ = fs::remove_file(draft_file(places));
 }
 
 fn read(path: &Path) -> io::Result<String> {

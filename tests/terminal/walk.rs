@@ -1,6 +1,6 @@
 //! The whole walk, by a person who has never seen the program: from the start screen to the page on paper.
 
-use super::form::{PAGE_DOWN, new_titration, wait_step};
+use super::form::{PAGE_DOWN, fill, new_titration, wait_step};
 use super::harness::{Home, one_at_a_time};
 use super::rack::{COUNTS, FILE, heavy, type_through};
 
@@ -135,6 +135,42 @@ fn a_titration_opened_next_knows_nothing_of_the_one_before() {
     bench.wait("both on the start screen", |s| {
         s.has_row(&["21 of 33"]) && s.has_row(&["1 of 33"])
     });
+    bench.keys("q");
+    assert!(bench.end().success());
+}
+
+#[test]
+fn what_was_being_typed_when_the_link_went_is_there_again() {
+    let _one = one_at_a_time();
+    let home = Home::new();
+    let mut bench = home.sit(&[]);
+    bench.wait_text("a new titration");
+    bench.keys("n");
+    wait_step(&bench, "protocol");
+    fill(&mut bench, "title", "Dropped link");
+    fill(&mut bench, "specific activity", "80 Ci/mmol");
+    bench.hang_up();
+    bench.end();
+
+    let mut bench = home.sit(&[]);
+    bench.wait_text("when the terminal went away");
+    bench.keys("n");
+    bench.wait("what was typed", |s| {
+        s.has_row(&["title", "Dropped link"]) && s.has_row(&["specific activity", "80 Ci/mmol"])
+    });
+    // Given up on purpose, it is gone.
+    bench.keys("\u{3}");
+    bench.wait_text("leave?");
+    bench.keys("y");
+    bench.wait_text("a new titration");
+    bench.keys("q");
+    assert!(bench.end().success());
+    let mut bench = home.sit(&[]);
+    bench.wait_text("no titration used lately");
+    bench.keys("n");
+    bench.wait("empty forms", |s| s.has_row(&["title", "needed"]));
+    bench.keys("\u{3}");
+    bench.wait_text("a new titration");
     bench.keys("q");
     assert!(bench.end().success());
 }
