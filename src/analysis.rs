@@ -1,7 +1,8 @@
 //! One call from a titration to all that is said of it.
 
 use crate::assay::{
-    Background, Measured, Observed, Suspicion, Titration, Tube, background, measured, observed,
+    Background, Measured, Observed, Sticks, Suspicion, Titration, Tube, background, measured,
+    observed,
 };
 use crate::fit::{Fit, Outcome, fit_rack};
 
@@ -16,6 +17,9 @@ pub struct TubeResult {
     pub observed: Option<Observed>,
     /// Bound and free, once a background is counted.
     pub measured: Option<Measured>,
+    /// Free label in nM: as measured, and once there is a fit, with what the fit knows of where nonspecific label
+    /// sticks. See [`free`].
+    pub free_nm: Option<f64>,
     /// Specific binding in nM, `bound - ns x free`, once there is a fit.
     pub specific_nm: Option<f64>,
     /// Why it is left out, if every reading is flagged.
@@ -47,6 +51,18 @@ impl Analysis {
     }
 }
 
+/// Free label of a tube in nM.
+///
+/// Label that sticks after separation was free in the tube: `LT = F + S` and `bound = S + ns F`, so that
+/// `F = (LT - bound) / (1 - ns)`. Label that sticks during incubation is not free: `F = LT - bound`. Before
+/// there is a fit, and where `ns` is not below one, the latter is all that can be said.
+fn free(measured: Measured, sticks: Sticks, ns: Option<f64>) -> f64 {
+    match (sticks, ns) {
+        (Sticks::ToFilter, Some(ns)) if ns < 1.0 => measured.free_nm / (1.0 - ns),
+        _ => measured.free_nm,
+    }
+}
+
 /// Everything that can be said of a titration: a pure function, so that a notebook gives the same
 /// bits live and reloaded.
 pub fn analyse(titration: &Titration) -> Analysis {
@@ -54,6 +70,7 @@ pub fn analyse(titration: &Titration) -> Analysis {
     let all_readings = titration.has_flags().then(|| fit_rack(titration, false));
     let blank = background(titration, true);
     let ns = outcome.fit().map(|f| f.value("ns"));
+    let sticks = titration.protocol.nonspecific.sticks;
     let tubes = titration
         .tubes
         .iter()
@@ -68,7 +85,10 @@ pub fn analyse(titration: &Titration) -> Analysis {
                 added_nm: titration.added_nm(tube),
                 observed: counts,
                 measured: amounts,
-                specific_nm: amounts.zip(ns).map(|(m, ns)| m.bound_nm - ns * m.free_nm),
+                free_nm: amounts.map(|m| free(m, sticks, ns)),
+                specific_nm: amounts
+                    .zip(ns)
+                    .map(|(m, ns)| m.bound_nm - ns * free(m, sticks, Some(ns))),
                 suspect: titration
                     .is_suspect(tube.no)
                     .then(|| {

@@ -47,6 +47,8 @@ pub enum Event {
     SaveFailed(u32, String),
     /// A titration was laid on the bench.
     Opened(Box<Laid>),
+    /// The titration is saved to this file from now on.
+    Moved(String),
     /// Something that was asked for could not be done, and why.
     Refused(String),
     /// Something that was asked for was done.
@@ -91,6 +93,8 @@ pub enum Effect {
     KeepLab(Box<Lab>),
     /// Write a page beside the titration.
     WritePage(String),
+    /// Save to another file from now on.
+    SaveElsewhere(String),
     /// Print a page on standard output after leaving.
     PrintAfter(String),
     /// Sound the bell.
@@ -239,6 +243,8 @@ pub struct App {
     pub who: String,
     /// Whether leaving a titration leads back to the start.
     pub from_start: bool,
+    /// Keys typed while a titration waits for its last save before it is left.
+    ahead: Vec<Key>,
 }
 
 impl App {
@@ -252,6 +258,7 @@ impl App {
                 lab,
                 who,
                 from_start: true,
+                ahead: Vec::new(),
             },
             vec![Effect::Survey],
         )
@@ -267,6 +274,7 @@ impl App {
                 lab,
                 who,
                 from_start: false,
+                ahead: Vec::new(),
             },
             effects,
         )
@@ -290,6 +298,11 @@ impl App {
                 return Vec::new();
             }
             Event::Key(Key::Ctrl('z')) => return vec![Effect::Suspend],
+            Event::Key(key) if key != Key::Esc && self.is_leaving() => {
+                // Typed ahead, for where leaving leads.
+                self.ahead.push(key);
+                return Vec::new();
+            }
             Event::Opened(laid) => {
                 let drafted = matches!(self.scene, Scene::Draft(_));
                 let (desk, mut effects) = Desk::lay(*laid, self.who.clone(), self.look);
@@ -316,8 +329,31 @@ impl App {
             self.who.clone_from(&desk.who);
             self.look = desk.look;
         }
+        // Where nothing tells who is at the keyboard, it is who is named in the protocol of a new titration.
+        for effect in &mut effects {
+            if let Effect::Create { titration, who, .. } = effect {
+                let named = titration.protocol.operator.trim();
+                if !named.is_empty() && self.who == Lab::NOBODY {
+                    self.who = named.into();
+                    who.clone_from(&self.who);
+                }
+            }
+        }
         self.moved(&mut effects);
+        if !self.is_leaving() && !self.ahead.is_empty() {
+            let ahead = std::mem::take(&mut self.ahead);
+            // A question that came up instead is not answered by keys that were not meant for it.
+            if matches!(self.scene, Scene::Start(_)) {
+                for key in ahead {
+                    effects.extend(self.update(Event::Key(key), now));
+                }
+            }
+        }
         effects
+    }
+
+    fn is_leaving(&self) -> bool {
+        matches!(&self.scene, Scene::Desk(desk) if desk.leaving)
     }
 
     /// Leads from one scene to the next where an effect asks for it.

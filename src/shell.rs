@@ -241,7 +241,11 @@ impl Sitting {
                 }
                 waiting = receive.try_recv().ok();
             }
-            self.draw()?;
+            if let Err(e) = self.draw() {
+                // What cannot be drawn on has gone, and what goes with it may be news to the program.
+                self.take_in(Event::HangUp)?;
+                return Err(e);
+            }
         }
         Ok(())
     }
@@ -316,6 +320,14 @@ impl Sitting {
                         .as_ref()
                         .map_or(Err("no titration is open".into()), |o| o.write_page(&page));
                     self.take_in(said.map_or_else(Event::Refused, Event::Done))?;
+                }
+                Effect::SaveElsewhere(path) => {
+                    let who = self.app.who.clone();
+                    let moved = match &mut self.open {
+                        Some(open) => open.redirect(Path::new(&path), &who),
+                        None => Err("no titration is open".into()),
+                    };
+                    self.take_in(moved.map_or_else(Event::Refused, |()| Event::Moved(path)))?;
                 }
                 Effect::PrintAfter(page) => self.print = Some(page),
                 Effect::Bell => self.screen.bell()?,

@@ -18,9 +18,6 @@ pub use show::{clean, fixed, grouped, short, significant};
 /// The Avogadro constant in 1/mol, exact since the 2019 revision of the SI (BIPM, SI Brochure, 9th edition).
 pub const AVOGADRO: f64 = 6.022_140_76e23;
 
-/// Disintegrations per minute and fmol in one Ci/mmol: 3.7e10 /s x 60 / 1e12 fmol.
-pub const DPM_PER_FMOL_IN_CI_PER_MMOL: f64 = 2.22;
-
 /// Femtomoles in one millilitre of a 1 nM solution.
 pub const FMOL_PER_NM_ML: f64 = 1000.0;
 

@@ -35,6 +35,8 @@ pub struct Bench {
     pub field: Field,
     /// The line.
     pub line: Input,
+    /// Minutes that were asked about and are kept if they are typed again.
+    pub asked: Option<String>,
     /// The reading kept last, which `*` and `+` are about while nothing else was chosen.
     pub last: Option<(TubeNo, ReadingId)>,
 }
@@ -51,6 +53,7 @@ impl Bench {
             again: false,
             field: Field::Value,
             line: Input::default(),
+            asked: None,
             last: None,
         }
     }
@@ -59,8 +62,14 @@ impl Bench {
         self.at = to;
         self.again = false;
         self.field = Field::Value;
+        self.asked = None;
         self.line.reset();
     }
+}
+
+/// Whether minutes typed are more than ten times, or less than a tenth of, those of the protocol.
+fn far(minutes: f64, offered: f64) -> bool {
+    !(0.1 * offered..=10.0 * offered).contains(&minutes) && minutes > 0.0
 }
 
 /// A number for a reading in the scale of the protocol.
@@ -97,6 +106,10 @@ impl Desk {
             || matches!(self.bench.field, Field::Minutes { .. });
         match key {
             Key::Char(c) if c.is_ascii_digit() || matches!(c, '.' | ',' | ' ') => {
+                return self.typed(c);
+            }
+            // A letter in a number is a slip that Enter has to stumble over: dropped, it would leave another number.
+            Key::Char(c) if c.is_alphabetic() && !self.bench.line.value().is_empty() => {
                 return self.typed(c);
             }
             Key::Backspace => return self.edit(InputRequest::DeletePrevChar),
@@ -142,7 +155,7 @@ impl Desk {
                 Vec::new()
             }
             Command::BringBack => self.bring_back(now),
-            Command::Lose => self.lose(),
+            Command::Lose => self.lose(now),
             Command::Note => {
                 self.layers.push(Layer::line(LineFor::Note(self.bench.at)));
                 Vec::new()
@@ -178,6 +191,14 @@ impl Desk {
             }
             Command::Close => {
                 self.layers.push(Layer::Close);
+                Vec::new()
+            }
+            Command::Elsewhere => {
+                if self.saved.failed.is_some() {
+                    self.layers.push(Layer::line(LineFor::Elsewhere));
+                } else {
+                    self.refuse("w is for a titration that cannot be saved where it is");
+                }
                 Vec::new()
             }
             Command::Operator => {
@@ -277,7 +298,7 @@ impl Desk {
                     crate::notebook::reading_in_words(&k.reading)
                 )
             }
-            (None, Some(lost)) => format!("vial {no} is lost: {}", lost.why),
+            (None, Some(lost)) => format!("vial {no} is lost: {}; l takes that back", lost.why),
             (None, None) => String::new(),
         };
         self.say(text);
@@ -307,25 +328,58 @@ impl Desk {
                 vec![Effect::Bell]
             }
             Ok(value) if fields.with_minutes() => {
+                if let Some(why) = self.not_wanted() {
+                    self.refuse(why);
+                    return vec![Effect::Bell];
+                }
                 self.bench.line.reset();
                 self.bench.field = Field::Minutes { raw, value };
                 Vec::new()
             }
-            Ok(value) => self.keep(raw, value, self.offered_minutes(), now),
+            Ok(value) => self.keep(raw, value, None, now),
         }
+    }
+
+    /// Why a reading of the tube at the prompt would be refused whatever its minutes: said before they are typed.
+    fn not_wanted(&self) -> Option<String> {
+        let t = self.titration();
+        let at = self.bench.at;
+        if let Some((when, _)) = &t.closed {
+            return Some(format!(
+                "the titration was closed at {}; c opens it again",
+                when.minute()
+            ));
+        }
+        if t.lost.contains_key(&at) {
+            return Some(format!("vial {at} is lost; l takes that back"));
+        }
+        let has = t.kept(at).first().filter(|_| !self.bench.again)?;
+        Some(format!(
+            "vial {at} already has {}; + adds a recount",
+            crate::notebook::reading_in_words(&has.reading)
+        ))
     }
 
     fn minutes(&mut self, raw: &str, value: f64, text: &str, now: Stamp) -> Vec<Effect> {
         let mark = self.titration().protocol.counter.mark;
         let offered = self.offered_minutes();
-        let minutes = if text.is_empty() {
-            Ok(offered)
-        } else {
-            parse_decimal(text, mark)
+        let minutes = match text {
+            "" => Ok(None),
+            text => parse_decimal(text, mark).map(Some),
         };
         match minutes {
             Err(e) => {
                 self.refuse(format!("minutes: {e}"));
+                vec![Effect::Bell]
+            }
+            // The next tube's reading typed for minutes is the slip of this field.
+            Ok(Some(m)) if far(m, offered) && self.bench.asked.as_deref() != Some(text) => {
+                self.bench.line.reset();
+                self.bench.asked = Some(text.into());
+                self.refuse(format!(
+                    "{text} minutes is far from {}; type it again to keep it",
+                    fixed(offered, 2)
+                ));
                 vec![Effect::Bell]
             }
             Ok(minutes) => {
@@ -339,11 +393,14 @@ impl Desk {
         }
     }
 
-    fn keep(&mut self, raw: String, value: f64, minutes: f64, now: Stamp) -> Vec<Effect> {
+    /// Keeps a reading of the tube at the prompt; without minutes of its own it has those of the protocol.
+    fn keep(&mut self, raw: String, value: f64, minutes: Option<f64>, now: Stamp) -> Vec<Effect> {
+        let counted = minutes.unwrap_or_else(|| self.offered_minutes());
         let scale = self.titration().protocol.counter.fields.scale();
         let reading = Reading {
             scale,
-            ..Reading::counts(raw, value, minutes)
+            own_minutes: minutes.is_some(),
+            ..Reading::counts(raw, value, counted)
         };
         let at = self.bench.at;
         let count = if self.bench.again {
@@ -491,8 +548,18 @@ impl Desk {
         Vec::new()
     }
 
-    fn lose(&mut self) -> Vec<Effect> {
+    fn lose(&mut self, now: Stamp) -> Vec<Effect> {
         let at = self.bench.at;
+        if let Some(loss) = self.titration().lost.get(&at) {
+            let n = loss.entry;
+            return match self.record(What::TakenBack(n), now) {
+                None => vec![Effect::Bell],
+                Some((_, effects)) => {
+                    self.say(format!("found again   {}", self.tube_name(at)));
+                    effects
+                }
+            };
+        }
         if self.titration().wants_reading(at) {
             self.layers.push(Layer::Reasons(ReasonFor::Lost(at)));
         } else {
@@ -512,11 +579,16 @@ impl Desk {
     }
 
     pub(super) fn leave(&mut self) -> Vec<Effect> {
-        if self.saved.failed.is_some() && !self.is_saved() {
-            self.layers.push(Layer::LeaveUnsaved);
-            return Vec::new();
+        if self.is_saved() {
+            return vec![Effect::Quit];
         }
-        vec![Effect::Quit]
+        if self.saved.failed.is_some() {
+            self.layers.push(Layer::LeaveUnsaved);
+        } else {
+            self.leaving = true;
+            self.say("leaving when the last entry is in the file ...");
+        }
+        Vec::new()
     }
 }
 

@@ -82,6 +82,8 @@ pub struct Desk {
     pub look: Look,
     /// The last thing said.
     pub message: Message,
+    /// Leaving as soon as the last entry is in the file.
+    pub(super) leaving: bool,
 }
 
 impl Desk {
@@ -110,6 +112,7 @@ impl Desk {
             },
             look,
             message: Message::default(),
+            leaving: false,
         };
         (desk, vec![Effect::Analyse(revision, Box::new(titration))])
     }
@@ -140,7 +143,7 @@ impl Desk {
     pub fn standing(&self) -> Vec<String> {
         let mut bars = Vec::new();
         if let (Some(why), false) = (&self.saved.failed, self.is_saved()) {
-            bars.push(format!("NOT SAVED, trying again   {why}"));
+            bars.push(format!("NOT SAVED   w saves to another file   {why}"));
         }
         if let Access::ReadOnly(why) = &self.access {
             bars.push(format!("READ ONLY   {why}"));
@@ -172,6 +175,10 @@ impl Desk {
             {
                 self.analysed = Some(Analysed { revision, analysis });
             }
+            Event::Moved(file) => {
+                self.say(format!("saving to {file} from now on"));
+                self.file = file;
+            }
             Event::Saved(revision, digest) if revision >= self.saved.revision => {
                 self.saved = Saved {
                     revision,
@@ -179,9 +186,16 @@ impl Desk {
                     failed: None,
                     digest,
                 };
+                if self.leaving && self.is_saved() {
+                    return vec![Effect::Quit];
+                }
             }
             Event::SaveFailed(revision, why) if revision > self.saved.revision => {
                 self.saved.failed = Some(why);
+                if std::mem::take(&mut self.leaving) {
+                    self.message = Message::default();
+                    self.layers.push(Layer::LeaveUnsaved);
+                }
             }
             Event::Refused(what) => self.refuse(what),
             Event::Done(what) => self.say(what),
@@ -191,6 +205,7 @@ impl Desk {
     }
 
     fn key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
+        self.leaving = false;
         if !self.layers.is_empty() {
             return self.layer_key(key, now);
         }
@@ -345,6 +360,11 @@ impl Desk {
                     (self.top + page_rows).min(last)
                 }
             }
+            ResultCommand::Save | ResultCommand::Print
+                if !(self.is_current() && self.is_saved()) =>
+            {
+                self.refuse("not yet: the page is of what is in the file, fitted anew");
+            }
             ResultCommand::Save => {
                 return page(self).map_or(Vec::new(), |p| vec![Effect::WritePage(p)]);
             }
@@ -352,7 +372,7 @@ impl Desk {
                 let Some(page) = page(self) else {
                     return Vec::new();
                 };
-                self.say("the page will be printed when you have left with q");
+                self.say("the page as it is now will be printed when you have left with q");
                 return vec![Effect::PrintAfter(page)];
             }
             ResultCommand::Help => self.layers.push(Layer::Help { top: 0 }),

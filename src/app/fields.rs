@@ -50,13 +50,13 @@ pub const PROTOCOL: &[Spec] = &[
         "specific activity",
         "ligand.specific_activity",
         Kind::Needed,
-        "on the day of the assay, e.g. 85 Ci/mmol or 3.1 TBq/mmol",
+        "on the day of the assay (no decay is computed), e.g. 85 Ci/mmol, 3.1 TBq/mmol",
     ),
     field(
         "activity date",
         "ligand.activity_date",
         Kind::Text,
-        "the day it was stated for, as 2031-05-04",
+        "the day it was stated for, for the record: 2031-05-04",
     ),
     field("lot", "ligand.lot", Kind::Text, "lot of the label"),
     field(

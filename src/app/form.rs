@@ -138,7 +138,9 @@ impl Form {
         if self.at != before
             && let Some(f) = self.fields.get_mut(self.at)
         {
-            f.whole = !f.value().is_empty() && !matches!(f.spec.kind, Kind::Choice(_));
+            // What is wrong is mended rather than typed anew.
+            let sound = f.error.is_none() && !f.value().is_empty();
+            f.whole = sound && !matches!(f.spec.kind, Kind::Choice(_));
         }
         did
     }

@@ -118,6 +118,8 @@ pub enum Command {
     Close,
     /// Another person takes the keyboard.
     Operator,
+    /// Saves to another file.
+    Elsewhere,
     /// To the next step of the walk.
     Forward,
     /// To the step before.
@@ -166,7 +168,7 @@ pub const BENCH: &[Binding<Command>] = &[
         "Enter",
         Command::Keep,
         "keep",
-        "keep what is typed and go on to the next tube",
+        "keep the number typed and go on to the next tube",
         true,
     ),
     row(
@@ -279,6 +281,14 @@ pub const BENCH: &[Binding<Command>] = &[
         Command::Operator,
         "",
         "another person takes the keyboard",
+        false,
+    ),
+    row(
+        &[Key::Char('w')],
+        "w",
+        Command::Elsewhere,
+        "",
+        "where the bar says NOT SAVED: save to another file",
         false,
     ),
     row(

@@ -29,6 +29,8 @@ pub enum LineFor {
     Checker,
     /// Who is at the keyboard from now on.
     Operator,
+    /// The file to save to instead.
+    Elsewhere,
 }
 
 /// One layer; the topmost has the keys.
@@ -173,6 +175,7 @@ impl Desk {
                 let digest = self.saved.digest.clone();
                 self.recorded(What::Checked { by: words, digest }, now)
             }
+            LineFor::Elsewhere => vec![Effect::SaveElsewhere(words)],
             LineFor::Operator => {
                 self.say(format!("{words} is at the keyboard"));
                 self.who = words;

@@ -2,6 +2,7 @@
 
 use super::protocol::{BlankKind, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled};
 use super::rack::{Level, Made};
+use crate::units::short;
 
 /// One field of a protocol with its value as typed; fields that say nothing have an empty value.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -49,7 +50,11 @@ impl Protocol {
         };
         let prior = match self.numbers.cv_prior {
             None => "none".to_string(),
-            Some(p) => format!("{} %, sd of ln {}", 100.0 * p.centre, p.sd_ln),
+            Some(p) => format!(
+                "{} %, sd of ln {}",
+                short(100.0 * p.centre, 6),
+                short(p.sd_ln, 6)
+            ),
         };
         let sites = match self.display.sites {
             SitesUnit::PerAmount => "by the amount of receptor preparation",
@@ -100,7 +105,7 @@ impl Protocol {
             ),
             (
                 "confidence",
-                format!("{} %", 100.0 * self.numbers.confidence),
+                format!("{} %", short(100.0 * self.numbers.confidence, 6)),
             ),
             (
                 "concentrations in",

@@ -48,6 +48,11 @@ fn two_percent() -> Amount<Share> {
     super::protocol::Numbers::default().dilution_error
 }
 
+impl Lab {
+    /// Who is at the keyboard where nothing tells.
+    pub const NOBODY: &'static str = "not named";
+}
+
 impl Default for Lab {
     fn default() -> Self {
         Lab {

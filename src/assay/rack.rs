@@ -215,6 +215,15 @@ impl Titration {
         self.kept(no).iter().any(|k| k.suspect.is_some())
     }
 
+    /// The mark before a tube's number: `x` with a flagged reading, `+` counted more than once, else a blank.
+    pub fn mark_of(&self, no: TubeNo) -> char {
+        match self.kept(no) {
+            _ if self.has_flag(no) => 'x',
+            [_, _, ..] => '+',
+            _ => ' ',
+        }
+    }
+
     /// Whether any flag stands.
     pub fn has_flags(&self) -> bool {
         self.kept.values().flatten().any(|k| k.suspect.is_some())

@@ -28,13 +28,19 @@ pub struct Reading {
     pub scale: Scale,
     /// How long the tube was counted, in minutes.
     pub minutes: f64,
+    /// The minutes came with the reading; otherwise they are the protocol's, and follow it if it is corrected.
+    #[serde(default, skip_serializing_if = "is_false")]
+    pub own_minutes: bool,
+    /// The scale came with the reading; otherwise it is the protocol's, and follows it likewise.
+    #[serde(default, skip_serializing_if = "is_false")]
+    pub own_scale: bool,
     /// When the vial was counted, if the printout says so.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub counted: Option<Stamp>,
     /// The counter's quench indicator, if it prints one.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub quench: Option<f64>,
-    /// 1 for the first typing, 2 for a second one of the same printout.
+    /// Which typing of the printout this is; only 1 is taken so far.
     #[serde(default = "one", skip_serializing_if = "is_one")]
     pub pass: u8,
     /// The person was asked about the number and gave it again.
@@ -96,6 +102,8 @@ impl Reading {
             value,
             scale,
             minutes,
+            own_minutes: false,
+            own_scale: false,
             counted: None,
             quench: None,
             pass,

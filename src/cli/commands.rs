@@ -12,6 +12,7 @@ use crate::report::{self, Page};
 use crate::shell::{self, First, demos};
 use crate::store::format::MOST_BYTES;
 use crate::store::{self, Holder};
+use crate::units::clean;
 use clap::CommandFactory;
 use std::env;
 use std::fs;
@@ -67,9 +68,6 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
     Ok(ExitCode::SUCCESS)
 }
 
-/// Who is at the keyboard where nothing tells.
-const NOBODY: &str = "not named";
-
 /// Who is at the keyboard, as far as can be told.
 fn operator(named: Option<String>, usual: &str) -> String {
     let somebody = |s: &String| !s.trim().is_empty();
@@ -78,7 +76,7 @@ fn operator(named: Option<String>, usual: &str) -> String {
         .or_else(|| Some(usual.to_string()).filter(somebody))
         .or_else(|| env::var("USER").ok().filter(somebody))
         .or_else(|| env::var("LOGNAME").ok().filter(somebody))
-        .unwrap_or_else(|| NOBODY.into())
+        .unwrap_or_else(|| Lab::NOBODY.into())
 }
 
 /// The lab's settings. Ones that cannot be read are said and not used: they are defaults and nothing more.
@@ -135,7 +133,7 @@ fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
     let sheet = Sheet::parse(&read_text(from)?).map_err(|e| bad(e.to_string()))?;
     let t = sheet.titration().map_err(|e| bad(e.to_string()))?;
     let who = match operator(named, &lab().operator) {
-        who if who == NOBODY && !t.protocol.operator.trim().is_empty() => {
+        who if who == Lab::NOBODY && !t.protocol.operator.trim().is_empty() => {
             t.protocol.operator.clone()
         }
         who => who,
@@ -331,7 +329,7 @@ fn check(path: &Path) -> Result<ExitCode, Failure> {
     };
     out::result(&format!(
         "{}: {chain}; {} entries, digest {}; {read} of {all} vials read\n",
-        path.display(),
+        clean(&path.display().to_string()),
         opened.notebook.revision(),
         opened.text.digest()
     ))?;

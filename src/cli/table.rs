@@ -173,6 +173,8 @@ fn row(record: &StringRecord, places: &Places, t: &Titration) -> Result<(TubeNo,
     };
     let reading = Reading {
         scale,
+        own_scale: true,
+        own_minutes: !field("minutes").is_empty(),
         ..Reading::counts(raw, value, minutes)
     };
     reading.check().map_err(|e| e.to_string())?;

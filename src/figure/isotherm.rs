@@ -41,7 +41,7 @@ pub fn isotherm(
                 };
                 let (y, sd) = (shown(y), shown(m.bound_sd_nm));
                 Some(Point {
-                    x: shown(m.free_nm),
+                    x: shown(t.free_nm?),
                     y,
                     y_low: y - sd,
                     y_high: y + sd,

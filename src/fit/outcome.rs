@@ -330,12 +330,13 @@ fn nothing_yet(titration: &Titration, flags: bool) -> Vec<Missing> {
 /// What is missing of the rack's layout.
 fn rack_missing(titration: &Titration, samples: &[(Role, crate::assay::LevelNo)]) -> Vec<Missing> {
     let mut missing = Vec::new();
-    let mut levels: Vec<_> = samples
+    // Two levels of one concentration say no more of a curve than one.
+    let mut levels: Vec<f64> = samples
         .iter()
         .filter(|s| s.0 == Role::Total)
-        .map(|s| s.1)
+        .filter_map(|s| titration.level(s.1).map(|l| l.added.base()))
         .collect();
-    levels.sort();
+    levels.sort_by(f64::total_cmp);
     levels.dedup();
     if levels.len() < 3 {
         missing.push(Missing::Levels { have: levels.len() });

@@ -471,7 +471,13 @@ impl<E: Evidence> Solver<Posed<'_, E>, State> for Scoring {
             self.radius = if norm > 0.0 { 10.0 * norm } else { 10.0 };
         }
         let Some(d) = self.step.within(self.radius) else {
-            self.ended = Some(Ended::Converged);
+            // Without a gradient there is nowhere to go; with one, the factor failed.
+            let flat = self.step.r.tr_mul(&self.step.qty).norm() == 0.0;
+            self.ended = Some(if flat {
+                Ended::Converged
+            } else {
+                Ended::Stalled
+            });
             return Ok((state.param(theta).cost(cost), None));
         };
         let (next, scale) = problem.problem("move_count", |p| {

@@ -112,8 +112,8 @@ pub enum Rejection {
         /// What was given.
         quench: f64,
     },
-    /// A pass that is neither the first nor the second.
-    #[error("vial {tube}: pass {pass}; a printout is read in pass 1 and, once more, in pass 2")]
+    /// A pass other than the first: nothing compares a second one yet, and added up it would count twice.
+    #[error("vial {tube}: pass {pass}; only readings of pass 1 are taken")]
     Pass {
         /// The tube.
         tube: TubeNo,

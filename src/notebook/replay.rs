@@ -249,6 +249,26 @@ impl State {
         check_protocol(protocol, levels, &self.titration.tubes)?;
         self.titration.protocol = protocol.clone();
         self.titration.levels = levels.to_vec();
+        self.follow()
+    }
+
+    /// Readings that have their minutes or their scale from the protocol follow its correction.
+    fn follow(&mut self) -> Result<(), Rejection> {
+        let t = &mut self.titration;
+        for tube in &t.tubes {
+            for kept in t.kept.get_mut(&tube.no).into_iter().flatten() {
+                let r = &mut kept.reading;
+                if !r.own_minutes {
+                    r.minutes = t.protocol.minutes_for(tube.role);
+                }
+                if !r.own_scale {
+                    r.scale = t.protocol.counter.fields.scale();
+                }
+                let tube = tube.no;
+                r.check()
+                    .map_err(|cause| Rejection::Reading { tube, cause })?;
+            }
+        }
         Ok(())
     }
 

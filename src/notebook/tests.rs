@@ -564,3 +564,38 @@ fn a_chain_of_taking_back_as_long_as_a_notebook_is_walked() {
     let full = b.record(note(None, "x"), at(), "ann").unwrap_err();
     assert_eq!(full, Rejection::Full);
 }
+
+/// Readings that have their minutes from the protocol follow a correction of it; their own stay.
+#[test]
+fn a_corrected_counting_time_corrects_the_readings_that_took_it() {
+    let mut typed = reading(100.0);
+    typed.own_minutes = true;
+    let b = book([counted(1, 100.0)]);
+    let mut b = b;
+    b.record(
+        What::Counted {
+            readings: vec![Count::first(TubeNo(2), typed.clone())],
+        },
+        at(),
+        "ann",
+    )
+    .unwrap();
+    let t = b.titration();
+    let mut protocol = t.protocol.clone();
+    protocol.counter.minutes = crate::units::Typed::parse("7 min", protocol.counter.mark).unwrap();
+    let levels = t.levels.clone();
+    let before = t.clone();
+    let what = What::Amended {
+        protocol: Box::new(protocol),
+        levels,
+        reason: "the counter was set to 7".into(),
+    };
+    b.record(what, at(), "ann").unwrap();
+    let minutes = |t: &Titration, no| t.kept(TubeNo(no))[0].reading.minutes;
+    assert_eq!(minutes(b.titration(), 1), 7.0);
+    assert_eq!(minutes(b.titration(), 2), typed.minutes);
+    // Taking the correction back brings the old minutes back.
+    b.record(What::TakenBack(b.revision()), at(), "ann")
+        .unwrap();
+    assert_eq!(*b.titration(), before);
+}

@@ -2,7 +2,7 @@
 
 use crate::analysis::{Analysis, TubeResult};
 use crate::assay::{Titration, sites_by_amount};
-use crate::fit::{Fit, Outcome};
+use crate::fit::{End, Fit, Outcome};
 use serde::Serialize;
 
 /// The number of this layout; raised when a key changes its meaning or goes.
@@ -12,6 +12,7 @@ const FORMAT: u32 = 1;
 struct Summary<'a> {
     format: u32,
     title: &'a str,
+    confidence: f64,
     tubes: Vec<JsonTube>,
     fit: Option<JsonFit>,
     without_flags: Option<JsonFit>,
@@ -31,6 +32,7 @@ struct JsonTube {
     bound_nm: Option<f64>,
     bound_sd_nm: Option<f64>,
     free_nm: Option<f64>,
+    free_in_tube_nm: Option<f64>,
     specific_nm: Option<f64>,
     suspect: bool,
     suspect_reason: Option<String>,
@@ -56,6 +58,8 @@ struct JsonParameter {
     se_ln: Option<f64>,
     low: Option<f64>,
     high: Option<f64>,
+    low_end: &'static str,
+    high_end: &'static str,
     at_floor: bool,
 }
 
@@ -83,6 +87,7 @@ pub fn json(titration: &Titration, analysis: &Analysis) -> Result<String, serde_
     let summary = Summary {
         format: FORMAT,
         title: &titration.protocol.title,
+        confidence: titration.protocol.numbers.confidence,
         tubes: analysis.tubes.iter().map(|t| tube(titration, t)).collect(),
         fit: analysis.fit().map(|f| fit(titration, f)),
         without_flags: analysis.without_flags().fit().map(|f| fit(titration, f)),
@@ -106,10 +111,20 @@ fn tube(titration: &Titration, t: &TubeResult) -> JsonTube {
         bound_nm: t.measured.map(|m| m.bound_nm),
         bound_sd_nm: t.measured.map(|m| m.bound_sd_nm),
         free_nm: t.measured.map(|m| m.free_nm),
+        free_in_tube_nm: t.free_nm,
         specific_nm: t.specific_nm,
         suspect: t.suspect.is_some(),
         suspect_reason: t.suspect.as_ref().map(ToString::to_string),
         lost: titration.lost.get(&t.tube.no).map(|l| l.why.to_string()),
+    }
+}
+
+/// What kind of end an interval has.
+fn end(end: End) -> &'static str {
+    match end {
+        End::At(_) => "at",
+        End::Open => "open",
+        End::Failed => "failed",
     }
 }
 
@@ -123,6 +138,8 @@ fn fit(titration: &Titration, f: &Fit) -> JsonFit {
             se_ln: e.se_ln,
             low: e.low.value(),
             high: e.high.value(),
+            low_end: end(e.low),
+            high_end: end(e.high),
             at_floor: e.at_floor,
         })
         .collect();

@@ -2,7 +2,9 @@
 
 use super::values::{self, Shown};
 use crate::analysis::Analysis;
-use crate::assay::{FieldLine, Kept, Protocol, Reason, Role, Titration, Tube, sites_by_amount};
+use crate::assay::{
+    FieldLine, Kept, Made, Protocol, Reason, Role, Sticks, Titration, Tube, sites_by_amount,
+};
 use crate::figure::{Glyphs, Scale, isotherm, render};
 use crate::fit::{Fit, Outcome};
 use crate::notebook::{Notebook, What};
@@ -45,7 +47,7 @@ pub fn text(page: &Page) -> String {
     plot(&mut out, page, t);
     flags(&mut out, t);
     rack(&mut out, t, page.analysis);
-    protocol(&mut out, &t.protocol);
+    protocol(&mut out, t);
     amendments(&mut out, page.notebook);
     notes(&mut out, t);
     record(&mut out, page);
@@ -156,7 +158,7 @@ fn sample_tubes(t: &Titration) -> usize {
 fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
     let mut line = |name: &str, s: Shown, after: String| {
         out.line(format!(
-            "  {name:<12}{:<22}{:<24}{after}",
+            "  {name:<12}{:<21} {:<23} {after}",
             s.value, s.interval
         ));
     };
@@ -182,6 +184,7 @@ fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
         fixed(fit.minus2lnl, 3),
         fixed(fit.prior_term, 3)
     ));
+    out.line("  fitted to gross counts by maximum likelihood; intervals by profile likelihood");
     out.line(format!("  {}", values::TAKEN_AS_EXACT));
 }
 
@@ -250,7 +253,7 @@ fn flags(out: &mut Lines, t: &Titration) {
 fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
     let unit = t.protocol.display.concentration;
     out.title(&format!("Rack, amounts in {}", unit.word()));
-    out.line(" vial   added role             counts    min     bound      sd    free  specific");
+    out.line(" vial   added role             counts    min    bound       sd    free  specific");
     let number = |nm: Option<f64>| nm.map_or(String::new(), |nm| significant(unit.from_nm(nm), 3));
     let decimals = values::decimals(analysis, unit);
     let amount = |nm: Option<f64>| nm.map_or(String::new(), |nm| fixed(unit.from_nm(nm), decimals));
@@ -260,10 +263,9 @@ fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         } else {
             "."
         };
-        let some_flag = t.has_flag(r.tube.no);
         out.line(format!(
-            "{}{:>4} {:>7} {:<14} {:>8} {:>6} {:>9} {:>7} {:>7} {:>9}",
-            if some_flag { "x" } else { " " },
+            "{}{:>4} {:>7} {:<14} {:>8} {:>6} {:>8} {:>8} {:>7} {:>9}",
+            t.mark_of(r.tube.no),
             r.tube.no,
             r.added_nm
                 .map_or(String::new(), |nm| short(unit.from_nm(nm), 4)),
@@ -272,17 +274,55 @@ fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
             r.observed.map_or(String::new(), |o| fixed(o.minutes, 2)),
             amount(r.measured.map(|m| m.bound_nm)),
             amount(r.measured.map(|m| m.bound_sd_nm)),
-            number(r.measured.map(|m| m.free_nm)),
+            number(r.free_nm),
             amount(r.specific_nm),
         ));
     }
-    let words = "bound: as measured, nonspecific included; sd: of counting; free: added less bound; \
-                 specific: bound less ns x free";
-    out.wrapped(words, "");
+    let filter = match t.protocol.nonspecific.sticks {
+        Sticks::ToFilter => ", over 1 less ns once there is a fit",
+        Sticks::ToPreparation => "",
+    };
+    let words = format!(
+        "bound: as measured, nonspecific included; sd: of counting; free: added less bound{filter}; \
+                 specific: bound less ns x free; x: suspect; +: counted more than once"
+    );
+    out.wrapped(&words, "");
 }
 
-fn protocol(out: &mut Lines, p: &Protocol) {
+/// The ladder in a line: levels, how they were made, tubes.
+fn ladder(t: &Titration) -> String {
+    let levels = t.levels_by_concentration();
+    let ends = match (levels.first(), levels.last()) {
+        (Some(low), Some(high)) => format!("{} to {}", low.added, high.added),
+        _ => String::new(),
+    };
+    let fresh = t
+        .levels
+        .iter()
+        .filter(|l| l.made == Made::FromStock)
+        .count();
+    let made = match fresh {
+        n if n == t.levels.len() => "each from stock".to_string(),
+        1 => "serial".into(),
+        n => format!("{n} from stock, the others from another level"),
+    };
+    let of = |role| t.tubes.iter().filter(|x| x.role == role).count();
+    format!(
+        "{} levels, {ends}, {made}; {} total, {} nonspecific, {} background",
+        t.levels.len(),
+        of(Role::Total),
+        of(Role::Nonspecific),
+        of(Role::Background)
+    )
+}
+
+fn protocol(out: &mut Lines, t: &Titration) {
+    let p = &t.protocol;
     out.title("Protocol");
+    out.wrapped(
+        &format!("  {:.<20} {}", "ladder", clean(&ladder(t))),
+        "                       ",
+    );
     for FieldLine { name, value } in p.lines().into_iter().filter(|l| !l.value.is_empty()) {
         out.wrapped(
             &format!("  {name:.<20} {}", clean(&value)),

@@ -28,10 +28,10 @@ pub fn kd(protocol: &Protocol, fit: &Fit) -> Shown {
     shown(e, |nm| unit.from_nm(nm), unit.word(), false)
 }
 
-/// pKd, the negative decadic logarithm of Kd in M; `None` while Kd has no upper end.
+/// pKd, the negative decadic logarithm of Kd in M; `None` while an end of Kd is open.
 pub fn p_kd(fit: &Fit) -> Option<String> {
     let e = fit.estimate("kd_nm")?;
-    e.high.value()?;
+    e.low.value().and(e.high.value())?;
     Some(format!("{:.2}", 9.0 - e.value.log10()))
 }
 
@@ -103,9 +103,13 @@ fn shown(e: &Estimate, scale: impl Fn(f64) -> f64, unit: &str, bare: bool) -> Sh
             value,
             interval: format!("{} to {}", number(low), number(high)),
         },
-        (_, End::Open, End::At(high)) => Shown {
+        (_, End::Open, End::At(high)) if bare => Shown {
             value,
             interval: format!("below {}, no lower end", number(high)),
+        },
+        (_, End::Open, End::At(high)) => Shown {
+            value: format!("below {}", with_unit(number(high))),
+            interval: "no lower end".into(),
         },
         (_, End::At(low), End::Open) if bare => Shown {
             value,
@@ -131,14 +135,15 @@ pub fn decimals(analysis: &Analysis, unit: DisplayUnit) -> usize {
         .filter(|sd| *sd > 0.0)
         .fold(f64::INFINITY, f64::min);
     if smallest.is_finite() {
-        (1.0 - smallest.log10().floor()).clamp(0.0, 7.0) as usize
+        (1.0 - smallest.log10().floor()).clamp(0.0, 6.0) as usize
     } else {
         3
     }
 }
 
 /// What the intervals leave out.
-pub const TAKEN_AS_EXACT: &str = "stock, efficiency, volume, protein taken as exact";
+pub const TAKEN_AS_EXACT: &str =
+    "stock (no decay computed), efficiency, volume, protein taken as exact";
 
 /// The same in the room of a screen.
 pub const TAKEN_AS_EXACT_SHORT: &str = "stock, efficiency, volume taken as exact";

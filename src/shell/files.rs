@@ -5,7 +5,7 @@ use crate::analysis::analyse;
 use crate::app::{Access, Event, Laid, Recent, Typed, fit_line};
 use crate::assay::{Lab, Titration};
 use crate::notebook::{Entry, Notebook};
-use crate::store::{self, Ended, Holder, SaveReport, Saver, StoreError, Text};
+use crate::store::{self, Ended, Holder, SaveReport, Saver, StoreError, Target, Text};
 use std::fs;
 use std::io::{self, Write};
 use std::path::{Path, PathBuf};
@@ -26,6 +26,8 @@ pub(super) struct Open {
     saver: Option<Saver>,
     text: Text,
     digests: Digests,
+    /// An entry that the file cannot take, and why.
+    fault: Option<(u32, String)>,
 }
 
 /// Opens a titration for writing, or for reading where another has it; with what is to be said of it.
@@ -42,6 +44,10 @@ pub fn open(path: &Path, who: &str) -> Result<(store::Opened, Vec<String>), Stor
         Err(StoreError::Locked { holder, .. }) => (
             store::open(path)?,
             vec![format!("open elsewhere: {holder}")],
+        ),
+        Err(e) if e.write_protected() => (
+            store::open(path)?,
+            vec![format!("it may not be written here: {}", e.in_short())],
         ),
         Err(e) => return Err(e),
     };
@@ -113,6 +119,7 @@ pub(super) fn lay(
             saver,
             text: opened.text,
             digests,
+            fault: None,
         },
     ))
 }
@@ -140,22 +147,49 @@ impl Open {
         };
         let written = self.text.entries() as usize;
         for entry in entries.iter().skip(written) {
-            self.text.append(entry).map_err(|fault| fault.to_string())?;
+            if let Err(fault) = self.text.append(entry) {
+                let why = fault.to_string();
+                self.fault = Some((revision, why.clone()));
+                return Err(why);
+            }
         }
-        let digest = self.text.digest().to_string();
-        self.digests
-            .lock()
-            .unwrap_or_else(PoisonError::into_inner)
-            .push((revision, digest));
+        self.note_digest(revision);
         saver.save(revision, self.text.clone());
         Ok(())
+    }
+
+    /// Saves to another file from now on; it must not be there yet.
+    pub(super) fn redirect(&mut self, path: &Path, who: &str) -> Result<(), String> {
+        let Some(saver) = &self.saver else {
+            return Err("the titration is only looked at here".into());
+        };
+        let holder = Holder {
+            who: who.into(),
+            since: now(),
+        };
+        let target = Target::fresh(path, &holder).map_err(|e| e.to_string())?;
+        let revision = self.text.entries();
+        self.note_digest(revision);
+        saver.redirect(target, revision, self.text.clone());
+        self.path = path.to_path_buf();
+        Ok(())
+    }
+
+    /// Remembers the digest of the text as it is for when the saver says that it is saved.
+    fn note_digest(&self, revision: u32) {
+        let digest = self.text.digest().to_string();
+        let mut known = self.digests.lock().unwrap_or_else(PoisonError::into_inner);
+        known.push((revision, digest));
     }
 
     /// Waits for the last save and lets go of the file.
     pub(super) fn put_away(self) -> Result<(), ShellError> {
         let file = self.path.display().to_string();
+        let fault = self.fault;
         match self.saver.map(|s| s.finish(SAVE_PATIENCE)) {
-            None | Some(Ended::Saved) => Ok(()),
+            None | Some(Ended::Saved) => fault.map_or(Ok(()), |(rev, why)| {
+                Err(ShellError::Unsaved { file, rev, why })
+            }),
             Some(Ended::Unsaved { rev, error }) => Err(ShellError::Unsaved {
                 file,
                 rev,

@@ -66,8 +66,11 @@ impl Screen {
         HOOK.call_once(|| {
             let before = std::panic::take_hook();
             std::panic::set_hook(Box::new(move |info| {
-                release();
-                before(info);
+                // A thread at the side takes nothing with it; only the main one gives the terminal back and speaks.
+                if std::thread::current().name() == Some("main") {
+                    release();
+                    before(info);
+                }
             }));
         });
         let entered = seize().and_then(|()| terminal());

@@ -118,6 +118,18 @@ impl StoreError {
         }
     }
 
+    /// Whether the file may be read and not written.
+    pub fn write_protected(&self) -> bool {
+        let kind = match self {
+            StoreError::Io { cause, .. } => cause.kind(),
+            _ => return false,
+        };
+        matches!(
+            kind,
+            io::ErrorKind::PermissionDenied | io::ErrorKind::ReadOnlyFilesystem
+        )
+    }
+
     /// Whether trying the same again may help.
     pub fn may_pass(&self) -> bool {
         matches!(

@@ -9,7 +9,7 @@
 //! ```
 //!
 //! The link that ends a line is the first 16 hex digits of SHA-256 over the link of the line before
-//! (nothing, for the first) and the line up to and with its comma. It shows damage and careless
+//! (the first line of the file, for the first) and the line up to and with its comma. It shows damage and careless
 //! editing; who sets out to forge a notebook can compute it too.
 
 use crate::notebook::{Entry, Notebook, Rejection};
@@ -78,8 +78,8 @@ impl Default for Text {
         Text {
             body: format!("{HEADER}\n"),
             entries: 0,
-            link: String::new(),
-            digest: String::new(),
+            link: HEADER.into(),
+            digest: HEADER.into(),
         }
     }
 }
@@ -302,7 +302,9 @@ impl<'a> Layout<'a> {
     /// it along. If it is the link that was changed, the next line fits the one it should have been.
     fn chained(&self, text: &str) -> (Text, Vec<u32>) {
         let mut changed = Vec::new();
-        let (mut written, mut due, mut digest) = (String::new(), String::new(), String::new());
+        // The first link is over the first line too, which holds the number of the format.
+        let head = || HEADER.to_string();
+        let (mut written, mut due, mut digest) = (head(), head(), head());
         for (n, line) in (1..).zip(&self.lines) {
             let by_written = link_of(&written, line.linked);
             let by_due = link_of(&due, line.linked);

@@ -38,7 +38,7 @@ impl Lock {
             .open(&path)
             .or_else(|e| match e.kind() {
                 // Made by another user of the folder: it locks as well, only the text stays theirs.
-                io::ErrorKind::PermissionDenied => File::open(&path),
+                io::ErrorKind::PermissionDenied => File::open(&path).map_err(|_| e),
                 _ => Err(e),
             })
             .map_err(StoreError::io(&path, "open the lock"))?;

@@ -69,6 +69,11 @@ impl Target {
     /// A file that is there, locked and looked at before it is read.
     pub(super) fn existing(path: &Path, holder: &Holder) -> Result<Target, StoreError> {
         let path = fs::canonicalize(path).map_err(StoreError::io(path, "open"))?;
+        // A rename would take the place of a write-protected file without asking it.
+        OpenOptions::new()
+            .append(true)
+            .open(&path)
+            .map_err(StoreError::io(&path, "write"))?;
         let lock = Lock::take(&path, holder)?;
         Ok(Target {
             path,

@@ -7,6 +7,7 @@ use super::error::StoreError;
 use super::format::Text;
 use super::save::Target;
 use std::io;
+use std::path::PathBuf;
 use std::sync::{Arc, Condvar, Mutex, MutexGuard, PoisonError};
 use std::thread;
 use std::time::{Duration, Instant};
@@ -141,7 +142,19 @@ impl Saver {
         if !slot.ended {
             return Ended::StillWriting;
         }
-        let unsaved = slot.unsaved.clone();
+        // A thread that died left its job behind.
+        let left = slot.job.as_ref().map(|job| {
+            let cause = io::Error::other("the saving thread stopped");
+            (
+                job.rev,
+                Arc::new(StoreError::Io {
+                    path: PathBuf::new(),
+                    doing: "save",
+                    cause,
+                }),
+            )
+        });
+        let unsaved = slot.unsaved.clone().or(left);
         drop(slot);
         // It is past its last statement that could take time.
         let _ = thread.join();

@@ -180,7 +180,7 @@ fn amounts(app: &Desk, no: TubeNo) -> Option<String> {
         " {name}   bound {} sd {}   free {}{specific}   {}",
         show(m.bound_nm),
         show(m.bound_sd_nm),
-        show(m.free_nm),
+        show(r.free_nm?),
         unit.word()
     ))
 }

@@ -24,6 +24,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
                 LineFor::Note(tube) => format!("note on vial {tube}"),
                 LineFor::Amend => "why the protocol is corrected".into(),
                 LineFor::Checker => format!("checked by whom? digest {}", app.saved.digest),
+                LineFor::Elsewhere => "the file to save to from now on".into(),
                 LineFor::Operator => format!("who is at the keyboard? now {}", clean(&app.who)),
             };
             let below = vec![Line::styled(

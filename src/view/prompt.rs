@@ -82,7 +82,7 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
         .and_then(|l| t.level(l))
         .map_or(String::new(), |l| format!("{}   ", clean(&l.added.text)));
     let done = match t.next_unread() {
-        None if width >= WIDE => "   every tube has a reading or is lost",
+        None if width >= WIDE => "   all read or lost; PgDn: result",
         None => "   none left",
         Some(_) => "",
     };

@@ -2,7 +2,7 @@
 
 use super::style;
 use crate::app::Desk;
-use crate::assay::{LevelNo, Role, Titration, Tube, observed, replicate_letter};
+use crate::assay::{LevelNo, Observed, Role, Titration, Tube, TubeNo, observed, replicate_letter};
 use crate::units::{FMOL_PER_NM_ML, fixed, short, significant};
 use ratatui::Frame;
 use ratatui::layout::Rect;
@@ -35,16 +35,21 @@ fn widest(t: &Titration, role: Role) -> usize {
     most.map_or(0, usize::from)
 }
 
+/// The counts of a tube in use; of one that is flagged as a whole, all of them.
+fn in_use(t: &Titration, no: TubeNo) -> Option<Observed> {
+    observed(t, no, true).or_else(|| observed(t, no, false))
+}
+
 /// What a tube's cell says.
 fn cell(app: &Desk, tube: &Tube, width: usize) -> (String, Style) {
     let t = app.titration();
     let here = app.bench.at == tube.no;
     let text = if t.lost.contains_key(&tube.no) {
         "lost".into()
-    } else if let Some(o) = observed(t, tube.no, false) {
+    } else if let Some(o) = in_use(t, tube.no) {
         // A suspect's cross stands before its number, as it does in the plot.
-        let flag = if t.has_flag(tube.no) { "x" } else { "" };
-        format!("{flag}{}", fixed(o.counts, 0))
+        let mark = t.mark_of(tube.no).to_string();
+        format!("{}{}", mark.trim(), fixed(o.counts, 0))
     } else if here {
         "_".into()
     } else {

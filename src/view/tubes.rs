@@ -2,6 +2,7 @@
 
 use super::style;
 use crate::app::Desk;
+use crate::assay::observed;
 use crate::report::values;
 use crate::units::{fixed, short, significant};
 use ratatui::Frame;
@@ -41,16 +42,16 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             .map_or("-".into(), |nm| short(unit.from_nm(nm), 3));
         let role = format!("{} {}", tube.role, tube.letter());
         // The newest analysis may be of a moment ago; the readings themselves are always of now.
-        let counts = crate::assay::observed(t, tube.no, false);
+        let counts = observed(t, tube.no, true).or_else(|| observed(t, tube.no, false));
         let r = results
             .iter()
             .find(|r| r.tube.no == tube.no && counts.is_some());
         let m = r.and_then(|r| r.measured);
-        let (suspect, lost) = (t.has_flag(tube.no), t.lost.contains_key(&tube.no));
+        let lost = t.lost.contains_key(&tube.no);
         let text = format!(
             "{}{}{:>3} {:>6} {:<13} {:>6} {:>6} {:>9} {:>8} {:>7} {:>9}",
             if at { ">" } else { " " },
-            if suspect { "x" } else { " " },
+            t.mark_of(tube.no),
             tube.no,
             added,
             role,
@@ -60,7 +61,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             counts.map_or(String::new(), |o| fixed(o.minutes, 2)),
             amount(m.map(|m| m.bound_nm)),
             amount(m.map(|m| m.bound_sd_nm)),
-            number(m.map(|m| m.free_nm)),
+            number(r.and_then(|r| r.free_nm)),
             amount(r.and_then(|r| r.specific_nm)),
         );
         lines.push(Line::styled(

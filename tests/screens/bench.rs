@@ -139,14 +139,14 @@ fn rules() -> Vec<Rule> {
         refused(
             "a letter in a number",
             half(),
-            "12a",
-            "the line is not finished",
+            "12a6\n",
+            "`12a6` is not a number",
         ),
         refused(
             "leaving with a line begun",
             half(),
-            "12q",
-            "the line is not finished",
+            "12q\n",
+            "`12q` is not a number",
         ),
         refused(
             "no such vial",
@@ -191,8 +191,14 @@ fn rules() -> Vec<Rule> {
         refused(
             "minutes beyond sense",
             with_minutes(),
-            "267\n99999\n",
+            "267\n99999\n99999\n",
             "at most 43200",
+        ),
+        refused(
+            "the next tube's counts typed for minutes",
+            with_minutes(),
+            "267\n227\n",
+            "227 minutes is far from 10.00; type it again to keep it",
         ),
         refused(
             "the other mark in minutes",

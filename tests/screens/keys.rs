@@ -3,7 +3,7 @@
 use crate::scenes;
 use crate::sitting::Sitting;
 use rackside::app::keys::{BENCH, Binding, FORM, Key, RESULT, START};
-use rackside::app::{Effect, Event};
+use rackside::app::{Effect, Event, Scene};
 
 /// Whether a key asks for anything but the bell, or changes anything without being refused.
 fn acts(state: &Sitting, key: Key) -> bool {
@@ -13,6 +13,11 @@ fn acts(state: &Sitting, key: Key) -> bool {
     after.press(key);
     let asked = after.seen.iter().any(|e| !matches!(e, Effect::Bell));
     asked || (format!("{:?}", after.app) != before && !after.refused())
+}
+
+/// A number is begun: there a letter is typed like any character, for Enter to stumble over.
+fn begun(s: &Sitting) -> bool {
+    matches!(&s.app.scene, Scene::Desk(desk) if !desk.bench.line.value().is_empty())
 }
 
 fn all_act<C: Copy + std::fmt::Debug>(table: &[Binding<C>], states: &[Sitting]) {
@@ -32,7 +37,7 @@ fn all_act<C: Copy + std::fmt::Debug>(table: &[Binding<C>], states: &[Sitting]) 
         Key::Ctrl('s'),
     ] {
         assert!(
-            !states.iter().any(|s| acts(s, key)),
+            !states.iter().filter(|s| !begun(s)).any(|s| acts(s, key)),
             "{key:?} does something"
         );
     }
@@ -46,6 +51,9 @@ fn after(mut sitting: Sitting, keys: &str) -> Sitting {
 #[test]
 fn every_key_of_the_bench_acts() {
     let half = || Sitting::demo("half-typed");
+    let mut unsaved = half();
+    let newest = unsaved.desk().notebook.revision() + 1;
+    unsaved.happen(Event::SaveFailed(newest, "no room".into()));
     all_act(
         BENCH,
         &[
@@ -54,6 +62,7 @@ fn every_key_of_the_bench_acts() {
             after(half(), "1521\n"),
             after(half(), "1521\n-"),
             after(half(), "/14\n"),
+            unsaved,
         ],
     );
 }

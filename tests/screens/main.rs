@@ -5,6 +5,7 @@ mod bench;
 mod house;
 mod keys;
 mod modes;
+mod page;
 mod readme;
 mod scenes;
 mod sitting;

@@ -72,7 +72,9 @@ pub fn everything() -> Notebook {
         minutes: 0.1 + 0.2,
         counted: Some(at()),
         quench: Some(412.25),
-        pass: 2,
+        own_minutes: true,
+        own_scale: true,
+        pass: 1,
         confirmed: true,
     };
     let plain = |raw: &str, value| Reading::counts(raw, value, 10.0);

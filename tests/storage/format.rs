@@ -56,7 +56,7 @@ fn links_are_those_of_sha256sum() {
     use std::io::Write;
     use std::process::{Command, Stdio};
     let lines = lines(&everything());
-    let mut previous = String::new();
+    let mut previous = String::from("(format: 1, entries: [");
     for line in &lines[1..4] {
         let (text, link) = line.rsplit_once(" // ").unwrap();
         let mut sum = Command::new("sha256sum")
@@ -139,7 +139,8 @@ impl DigestAfter for Text {
     /// The chain over lines as they are, links left aside.
     fn digest_after(self, lines: Vec<String>) -> String {
         use sha2::{Digest, Sha256};
-        lines.iter().fold(String::new(), |link, line| {
+        let first = String::from("(format: 1, entries: [");
+        lines.iter().fold(first, |link, line| {
             let sum = Sha256::digest(format!("{link}{line}").as_bytes());
             sum[..8].iter().map(|b| format!("{b:02x}")).collect()
         })

@@ -27,6 +27,7 @@ fn stopped_by_the_shell_and_taken_up_again() {
     bench.keys("\x1a");
     // The shell has the terminal, in the state that a shell wants.
     bench.wait_text("Stopped");
+    bench.wait("the shell's prompt", ready);
     bench.keys("echo $((6 * 7))\r");
     bench.wait("the shell's answer", |s| s.any(|r| r.trim() == "42"));
     // Meanwhile the window is drawn larger.

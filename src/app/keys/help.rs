@@ -34,11 +34,7 @@ fn of_table<C>(table: &[Binding<C>]) -> impl Iterator<Item = (&str, &str)> {
 
 /// Help at the bench.
 pub fn bench_help(columns: u16) -> Vec<String> {
-    let typed = (
-        "digits",
-        "a reading; its unit stands before it; the decimal mark too",
-    );
-    help(std::iter::once(typed).chain(of_table(BENCH)), columns)
+    help(of_table(BENCH), columns)
 }
 
 /// Help at the result.

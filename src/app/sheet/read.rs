@@ -194,11 +194,11 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
 
 pub(super) fn numbers(b: &mut Reader) -> Numbers {
     let cv_prior = prior(b);
-    let dilution_error = b.maybe("dilution error").unwrap_or(Typed {
-        text: "0".into(),
-        value: Measure::of(0.0),
-    });
-    let confidence = b.maybe("confidence").map_or(0.95, |c: Amount<_>| share(&c));
+    let usual = Numbers::default();
+    let dilution_error = b.maybe("dilution error").unwrap_or(usual.dilution_error);
+    let confidence = b
+        .maybe("confidence")
+        .map_or(usual.confidence, |c: Amount<_>| share(&c));
     Numbers {
         cv_prior,
         dilution_error,
