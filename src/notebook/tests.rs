@@ -570,8 +570,7 @@ fn a_chain_of_taking_back_as_long_as_a_notebook_is_walked() {
 fn a_corrected_counting_time_corrects_the_readings_that_took_it() {
     let mut typed = reading(100.0);
     typed.own_minutes = true;
-    let b = book([counted(1, 100.0)]);
-    let mut b = b;
+    let mut b = book([counted(1, 100.0)]);
     b.record(
         What::Counted {
             readings: vec![Count::first(TubeNo(2), typed.clone())],

@@ -105,22 +105,56 @@ fn files() -> Vec<(String, PathBuf, String)> {
     found
 }
 
-/// The rooms a text names as `crate::room` or in a `use crate::{...}`.
-fn named(text: &str) -> BTreeSet<String> {
-    let mut rooms = BTreeSet::new();
-    for (at, _) in text.match_indices("crate::") {
-        // `$crate::` in a macro and `super::super` ways around the table would escape; neither is used.
-        let rest = &text[at + "crate::".len()..];
-        if let Some(list) = rest.strip_prefix('{') {
-            let inside = list.split('}').next().unwrap();
-            for item in inside.split(',') {
-                rooms.extend(first_name(item.trim()));
+/// The text with every `a::{b, c::{d}}` written out as `a::b`, `a::c::d`, one to a line, after the text itself.
+fn written_out(text: &str) -> String {
+    let mut all = text.to_string();
+    let mut from = 0;
+    while let Some(at) = text[from..].find("::{").map(|i| from + i) {
+        let head = text[..at]
+            .rsplit(|c: char| !(c.is_alphanumeric() || c == '_' || c == ':'))
+            .next();
+        let head = head.unwrap_or_default();
+        for item in group(&text[at + 3..]) {
+            let path = format!("{head}::{}", item.trim());
+            all.push('\n');
+            all.push_str(&if path.contains("::{") {
+                written_out(&path)
+            } else {
+                path
+            });
+        }
+        from = at + 3;
+    }
+    all
+}
+
+/// The items of a group up to the brace that closes it.
+fn group(text: &str) -> Vec<&str> {
+    let (mut depth, mut start, mut items) = (0, 0, Vec::new());
+    for (i, c) in text.char_indices() {
+        match c {
+            '{' => depth += 1,
+            '}' if depth == 0 => {
+                items.push(&text[start..i]);
+                break;
             }
-        } else {
-            rooms.extend(first_name(rest));
+            '}' => depth -= 1,
+            ',' if depth == 0 => {
+                items.push(&text[start..i]);
+                start = i + 1;
+            }
+            _ => {}
         }
     }
-    rooms
+    items
+}
+
+/// The rooms a text names as `crate::room`, in a group or by itself.
+fn named(text: &str) -> BTreeSet<String> {
+    let all = written_out(text);
+    all.match_indices("crate::")
+        .filter_map(|(at, _)| first_name(&all[at + "crate::".len()..]))
+        .collect()
 }
 
 fn first_name(text: &str) -> Option<String> {
@@ -132,7 +166,8 @@ fn first_name(text: &str) -> Option<String> {
     Some(name)
 }
 
-/// Lines that are code: comments talk about whatever they like.
+/// Lines that are code: comments talk about whatever they like. What follows `//` in a string is left out too, which can hide
+/// nothing but a name inside that string.
 fn code(text: &str) -> String {
     text.lines()
         .map(|l| l.split("//").next().unwrap())
@@ -181,7 +216,7 @@ fn pure_rooms_do_not_reach_out() {
         if OUTSIDE.contains(&room.as_str()) {
             continue;
         }
-        let code = code(&text);
+        let code = written_out(&code(&text));
         for banned in REACHING_OUT.iter().filter(|b| code.contains(**b)) {
             wrong.push(format!("{} has {banned}", path.display()));
         }
@@ -207,7 +242,7 @@ fn no_file_outgrows_its_room() {
     let long: Vec<String> = files()
         .iter()
         .map(|(_, path, text)| (path, text.lines().count()))
-        .filter(|(_, lines)| *lines > 620)
+        .filter(|(_, lines)| *lines > 600)
         .map(|(path, lines)| format!("{} has {lines} lines", path.display()))
         .collect();
     assert!(long.is_empty(), "{long:#?}");
@@ -219,7 +254,12 @@ fn the_test_reads_what_it_should() {
     assert_eq!(names("use crate::units::Mark; // crate::store"), ["units"]);
     assert_eq!(names("let x = crate::store::open(p);"), ["store"]);
     assert_eq!(
-        names("use crate::{fit::Rows, view, Other};"),
+        names("use crate::{fit::{Rows, End}, view, Other};"),
         ["fit", "view"]
     );
+    let outside =
+        written_out("use std::{collections::{BTreeMap, BTreeSet}, fs, io::{self, Read}};");
+    for name in ["std::fs", "std::io", "std::collections::BTreeSet"] {
+        assert!(outside.contains(name), "{outside}");
+    }
 }

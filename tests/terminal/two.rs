@@ -98,3 +98,35 @@ fn a_failed_save_is_tried_until_it_succeeds() {
         (vec![267.0], vec![227.0])
     );
 }
+
+#[test]
+fn what_cannot_be_saved_where_it_is_is_saved_elsewhere() {
+    let _one = one_at_a_time();
+    let home = fresh();
+    let mut bench = home.sit(&["open", FILE]);
+    bench.wait_prompt(33, "background");
+    let foreign = "somebody else was here\n";
+    home.write(FILE, foreign);
+    home.write("taken.ron", "there already\n");
+    bench.keypad("267\r");
+    bench.wait_text("NOT SAVED");
+    // Never over another file.
+    bench.keys("w");
+    bench.wait_text("the file to save to");
+    bench.keys("taken.ron\r");
+    bench.wait("that it is there already", |s| s.has("there already"));
+    bench.keys("w");
+    bench.wait_text("the file to save to");
+    bench.keys("elsewhere.ron\r");
+    bench.wait("that it is saved elsewhere", |s| {
+        s.has("saving to elsewhere.ron from now on") && !s.has("NOT SAVED")
+    });
+    bench.keypad("227\r");
+    bench.wait_saved(1, 227);
+    bench.keys("q");
+    assert!(bench.end().success());
+    assert_eq!(home.bytes(FILE), foreign.as_bytes());
+    assert_eq!(home.bytes("taken.ron"), b"there already\n");
+    let checked = home.run(&["check", "elsewhere.ron"]).done();
+    assert!(checked.out.contains("2 of 33 vials read"), "{checked:?}");
+}
