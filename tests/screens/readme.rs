@@ -1,5 +1,6 @@
 //! README says what is true of the program.
 
+use crate::sitting::Sitting;
 use rackside::app::keys;
 use std::fs;
 use std::path::Path;
@@ -63,4 +64,27 @@ fn gather(value: &serde_json::Value, keys: &mut Vec<String>) {
 fn the_caution_is_in_the_readme() {
     let words = |t: &str| t.split_whitespace().collect::<Vec<_>>().join(" ");
     assert!(words(&readme()).contains(&words(rackside::report::CAUTION)));
+}
+
+#[test]
+fn the_picture_is_the_program() {
+    let mut sitting = Sitting::demo("half-typed");
+    // The program opens with free on a log axis, the tests without.
+    sitting.types("a1521\n1596");
+    let drawn = sitting.screen(80, 24).lines();
+    let readme = readme();
+    let picture = readme
+        .split("```text\n")
+        .nth(1)
+        .unwrap()
+        .split("\n```")
+        .next()
+        .unwrap();
+    let picture: Vec<&str> = picture.lines().collect();
+    assert_eq!(picture.len(), 24);
+    // The clock is that of the day the picture was taken.
+    let timeless = |line: &str| line.split("saved ").next().unwrap().trim_end().to_string();
+    for (shown, drawn) in picture.iter().zip(&drawn) {
+        assert_eq!(timeless(shown), timeless(drawn));
+    }
 }
