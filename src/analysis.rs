@@ -18,7 +18,7 @@ pub struct TubeResult {
     /// Bound and free, once a background is counted.
     pub measured: Option<Measured>,
     /// Free label in nM: as measured, and once there is a fit, with what the fit knows of where nonspecific label
-    /// sticks. See [`free`].
+    /// sticks: label on the filter was free in the tube.
     pub free_nm: Option<f64>,
     /// Specific binding in nM, `bound - ns x free`, once there is a fit.
     pub specific_nm: Option<f64>,
