@@ -16,6 +16,13 @@ pub enum ReasonFor {
     Lost(TubeNo),
 }
 
+impl ReasonFor {
+    /// Whether a reason can be one for this: a tube without a number is not lost on numbers alone.
+    pub fn may_be(&self, reason: Reason) -> bool {
+        reason != Reason::NumbersAlone || matches!(self, ReasonFor::Suspect(..))
+    }
+}
+
 /// What a line of words is for.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum LineFor {
@@ -127,7 +134,7 @@ impl Desk {
 
     fn reason_key(&mut self, what: ReasonFor, key: Key, now: Stamp) -> Vec<Effect> {
         match key {
-            Key::Char(c) => match Reason::from_digit(c) {
+            Key::Char(c) => match Reason::from_digit(c).filter(|r| what.may_be(*r)) {
                 Some(Reason::Other) => {
                     self.layers.pop();
                     self.layers.push(Layer::line(LineFor::OtherReason(what)));

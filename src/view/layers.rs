@@ -150,6 +150,7 @@ fn reasons(frame: &mut Frame, area: Rect, app: &Desk, what: ReasonFor) {
     let name = t.tube(tube).map_or(String::new(), |x| clean(&t.name(x)));
     let mut lines: Vec<Line> = Reason::MENU
         .iter()
+        .filter(|(_, r)| what.may_be(*r))
         .map(|(d, r)| Line::from(format!("{d}  {r}")))
         .collect();
     lines.push(Line::styled("0  leave it", style::quiet()));
