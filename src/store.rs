@@ -42,6 +42,15 @@ pub struct Opened {
     pub access: Access,
 }
 
+impl Opened {
+    /// What is to be said of a file that was changed; nothing of one that is as it was written.
+    pub fn changed_in_words(&self) -> Option<String> {
+        let list: Vec<String> = self.changed.iter().map(ToString::to_string).collect();
+        let said = format!("changed outside rackside: entries {}", list.join(", "));
+        (!list.is_empty()).then_some(said)
+    }
+}
+
 /// Whether a notebook may be written.
 #[derive(Debug)]
 pub enum Access {

@@ -326,19 +326,19 @@ pub const LAB: &[Spec] = &[
     ),
     field(
         "tube CV",
-        "",
+        "numbers.cv_prior.centre",
         Kind::Text,
         "what the lab knows, e.g. 6 %; empty leaves it to the readings alone",
     ),
     field(
         "its factor",
-        "",
+        "numbers.cv_prior.sd_ln",
         Kind::Text,
         "sd of ln CV: 0.7 is a factor of two either way",
     ),
     field(
         "dilution error",
-        "",
+        "numbers.dilution_error",
         Kind::Text,
         "pipetting error of one dilution step, e.g. 2 %",
     ),

@@ -154,14 +154,9 @@ fn new(file: &Path, from: &Path, named: Option<String>) -> Result<(), Failure> {
 }
 
 /// Says on stderr that a file was changed.
-fn say_changed(path: &Path, changed: &[u32]) {
-    if !changed.is_empty() {
-        let list: Vec<String> = changed.iter().map(ToString::to_string).collect();
-        out::talk(&format!(
-            "{}: changed outside rackside: entries {}",
-            path.display(),
-            list.join(", ")
-        ));
+fn say_changed(path: &Path, opened: &store::Opened) {
+    if let Some(said) = opened.changed_in_words() {
+        out::talk(&format!("{}: {said}", path.display()));
     }
 }
 
@@ -184,7 +179,7 @@ fn sit(path: &Path, sitting: Sitting) -> Result<(), Failure> {
     let lab = lab();
     let who = operator(sitting.operator, &lab.operator);
     let (opened, notices) = shell::open(path, &who)?;
-    say_changed(path, &opened.changed);
+    say_changed(path, &opened);
     let look = look(sitting.ascii, &lab);
     printed(shell::sit(
         First::Titration(Box::new(opened), notices),
@@ -270,7 +265,7 @@ fn take(
             since,
         },
     )?;
-    say_changed(path, &opened.changed);
+    say_changed(path, &opened);
     let counts = table::readings(&text, &name, opened.notebook.titration(), recount)?;
     let n = counts.len();
     let entry = opened
@@ -315,7 +310,7 @@ fn page(opened: &store::Opened, format: Format, ascii: bool) -> Result<String, F
 
 fn summary(path: &Path, format: Format, ascii: bool) -> Result<(), Failure> {
     let opened = store::open(path)?;
-    say_changed(path, &opened.changed);
+    say_changed(path, &opened);
     out::result(&page(&opened, format, ascii)?)
 }
 
@@ -336,7 +331,7 @@ fn check(path: &Path) -> Result<ExitCode, Failure> {
     if opened.changed.is_empty() {
         return Ok(ExitCode::SUCCESS);
     }
-    say_changed(path, &opened.changed);
+    say_changed(path, &opened);
     Ok(ExitCode::from(Failure::DATA))
 }
 

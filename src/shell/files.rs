@@ -51,13 +51,7 @@ pub fn open(path: &Path, who: &str) -> Result<(store::Opened, Vec<String>), Stor
         ),
         Err(e) => return Err(e),
     };
-    if !opened.changed.is_empty() {
-        let list: Vec<String> = opened.changed.iter().map(ToString::to_string).collect();
-        notices.push(format!(
-            "changed outside rackside: entries {}",
-            list.join(", ")
-        ));
-    }
+    notices.extend(opened.changed_in_words());
     Ok((opened, notices))
 }
 

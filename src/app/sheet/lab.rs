@@ -4,7 +4,7 @@ use super::super::fields::{self, GLYPHS, MARKS};
 use super::super::form::{Did, Form};
 use super::super::keys::Key;
 use super::Errors;
-use super::read::{Reader, prior, share};
+use super::read::{Reader, numbers};
 use super::write::{cv_fields, follow_mark};
 use crate::assay::{Lab, PlotGlyphs};
 use crate::units::Mark;
@@ -46,31 +46,18 @@ pub(in crate::app) fn lab_key(form: &mut Form, key: Key) -> Did {
 pub(in crate::app) fn read_lab(form: &Form) -> Result<Lab, Errors> {
     let mark = mark_of(form);
     let mut r = Reader::new(form, mark);
-    let cv_prior = prior(&mut r);
-    let dilution_error = r
-        .maybe("dilution error")
-        .unwrap_or(Lab::default().dilution_error);
+    let numbers = numbers(&mut r);
     let glyphs = [PlotGlyphs::Automatic, PlotGlyphs::Fine, PlotGlyphs::Plain]
         [r.choice("plot characters", &GLYPHS)];
-    if let Some(p) = cv_prior
-        && !(p.centre > 0.0 && p.centre <= 1.0)
-    {
-        r.wrong("tube CV", "more than 0 and at most 100 %");
-    }
-    if let Some(p) = cv_prior
-        && !(p.sd_ln > 0.0 && p.sd_ln <= 10.0)
-    {
-        r.wrong("its factor", "more than 0 and at most 10");
-    }
-    if !(0.0..=0.5).contains(&share(&dilution_error)) {
-        r.wrong("dilution error", "0 to 50 %");
+    if let Err(e) = numbers.check(mark) {
+        r.wrong(&e.field, e.what);
     }
     let lab = Lab {
         operator: r.text("operator"),
         counter: r.text("counter"),
         mark,
-        cv_prior,
-        dilution_error,
+        cv_prior: numbers.cv_prior,
+        dilution_error: numbers.dilution_error,
         glyphs,
     };
     if r.errors.is_empty() {

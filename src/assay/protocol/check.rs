@@ -1,8 +1,8 @@
 //! Whether a protocol is one that a titration can have.
 
 use super::super::reading::MOST_MINUTES;
-use super::{Protocol, ReceptorAmount, Unlabelled};
-use crate::units::{Amount, Dimension, Mark};
+use super::{Numbers, Protocol, ReceptorAmount, Unlabelled};
+use crate::units::{Amount, Dimension, Mark, short};
 
 /// A field of a protocol that cannot be as it is.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -141,36 +141,7 @@ impl Protocol {
                 "more than zero; write Unknown where it is not known",
             )?,
         }
-        let s_d = &self.numbers.dilution_error;
-        checks.marked("numbers.dilution_error", s_d)?;
-        if !(0.0..=0.5).contains(&s_d.base()) {
-            return Err(ProtocolError::new(
-                "numbers.dilution_error",
-                format!("{s_d}: allowed is 0 to 50 %"),
-            ));
-        }
-        if let Some(p) = self.numbers.cv_prior {
-            if !(p.centre > 0.0 && p.centre <= 1.0) {
-                return Err(ProtocolError::new(
-                    "numbers.cv_prior.centre",
-                    format!("{}: allowed is more than 0 and at most 1", p.centre),
-                ));
-            }
-            if !(p.sd_ln > 0.0 && p.sd_ln <= 10.0) {
-                return Err(ProtocolError::new(
-                    "numbers.cv_prior.sd_ln",
-                    format!("{}: allowed is more than 0 and at most 10", p.sd_ln),
-                ));
-            }
-        }
-        let c = self.numbers.confidence;
-        if !(0.5..=0.999).contains(&c) {
-            return Err(ProtocolError::new(
-                "numbers.confidence",
-                format!("{c}: allowed is 0.5 to 0.999"),
-            ));
-        }
-        Ok(())
+        self.numbers.check(mark)
     }
 
     fn check_texts(&self) -> Result<(), ProtocolError> {
@@ -204,6 +175,48 @@ impl Protocol {
         }
         if self.title.trim().is_empty() {
             return Err(ProtocolError::new("title", "empty: a titration has a name"));
+        }
+        Ok(())
+    }
+}
+
+impl Numbers {
+    /// Whether what the fit is told is within its limits, for a protocol and for a lab's settings alike.
+    ///
+    /// # Errors
+    /// The first field at fault, by its path in a protocol.
+    pub fn check(&self, mark: Mark) -> Result<(), ProtocolError> {
+        let s_d = &self.dilution_error;
+        Checks { mark }.marked("numbers.dilution_error", s_d)?;
+        if !(0.0..=0.5).contains(&s_d.base()) {
+            return Err(ProtocolError::new(
+                "numbers.dilution_error",
+                format!("{s_d}: allowed is 0 to 50 %"),
+            ));
+        }
+        if let Some(p) = self.cv_prior {
+            if !(p.centre > 0.0 && p.centre <= 1.0) {
+                return Err(ProtocolError::new(
+                    "numbers.cv_prior.centre",
+                    format!(
+                        "{} %: allowed is more than 0 and at most 100 %",
+                        short(100.0 * p.centre, 6)
+                    ),
+                ));
+            }
+            if !(p.sd_ln > 0.0 && p.sd_ln <= 10.0) {
+                return Err(ProtocolError::new(
+                    "numbers.cv_prior.sd_ln",
+                    format!("{}: allowed is more than 0 and at most 10", p.sd_ln),
+                ));
+            }
+        }
+        let c = self.confidence;
+        if !(0.5..=0.999).contains(&c) {
+            return Err(ProtocolError::new(
+                "numbers.confidence",
+                format!("{c}: allowed is 0.5 to 0.999"),
+            ));
         }
         Ok(())
     }
