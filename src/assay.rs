@@ -7,6 +7,7 @@ mod amounts;
 mod described;
 mod lab;
 mod ladder;
+mod model;
 mod protocol;
 mod rack;
 mod reading;
@@ -19,10 +20,11 @@ pub use amounts::{
 pub use described::FieldLine;
 pub use lab::{Lab, PlotGlyphs};
 pub use ladder::{Dilution, Except, Ladder, LadderError, Levels, Sheet, SheetError};
+pub use model::Model;
 pub use protocol::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Fields, Incubation, Ligand,
-    Nonspecific, Numbers, Protocol, ProtocolError, Receptor, ReceptorAmount, Separation, SitesUnit,
-    Sticks, Unlabelled,
+    Nonspecific, Numbers, Protocol, ProtocolError, Receptor, ReceptorAmount, ScaleErrors,
+    Separation, SitesUnit, Sticks, Unlabelled,
 };
 pub use rack::{
     Kept, Level, LevelNo, Loss, Made, Note, Role, Titration, Tube, TubeNo, replicate_letter,

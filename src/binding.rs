@@ -5,10 +5,27 @@
 
 mod balance;
 mod exact;
+mod hill;
+mod law;
 mod one_class;
+mod two_classes;
 
 pub use balance::{Block, Bound, Stuck, bound};
+pub use hill::Hill;
+pub use law::Law;
 pub use one_class::OneClass;
+pub use two_classes::TwoClasses;
+
+/// What a parameter of an isotherm is, and so where it may lie.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Kind {
+    /// A concentration at which half of some sites are taken, in nM.
+    Constant,
+    /// A concentration of sites, in nM.
+    Sites,
+    /// An exponent, dimensionless.
+    Exponent,
+}
 
 /// A law of specific binding `S(F)` in nM, with exact derivatives.
 pub trait Isotherm: Copy {
@@ -16,8 +33,10 @@ pub trait Isotherm: Copy {
     const DIM: usize;
     /// What the parameters are called, in order.
     const NAMES: &'static [&'static str];
+    /// What each of them is.
+    const KINDS: &'static [Kind];
 
-    /// From the natural logarithms of its parameters (each in nM).
+    /// From the natural logarithms of its parameters.
     fn from_ln(theta: &[f64]) -> Self;
 
     /// Specific binding at a free concentration, both in nM.
@@ -26,7 +45,7 @@ pub trait Isotherm: Copy {
     /// `dS/dF`, dimensionless.
     fn slope(&self, free: f64) -> f64;
 
-    /// `dS / d ln p` for each parameter, in nM.
+    /// `dS / d ln p` for each parameter at a fixed free concentration, in nM.
     fn by_ln(&self, free: f64, out: &mut [f64]);
 
     /// The free concentration that solves `a F + S(F) = total`, in nM.
@@ -36,4 +55,7 @@ pub trait Isotherm: Copy {
     /// fixed free concentration makes it: `factor = 1 + C/Ki` (Cheng & Prusoff 1973, Biochem
     /// Pharmacol 22:3099; from memory).
     fn blocked(&self, factor: f64) -> Self;
+
+    /// As one of the isotherms that can be fitted.
+    fn law(self) -> Law;
 }

@@ -56,6 +56,14 @@ impl Protocol {
                 short(p.sd_ln, 6)
             ),
         };
+        let scale: Vec<String> = self
+            .numbers
+            .scale_errors
+            .all()
+            .into_iter()
+            .filter_map(|(name, e)| e.map(|e| format!("{name} {e}")))
+            .collect();
+        let scale = scale.join(", ");
         let sites = match self.display.sites {
             SitesUnit::PerAmount => "by the amount of receptor preparation",
             SitesUnit::InTube => "in the tube",
@@ -106,6 +114,13 @@ impl Protocol {
             (
                 "confidence",
                 format!("{} %", short(100.0 * self.numbers.confidence, 6)),
+            ),
+            ("scale errors", scale),
+            (
+                "model shown",
+                self.numbers
+                    .model
+                    .map_or(String::new(), |m| m.words().into()),
             ),
             (
                 "concentrations in",

@@ -1,9 +1,13 @@
 //! How a titration was done, as far as a record or a number depends on it.
 
 mod check;
+mod scale;
 
+use check::Checks;
 pub use check::ProtocolError;
+pub use scale::ScaleErrors;
 
+use super::model::Model;
 use crate::units::{
     Amount, Cell, DegreeCelsius, DpmPerFmol, Mark, MilliGram, MilliLitre, Minute, NanoMolar, Share,
 };
@@ -278,6 +282,12 @@ pub struct Numbers {
     /// The confidence level of intervals.
     #[serde(default = "ninety_five")]
     pub confidence: f64,
+    /// What is known of the errors that all tubes share.
+    #[serde(default, skip_serializing_if = "ScaleErrors::none")]
+    pub scale_errors: ScaleErrors,
+    /// The law of binding that somebody chose to see; `None` where nobody did.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub model: Option<Model>,
 }
 
 /// What the lab knows of its tube-to-tube CV: `ln cv` is normal about `ln centre`.
@@ -316,6 +326,8 @@ impl Default for Numbers {
             cv_prior: lab_cv(),
             dilution_error: two_percent(),
             confidence: ninety_five(),
+            scale_errors: ScaleErrors::default(),
+            model: None,
         }
     }
 }

@@ -1,7 +1,7 @@
 //! One class of sites.
 
-use super::Isotherm;
 use super::exact::{two_product, two_sum};
+use super::{Isotherm, Kind, Law};
 
 /// One class of independent sites: `S = R F / (Kd + F)`, the law of mass action for one site.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -15,6 +15,7 @@ pub struct OneClass {
 impl Isotherm for OneClass {
     const DIM: usize = 2;
     const NAMES: &'static [&'static str] = &["kd_nm", "sites_nm"];
+    const KINDS: &'static [Kind] = &[Kind::Constant, Kind::Sites];
 
     fn from_ln(theta: &[f64]) -> Self {
         OneClass {
@@ -66,5 +67,9 @@ impl Isotherm for OneClass {
             kd: self.kd * factor,
             sites: self.sites,
         }
+    }
+
+    fn law(self) -> Law {
+        Law::OneClass(self)
     }
 }

@@ -6,7 +6,6 @@ use super::{
 };
 use crate::analysis::Analysis;
 use crate::assay::{Role, Titration};
-use crate::binding::Isotherm;
 
 /// The isotherm of a titration for a plot of this many columns and rows.
 ///
@@ -86,10 +85,9 @@ pub fn isotherm(
         Scale::Log10 => Axis::log(free(), room),
     };
     let curves = fit.map(|f| {
-        let one = f.one_class();
         let at = |x: f64| {
             let nm = x / shown(1.0);
-            (x, shown(one.specific(nm)))
+            (x, shown(f.law.specific(nm)))
         };
         Curve {
             points: x.spread(4 * columns.max(8)).into_iter().map(at).collect(),

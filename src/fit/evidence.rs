@@ -39,6 +39,8 @@ pub enum RowOf {
     CvPrior,
     /// The dilution step that made the level in this column.
     Dilution(usize),
+    /// What is known of the error in this column, which all tubes share.
+    Scale(usize),
 }
 
 /// Rows of a linear least-squares problem `A d = y`, with `A'A` the expected information and `A'y`

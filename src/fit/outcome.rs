@@ -1,42 +1,15 @@
 //! What a rack says: estimates with their intervals, or what is still missing for any.
 
-use super::evidence::{Evidence, Limits};
-use super::profile::{End, ProfileCut, Profiles};
-use super::rack::{Columns, RackEvidence};
-use super::solver::{Ended, Solution, covariance, solve};
-use super::start;
-use crate::assay::{Role, Titration};
-use crate::binding::{Isotherm, OneClass};
+use super::missing::Missing;
+use super::profile::End;
+use crate::assay::{LevelNo, Model, Role, TubeNo};
+use crate::binding::Law;
 use nalgebra::DMatrix;
-use std::fmt;
-
-/// A law of binding that can be fitted.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Model {
-    /// One class of sites.
-    OneClass,
-}
-
-impl Model {
-    /// The name in a record.
-    pub fn id(self) -> &'static str {
-        match self {
-            Model::OneClass => "one_class",
-        }
-    }
-
-    /// The name in a sentence.
-    pub fn words(self) -> &'static str {
-        match self {
-            Model::OneClass => "one class",
-        }
-    }
-}
 
 /// One parameter, estimated on the ln scale.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Estimate {
-    /// Its name: `kd_nm`, `sites_nm`, `ns`, `background_cpm`.
+    /// Its name: that of a parameter of the isotherm, `ns`, or `background_cpm`.
     pub name: &'static str,
     /// The estimate.
     pub value: f64,
@@ -51,28 +24,73 @@ pub struct Estimate {
     pub high: End,
 }
 
+/// A tube beside what the fit expects of it.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct FittedTube {
+    /// Its vial number.
+    pub tube: TubeNo,
+    /// What it is for.
+    pub role: Role,
+    /// Its level.
+    pub level: LevelNo,
+    /// Gross counts, recounts added up.
+    pub counts: f64,
+    /// Gross counts expected.
+    pub expected: f64,
+    /// Their variance, of counting and between tubes.
+    pub variance: f64,
+    /// Whether the fit uses it; one that is flagged is only compared.
+    pub used: bool,
+}
+
+impl FittedTube {
+    /// Counts less expected, in standard deviations.
+    pub fn residual(&self) -> f64 {
+        (self.counts - self.expected) / self.variance.sqrt()
+    }
+}
+
+/// A place on a profile.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct ProfilePlace {
+    /// The value that the parameter is held at.
+    pub value: f64,
+    /// How much `-2 ln L` with its prior terms is above its lowest.
+    pub excess: f64,
+}
+
 /// A fitted model.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Fit {
     /// Which model.
     pub model: Model,
+    /// The isotherm as fitted.
+    pub law: Law,
     /// All parameters as fitted, in the columns of the rack's evidence.
     pub theta: Vec<f64>,
     /// Their covariance; zero for a parameter on a limit.
     pub cov: DMatrix<f64>,
     /// `-2 ln L` of the data alone.
     pub minus2lnl: f64,
-    /// The squares of the CV and dilution rows.
+    /// The squares of the CV, dilution and scale rows.
     pub prior_term: f64,
     /// Akaike's criterion with the correction for few data (Hurvich & Tsai 1989, Biometrika 76:297; from
     /// memory), `n` = tubes used + 1; `None` where there are too few tubes for it.
     pub aicc: Option<f64>,
     /// Tubes used, background not counted.
     pub tubes_used: usize,
+    /// How many parameters of the mean counts there are, background not counted.
+    pub mean_parameters: usize,
     /// The tube CV found, as a share.
     pub cv: f64,
-    /// Kd, sites, nonspecific binding, background.
+    /// The parameters of the isotherm, nonspecific binding, background.
     pub estimates: Vec<Estimate>,
+    /// The profile of the first parameter of the isotherm, lowest value first; empty where no interval was asked for.
+    pub profile: Vec<ProfilePlace>,
+    /// The cut on the profile that ends the intervals.
+    pub cut: f64,
+    /// Every tube with a reading beside what is expected of it.
+    pub tubes: Vec<FittedTube>,
 }
 
 impl Fit {
@@ -86,54 +104,22 @@ impl Fit {
         self.estimate(name).map_or(f64::NAN, |e| e.value)
     }
 
-    /// The isotherm as fitted, for one class of sites.
-    pub fn one_class(&self) -> OneClass {
-        OneClass {
-            kd: self.value("kd_nm"),
-            sites: self.value("sites_nm"),
-        }
+    /// What the fit minimises: `-2 ln L` of the data with what is known beforehand.
+    pub fn cost(&self) -> f64 {
+        self.minus2lnl + self.prior_term
     }
-}
 
-/// What is missing for a number to mean anything.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Missing {
-    /// No background vial has been counted.
-    Background,
-    /// Total tubes at fewer than three levels.
-    Levels {
-        /// At how many there are.
-        have: usize,
-    },
-    /// No nonspecific tube in the upper half of the ladder.
-    NonspecificAbove,
-    /// Too few tubes for the parameters.
-    Tubes {
-        /// How many there are.
-        have: usize,
-        /// How many are wanted.
-        want: usize,
-    },
-    /// No tube is above background.
-    NothingAboveBackground,
-    /// The readings cannot tell the parameters apart.
-    NotTellingApart,
-}
+    /// The parameters of the isotherm: all estimates but nonspecific binding and background.
+    pub fn of_isotherm(&self) -> &[Estimate] {
+        let n = self.estimates.len().saturating_sub(2);
+        &self.estimates[..n]
+    }
 
-impl fmt::Display for Missing {
-    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
-        match self {
-            Missing::Background => f.write_str("a counted background vial"),
-            Missing::Levels { have } => write!(f, "total tubes at 3 levels (now {have})"),
-            Missing::NonspecificAbove => {
-                f.write_str("a nonspecific tube in the upper half of the levels")
-            }
-            Missing::Tubes { have, want } => write!(f, "{want} tubes (now {have})"),
-            Missing::NothingAboveBackground => f.write_str("a tube clearly above background"),
-            Missing::NotTellingApart => {
-                f.write_str("readings that tell Kd, sites and nonspecific apart")
-            }
-        }
+    /// Whether every parameter of the isotherm has an interval with both ends.
+    pub fn closed(&self) -> bool {
+        self.of_isotherm()
+            .iter()
+            .all(|e| matches!((e.low, e.high), (End::At(_), End::At(_))))
     }
 }
 
@@ -156,226 +142,4 @@ impl Outcome {
             _ => None,
         }
     }
-}
-
-/// Parameters of the mean without the background, which has readings of its own.
-const MEAN_PARAMETERS: usize = 3;
-/// Parameters for AICc: Kd, sites, ns, b, cv.
-const COUNTED_PARAMETERS: usize = 5;
-/// How many starts are followed to the end.
-const POLISHED: usize = 3;
-/// How often a fit is taken up again from a better place met in a profile.
-const MOST_RESTARTS: usize = 3;
-/// The one-sided 5 % point of the normal distribution (NIST/SEMATECH e-Handbook of Statistical Methods, 1.3.6.7.1).
-const Z95: f64 = 1.644_853_6;
-
-/// Fits one class of sites to a titration; with `flags`, readings that are flagged are left out.
-///
-/// A pure function: the same titration gives the same bits. It always starts cold.
-pub fn fit_rack(titration: &Titration, flags: bool) -> Outcome {
-    let Some(evidence) = RackEvidence::<OneClass>::new(titration, flags) else {
-        return Outcome::TooEarly(nothing_yet(titration, flags));
-    };
-    let missing = missing(titration, &evidence);
-    if !missing.is_empty() {
-        return Outcome::TooEarly(missing);
-    }
-    let n = evidence.samples().len();
-    let Some(cut) = ProfileCut::new(n, MEAN_PARAMETERS, titration.protocol.numbers.confidence)
-    else {
-        return Outcome::NoConvergence;
-    };
-    let mut polished = global(&evidence).into_iter();
-    let Some(mut best) = polished.next() else {
-        return Outcome::NoConvergence;
-    };
-    let others = polished.as_slice();
-    for _ in 0..=MOST_RESTARTS {
-        if best.ended != Ended::Converged {
-            return Outcome::NoConvergence;
-        }
-        let Some(cov) = covariance(&evidence, &best) else {
-            return Outcome::TooEarly(vec![Missing::NotTellingApart]);
-        };
-        match estimates(&evidence, &best, others, &cov, cut) {
-            Ok(estimates) => {
-                return Outcome::Fitted(Box::new(described(&evidence, best, cov, estimates)));
-            }
-            Err(better) => best = solve(&evidence, &better, None),
-        }
-    }
-    Outcome::NoConvergence
-}
-
-/// The solutions from the best cold starts, best first.
-fn global(evidence: &RackEvidence<OneClass>) -> Vec<Solution> {
-    let mut starts: Vec<(f64, Vec<f64>)> = start::one_class(evidence)
-        .into_iter()
-        .map(|theta| (evidence.cost(&theta), theta))
-        .filter(|(cost, _)| cost.is_finite())
-        .collect();
-    starts.sort_by(|a, b| a.0.total_cmp(&b.0));
-    let mut polished: Vec<Solution> = starts
-        .iter()
-        .take(POLISHED)
-        .map(|(_, theta)| solve(evidence, theta, None))
-        .collect();
-    polished.sort_by(|a, b| {
-        let failed = |s: &Solution| s.ended != Ended::Converged;
-        failed(a).cmp(&failed(b)).then(a.cost.total_cmp(&b.cost))
-    });
-    polished
-}
-
-/// Estimates with intervals, or a better place to fit from.
-fn estimates(
-    evidence: &RackEvidence<OneClass>,
-    best: &Solution,
-    others: &[Solution],
-    cov: &DMatrix<f64>,
-    cut: ProfileCut,
-) -> Result<Vec<Estimate>, Vec<f64>> {
-    let at = Columns::of::<OneClass>();
-    let shown = at.background() + 1;
-    // Where Kd runs to the top of its search the other parameters run with it.
-    let mut profiles = Profiles::new(evidence, best, cov, cut).opened_by(0);
-    others.iter().for_each(|o| profiles.meet(o));
-    let se = |j: usize| (!best.at_limit[j]).then(|| cov[(j, j)].sqrt());
-    let end = |j: usize, upward: bool, profiles: &mut Profiles<_>| {
-        let limits = evidence.limits(j);
-        let within = Limits {
-            low: limits.low,
-            high: limits.high.min(best.theta[j] + WIDEST),
-        };
-        let found = profiles.end(j, upward, within);
-        found.better.map_or(Ok(found.end), Err)
-    };
-    let mut ends = Vec::new();
-    for j in 0..shown {
-        ends.push([end(j, false, &mut profiles)?, end(j, true, &mut profiles)?]);
-    }
-    // What later profiles met may lie beyond the ends of earlier ones.
-    for (j, pair) in ends.iter_mut().enumerate() {
-        for (found, upward) in pair.iter_mut().zip([false, true]) {
-            if profiles.contradict(j, upward, *found) {
-                *found = end(j, upward, &mut profiles)?;
-            }
-        }
-    }
-    let names = OneClass::NAMES
-        .iter()
-        .copied()
-        .chain(["ns", "background_cpm"]);
-    let described = names.zip(ends).enumerate().map(|(j, (name, [low, high]))| {
-        let limits = evidence.limits(j);
-        Estimate {
-            name,
-            value: best.theta[j].exp(),
-            se_ln: se(j),
-            at_floor: j != 0 && best.at_limit[j] && best.theta[j] <= limits.low,
-            low: low.map(f64::exp),
-            high: high.map(f64::exp),
-        }
-    });
-    Ok(described.collect())
-}
-
-/// The farthest an upper end is looked for, on the ln scale: a factor of 1e13, from any floor to any use.
-const WIDEST: f64 = 30.0;
-
-fn described(
-    evidence: &RackEvidence<OneClass>,
-    best: Solution,
-    cov: DMatrix<f64>,
-    estimates: Vec<Estimate>,
-) -> Fit {
-    let tubes_used = evidence.samples().len();
-    let minus2lnl = evidence.minus2lnl(&best.theta);
-    Fit {
-        model: Model::OneClass,
-        minus2lnl,
-        prior_term: evidence.prior_term(&best.theta),
-        aicc: aicc(minus2lnl, COUNTED_PARAMETERS, tubes_used + 1),
-        tubes_used,
-        cv: best.theta[Columns::of::<OneClass>().cv()].exp(),
-        theta: best.theta,
-        cov,
-        estimates,
-    }
-}
-
-/// `-2 ln L + 2 k + 2 k (k + 1) / (n - k - 1)`.
-fn aicc(minus2lnl: f64, k: usize, n: usize) -> Option<f64> {
-    let rest = n.checked_sub(k + 1).filter(|r| *r > 0)? as f64;
-    let k = k as f64;
-    Some(minus2lnl + 2.0 * k + 2.0 * k * (k + 1.0) / rest)
-}
-
-/// What is missing where there is no evidence at all.
-fn nothing_yet(titration: &Titration, flags: bool) -> Vec<Missing> {
-    let mut missing = Vec::new();
-    if crate::assay::background(titration, flags).is_none() {
-        missing.push(Missing::Background);
-    }
-    let samples: Vec<(Role, crate::assay::LevelNo)> = titration
-        .tubes
-        .iter()
-        .filter(|t| crate::assay::observed(titration, t.no, flags).is_some())
-        .filter_map(|t| t.level.map(|l| (t.role, l)))
-        .collect();
-    missing.extend(rack_missing(titration, &samples));
-    missing
-}
-
-/// What is missing of the rack's layout.
-fn rack_missing(titration: &Titration, samples: &[(Role, crate::assay::LevelNo)]) -> Vec<Missing> {
-    let mut missing = Vec::new();
-    // Two levels of one concentration say no more of a curve than one.
-    let mut levels: Vec<f64> = samples
-        .iter()
-        .filter(|s| s.0 == Role::Total)
-        .filter_map(|s| titration.level(s.1).map(|l| l.added.base()))
-        .collect();
-    levels.sort_by(f64::total_cmp);
-    levels.dedup();
-    if levels.len() < 3 {
-        missing.push(Missing::Levels { have: levels.len() });
-    }
-    let ladder = titration.levels_by_concentration();
-    let upper = &ladder[ladder.len() / 2..];
-    if !samples
-        .iter()
-        .any(|s| s.0 == Role::Nonspecific && upper.iter().any(|l| l.no == s.1))
-    {
-        missing.push(Missing::NonspecificAbove);
-    }
-    let want = MEAN_PARAMETERS + 2;
-    if samples.len() < want {
-        missing.push(Missing::Tubes {
-            have: samples.len(),
-            want,
-        });
-    }
-    missing
-}
-
-/// What is missing for a fit.
-fn missing(titration: &Titration, evidence: &RackEvidence<OneClass>) -> Vec<Missing> {
-    let samples: Vec<_> = evidence
-        .samples()
-        .iter()
-        .map(|s| (s.role, s.level))
-        .collect();
-    let mut missing = rack_missing(titration, &samples);
-    let (n_b, t_b) = evidence.background();
-    let b = n_b / t_b;
-    // Currie's critical level of a net count (1968, Anal Chem 40:586; formula from memory).
-    let above = evidence.samples().iter().any(|s| {
-        let net = s.counts - s.minutes * b;
-        net > Z95 * (b * s.minutes * (1.0 + s.minutes / t_b)).sqrt()
-    });
-    if !above {
-        missing.push(Missing::NothingAboveBackground);
-    }
-    missing
 }

@@ -15,6 +15,8 @@ pub enum End {
     Open,
     /// A refit on the way did not converge.
     Failed,
+    /// Nobody asked for it.
+    Unasked,
 }
 
 impl End {
@@ -22,7 +24,7 @@ impl End {
     pub fn value(self) -> Option<f64> {
         match self {
             End::At(v) => Some(v),
-            End::Open | End::Failed => None,
+            End::Open | End::Failed | End::Unasked => None,
         }
     }
 
@@ -111,8 +113,10 @@ pub struct Profiles<'e, E> {
     best: &'e Solution,
     cov: &'e DMatrix<f64>,
     cut: ProfileCut,
-    opens: Option<usize>,
+    opens: Vec<usize>,
+    pairs: Vec<(usize, usize)>,
     met: Vec<Met>,
+    trace: Vec<(usize, f64, f64)>,
 }
 
 /// A place under the cut.
@@ -143,16 +147,62 @@ impl<'e, E: Evidence> Profiles<'e, E> {
             best,
             cov,
             cut,
-            opens: None,
+            opens: Vec::new(),
+            pairs: Vec::new(),
             met: Vec::new(),
+            trace: Vec::new(),
         }
     }
 
     /// Counts an end as open if the cut is reached only with parameter `k` resting on the top of its own search: then
     /// what stopped the profile is the edge of the search and not the readings.
     pub fn opened_by(mut self, k: usize) -> Self {
-        self.opens = Some(k);
+        self.opens.push(k);
         self
+    }
+
+    /// Counts an end as open if one of two parameters that could change places reaches the other on the way: beyond
+    /// that it is the other one.
+    pub fn opened_by_meeting(mut self, j: usize, k: usize) -> Self {
+        self.pairs.push((j, k));
+        self
+    }
+
+    /// The places met on the profile of parameter `j`, lowest value first: its value, and the excess of the cost
+    /// there over the best.
+    pub fn trace(&self, j: usize) -> Vec<(f64, f64)> {
+        let of_j = self.trace.iter().filter(|t| t.0 == j);
+        let mut places: Vec<(f64, f64)> = of_j.map(|t| (t.1, t.2)).collect();
+        places.sort_by(|a, b| a.0.total_cmp(&b.0));
+        places.dedup_by(|a, b| (a.0 - b.0).abs() <= 1e-9);
+        places
+    }
+
+    /// Looks at the profile of parameter `j` at more places, `distances` from the estimate (with their sign), each refit
+    /// started from the one before.
+    pub fn look(&mut self, j: usize, distances: &[f64]) {
+        let start = self.best.theta[j];
+        let variance = self.cov[(j, j)];
+        let mut warm = self.best.theta.clone();
+        let mut at = 0.0;
+        for d in distances {
+            if variance > 0.0 {
+                let along = self.cov.column(j);
+                let by = (d - at) / variance;
+                warm.iter_mut().zip(&along).for_each(|(w, c)| *w += by * c);
+            }
+            warm[j] = start + d;
+            let done = solve(self.evidence, &warm, Some(j));
+            if done.ended == Ended::Converged {
+                let excess = self.excess(done.cost).max(0.0);
+                self.trace.push((j, start + d, excess));
+                warm = done.theta;
+                at = *d;
+            } else {
+                warm.clone_from(&self.best.theta);
+                at = 0.0;
+            }
+        }
     }
 
     /// Takes another solution of the same evidence into account, where it is under the cut.
@@ -249,8 +299,8 @@ impl<E: Evidence> Walk<'_, '_, E> {
                 continue;
             }
             let p = &self.profiles;
-            let edge = |k: usize| k != self.j && end.theta[k] >= p.evidence.limits(k).high;
-            return Ok(if p.opens.is_some_and(edge) {
+            let edge = |k: &usize| *k != self.j && end.theta[*k] >= p.evidence.limits(*k).high;
+            return Ok(if p.opens.iter().any(edge) || self.met_other(&end.theta) {
                 End::Open.into()
             } else {
                 End::At(self.start + self.sign * end.distance).into()
@@ -279,7 +329,7 @@ impl<E: Evidence> Walk<'_, '_, E> {
                     continue;
                 }
             }
-            if distance >= self.far {
+            if distance >= self.far || self.met_other(&refit.theta) {
                 return Err(End::Open.into());
             }
             // The root is nearly straight in the parameter: aim a little beyond the cut, and at most three times as far.
@@ -288,6 +338,16 @@ impl<E: Evidence> Walk<'_, '_, E> {
             step = self.stride(pace);
         }
         Err(End::Open.into())
+    }
+
+    /// Whether the pinned parameter has reached the one that it could change places with.
+    fn met_other(&self, theta: &[f64]) -> bool {
+        let best = &self.profiles.best.theta;
+        let meet = |(j, k): &(usize, usize)| {
+            (self.j == *j || self.j == *k)
+                && (theta[*j] - theta[*k]) * (best[*j] - best[*k]).signum() <= 0.0
+        };
+        self.profiles.pairs.iter().any(meet)
     }
 
     /// How far to go next where the root rises at `pace`.
@@ -386,7 +446,7 @@ impl<E: Evidence> Walk<'_, '_, E> {
     }
 
     /// The best refit at a distance, started from the last one carried on.
-    fn refit(&self, distance: f64) -> Result<Refit, ProfileEnd> {
+    fn refit(&mut self, distance: f64) -> Result<Refit, ProfileEnd> {
         let mut guess = self.warm.clone();
         if let Some(slope) = &self.slope {
             let by = distance - self.inner.0;
@@ -398,12 +458,16 @@ impl<E: Evidence> Walk<'_, '_, E> {
         } else {
             self.solved(distance, self.warm.clone())
         };
-        if done.ended == Ended::Converged {
+        let refit = if done.ended == Ended::Converged {
             self.judged(distance, done)
         } else {
             self.elsewhere(distance)?
                 .ok_or_else(|| ProfileEnd::from(End::Failed))
-        }
+        }?;
+        let excess = refit.root * refit.root;
+        let place = (self.j, self.pinned(distance), excess);
+        self.profiles.trace.push(place);
+        Ok(refit)
     }
 
     /// The refit from the best of the places met before this walk.

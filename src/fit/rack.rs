@@ -1,14 +1,12 @@
 //! A rack of tubes as evidence: expected counts, their variance, and the rows they give.
 
+mod lay;
+
 use super::evidence::{Evidence, Limits, RowOf, Rows, Scale};
-use crate::assay::{
-    Level, LevelNo, Made, Role, Sticks, Titration, TubeNo, Unlabelled, background, counts_per_nm,
-    observed,
-};
+use crate::assay::{LevelNo, Role, Sticks, Titration, TubeNo, background, counts_per_nm, observed};
 use crate::binding::{Block, Isotherm, Stuck, bound};
 use statrs::function::gamma::ln_gamma;
-use std::collections::BTreeMap;
-use std::f64::consts::TAU;
+use std::f64::consts::{FRAC_1_SQRT_2, TAU};
 use std::marker::PhantomData;
 
 /// One tube that informs the fit.
@@ -64,20 +62,55 @@ impl Columns {
     }
 }
 
+/// The column of a level's dilution error.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub struct DilutionColumn {
+    /// The level.
+    pub level: LevelNo,
+    /// Its column.
+    pub column: usize,
+    /// The column of the level that it was diluted from; none where it was made from stock.
+    pub from: Option<usize>,
+}
+
 /// The step that made a level's solution.
 #[derive(Debug, Clone, Copy, PartialEq)]
 struct Link {
+    level: LevelNo,
     column: usize,
     from: Option<usize>,
 }
 
+/// An error that all tubes share: a relative one of the label added, of the counts for 1 nM, or of both.
+#[derive(Debug, Clone, Copy, PartialEq)]
+struct ScaleColumn {
+    column: usize,
+    on_added: f64,
+    on_counts: f64,
+    sd: f64,
+}
+
+/// What holds for all tubes at one set of parameters.
+struct Common<I> {
+    isotherm: I,
+    ns: f64,
+    /// cpm.
+    background: f64,
+    cv2: f64,
+    /// What scale errors add to the logarithm of the label added.
+    ln_added: f64,
+    /// Counts per minute for 1 nM.
+    per_nm: f64,
+}
+
 /// A rack as evidence about an isotherm, nonspecific binding, background, CV and dilution errors.
 ///
-/// Parameters are logarithms, but for the dilution errors, which are logarithms already: a level
-/// holds `LT exp(d)`.
+/// Parameters are logarithms, but for the dilution and scale errors, which are logarithms already: a level
+/// holds `LT exp(d)`, a shared error `e` of the stock makes it `LT exp(d + e)`.
 #[derive(Debug, Clone)]
 pub struct RackEvidence<I> {
     samples: Vec<Sample>,
+    left_out: Vec<Sample>,
     background: (f64, f64),
     ln_gamma_background: f64,
     per_nm: f64,
@@ -85,6 +118,7 @@ pub struct RackEvidence<I> {
     cv_prior: Option<(f64, f64)>,
     s_d: f64,
     links: Vec<Link>,
+    scales: Vec<ScaleColumn>,
     limits: Vec<Limits>,
     added: (f64, f64),
     isotherm: PhantomData<I>,
@@ -92,13 +126,8 @@ pub struct RackEvidence<I> {
 
 /// The smallest nonspecific binding told from none.
 pub(super) const NS_FLOOR: f64 = 1e-9;
-/// The smallest tube CV told from none: a hundredth of a percent is below what any pipette does.
-const CV_FLOOR: f64 = 1e-4;
 /// The fewest counts told from none, in background and in what sites bring.
 const COUNTS_FLOOR: f64 = 0.05;
-/// How far beyond the levels a dissociation constant is searched.
-const KD_SEARCH: f64 = 1000.0;
-
 impl<I: Isotherm> RackEvidence<I> {
     /// The evidence in a titration; with `flags`, readings that are flagged are left out.
     ///
@@ -106,47 +135,24 @@ impl<I: Isotherm> RackEvidence<I> {
     pub fn new(titration: &Titration, flags: bool) -> Option<Self> {
         let p = &titration.protocol;
         let blank = background(titration, flags)?;
-        let levels: BTreeMap<LevelNo, &Level> =
-            titration.levels.iter().map(|l| (l.no, l)).collect();
-        let mut samples = Vec::new();
-        for t in titration
-            .tubes
-            .iter()
-            .filter(|t| t.role != Role::Background)
-        {
-            let (Some(no), Some(o)) = (t.level, observed(titration, t.no, flags)) else {
-                continue;
-            };
-            let Some(level) = levels.get(&no) else {
-                continue;
-            };
-            let block = if t.role == Role::Nonspecific {
-                block(titration)
-            } else {
-                Block::None
-            };
-            samples.push(Sample {
-                tube: t.no,
-                role: t.role,
-                level: no,
-                added: level.added.base(),
-                counts: o.counts,
-                minutes: o.minutes,
-                block,
-                column: None,
-            });
-        }
+        let mut samples = lay::samples(titration, |no| observed(titration, no, flags));
+        let mut left_out = lay::samples(titration, |no| {
+            let used = observed(titration, no, flags).is_some();
+            observed(titration, no, false).filter(|_| !used)
+        });
         let low = samples.iter().map(|s| s.added).reduce(f64::min)?;
         let high = samples.iter().map(|s| s.added).reduce(f64::max)?;
+        let first = Columns::of::<I>().dilutions();
         let s_d = p.numbers.dilution_error.base();
         let links = if s_d > 0.0 {
-            links(&levels, &mut samples, Columns::of::<I>().dilutions())
+            lay::links(titration, &mut samples, &mut left_out, first)
         } else {
             Vec::new()
         };
+        let scales = lay::scales(&p.numbers.scale_errors, first + links.len());
         let per_nm = counts_per_nm(p);
         let longest = samples.iter().map(|s| s.minutes).fold(0.0, f64::max);
-        let limits = limits::<I>(
+        let limits = lay::limits::<I>(
             low,
             high,
             COUNTS_FLOOR / (longest * per_nm),
@@ -154,6 +160,7 @@ impl<I: Isotherm> RackEvidence<I> {
         );
         Some(RackEvidence {
             samples,
+            left_out,
             background: (blank.counts, blank.minutes),
             ln_gamma_background: ln_gamma(blank.counts + 1.0),
             per_nm,
@@ -164,15 +171,41 @@ impl<I: Isotherm> RackEvidence<I> {
             cv_prior: p.numbers.cv_prior.map(|c| (c.centre.ln(), c.sd_ln)),
             s_d,
             links,
+            scales,
             limits,
             added: (low, high),
             isotherm: PhantomData,
         })
     }
 
+    /// The same evidence without one of its tubes. Columns stay where they are.
+    pub fn without_sample(&self, i: usize) -> Self {
+        let mut rest = self.clone();
+        if i < rest.samples.len() {
+            rest.samples.remove(i);
+        }
+        rest
+    }
+
     /// The tubes that inform the fit.
     pub fn samples(&self) -> &[Sample] {
         &self.samples
+    }
+
+    /// Tubes with readings that are all flagged: no evidence, and still something to compare with the fit.
+    pub fn left_out(&self) -> &[Sample] {
+        &self.left_out
+    }
+
+    /// The standard deviation of one dilution step, and the columns of the levels' errors with the level that each
+    /// is of.
+    pub fn dilution_columns(&self) -> (f64, Vec<DilutionColumn>) {
+        let columns = self.links.iter().map(|l| DilutionColumn {
+            level: l.level,
+            column: l.column,
+            from: l.from,
+        });
+        (self.s_d, columns.collect())
     }
 
     /// The lowest and the highest label added, in nM.
@@ -198,61 +231,72 @@ impl<I: Isotherm> RackEvidence<I> {
             })
     }
 
+    /// What holds for all tubes at `theta`.
+    fn common(&self, theta: &[f64]) -> Common<I> {
+        let at = Columns::of::<I>();
+        let (mut on_added, mut on_counts) = (0.0, 0.0);
+        for s in &self.scales {
+            on_added += s.on_added * theta[s.column];
+            on_counts += s.on_counts * theta[s.column];
+        }
+        Common {
+            isotherm: I::from_ln(theta),
+            ns: theta[at.ns()].exp(),
+            background: theta[at.background()].exp(),
+            cv2: (2.0 * theta[at.cv()]).exp(),
+            ln_added: on_added,
+            per_nm: self.per_nm * on_counts.exp(),
+        }
+    }
+
     /// Expected counts of a sample without background, and derivatives of it: `by` gets those by the isotherm's
-    /// parameters; returned are the value and the derivatives by `ln ns` and by the dilution error.
-    fn signal(&self, s: &Sample, isotherm: &I, theta: &[f64], by: &mut [f64]) -> (f64, f64, f64) {
-        let d = s.column.map_or(0.0, |c| theta[c]);
-        let ns = theta[I::DIM].exp();
-        let b = bound(isotherm, ns, self.stuck, s.added * d.exp(), s.block, by);
-        let k = s.minutes * self.per_nm;
+    /// parameters; returned are the value and the derivatives by `ln ns` and by the logarithm of the label added.
+    fn signal(&self, s: &Sample, c: &Common<I>, theta: &[f64], by: &mut [f64]) -> (f64, f64, f64) {
+        let d = c.ln_added + s.column.map_or(0.0, |j| theta[j]);
+        let added = if d == 0.0 { s.added } else { s.added * d.exp() };
+        let b = bound(&c.isotherm, c.ns, self.stuck, added, s.block, by);
+        let k = s.minutes * c.per_nm;
         by.iter_mut().for_each(|v| *v *= k);
         (k * b.value, k * b.by_ln_ns, k * b.by_ln_added)
     }
 
     /// `-2 ln L` of the data alone: tubes normal, background Poisson.
     pub fn minus2lnl(&self, theta: &[f64]) -> f64 {
-        let at = Columns::of::<I>();
-        let isotherm = I::from_ln(theta);
-        let (b, cv2) = (theta[at.background()].exp(), (2.0 * theta[at.cv()]).exp());
+        let c = self.common(theta);
         let mut by = [0.0; MOST_DIM];
         let mut sum = 0.0;
         for s in &self.samples {
-            let (signal, _, _) = self.signal(s, &isotherm, theta, &mut by[..I::DIM]);
-            let mu = s.minutes * b + signal;
-            let v = mu + cv2 * signal * signal;
+            let (signal, _, _) = self.signal(s, &c, theta, &mut by[..I::DIM]);
+            let mu = s.minutes * c.background + signal;
+            let v = mu + c.cv2 * signal * signal;
             sum += (s.counts - mu).powi(2) / v + (TAU * v).ln();
         }
-        let (n_b, t_b) = self.background;
-        let expected = t_b * b;
-        sum + 2.0 * (expected - n_b * expected.ln() + self.ln_gamma_background)
+        sum + self.minus2lnl_background(c.background)
     }
 
-    /// The squares of the CV and dilution rows.
+    /// The part of the background vials in it.
+    fn minus2lnl_background(&self, cpm: f64) -> f64 {
+        let (n_b, t_b) = self.background;
+        let expected = t_b * cpm;
+        2.0 * (expected - n_b * expected.ln() + self.ln_gamma_background)
+    }
+
+    /// The squares of the rows of what is known beforehand: CV, dilution steps, scale errors.
     pub fn prior_term(&self, theta: &[f64]) -> f64 {
         let cv = self.cv_prior.map_or(0.0, |(centre, sd)| {
             ((theta[Columns::of::<I>().cv()] - centre) / sd).powi(2)
         });
-        cv + self
-            .links
-            .iter()
-            .map(|l| (step(l, theta) / self.s_d).powi(2))
-            .sum::<f64>()
+        let steps = self.links.iter().map(|l| step(l, theta) / self.s_d);
+        let scales = self.scales.iter().map(|s| theta[s.column] / s.sd);
+        cv + steps.chain(scales).map(|z| z * z).sum::<f64>()
     }
 
-    /// The expected counts of every sample, with its variance.
-    pub fn expected(&self, theta: &[f64]) -> Vec<(f64, f64)> {
-        let at = Columns::of::<I>();
-        let isotherm = I::from_ln(theta);
-        let (b, cv2) = (theta[at.background()].exp(), (2.0 * theta[at.cv()]).exp());
-        let mut by = [0.0; MOST_DIM];
-        self.samples
-            .iter()
-            .map(|s| {
-                let (signal, _, _) = self.signal(s, &isotherm, theta, &mut by[..I::DIM]);
-                let mu = s.minutes * b + signal;
-                (mu, mu + cv2 * signal * signal)
-            })
-            .collect()
+    /// The expected counts of a tube of this rack at `theta`, and their variance.
+    pub fn expected(&self, sample: &Sample, theta: &[f64]) -> (f64, f64) {
+        let c = self.common(theta);
+        let (signal, _, _) = self.signal(sample, &c, theta, &mut [0.0; MOST_DIM][..I::DIM]);
+        let mu = sample.minutes * c.background + signal;
+        (mu, mu + c.cv2 * signal * signal)
     }
 }
 
@@ -264,75 +308,9 @@ fn step(l: &Link, theta: &[f64]) -> f64 {
     theta[l.column] - l.from.map_or(0.0, |c| theta[c])
 }
 
-/// What blocks the sites of a nonspecific tube.
-fn block(titration: &Titration) -> Block {
-    let ns = &titration.protocol.nonspecific;
-    match &ns.unlabelled {
-        Unlabelled::SameLigand => Block::SameLigand(ns.concentration.base()),
-        Unlabelled::Other { ki: Some(ki), .. } => {
-            Block::Competitor(1.0 + ns.concentration.base() / ki.base())
-        }
-        Unlabelled::Other { ki: None, .. } => Block::Full,
-    }
-}
-
-/// A column for every level that has a sample or that one with a sample was diluted from.
-///
-/// Other levels bear on nothing: their own row is met exactly at its best.
-fn links(levels: &BTreeMap<LevelNo, &Level>, samples: &mut [Sample], first: usize) -> Vec<Link> {
-    let mut wanted: BTreeMap<LevelNo, usize> = BTreeMap::new();
-    for s in samples.iter() {
-        let mut at = Some(s.level);
-        while let Some(no) = at {
-            if wanted.insert(no, 0).is_some() {
-                break;
-            }
-            at = match levels.get(&no).map(|l| l.made) {
-                Some(Made::FromLevel(from)) => Some(from),
-                _ => None,
-            };
-        }
-    }
-    wanted.values_mut().zip(first..).for_each(|(c, n)| *c = n);
-    samples
-        .iter_mut()
-        .for_each(|s| s.column = wanted.get(&s.level).copied());
-    wanted
-        .iter()
-        .map(|(no, column)| Link {
-            column: *column,
-            from: match levels.get(no).map(|l| l.made) {
-                Some(Made::FromLevel(from)) => wanted.get(&from).copied(),
-                _ => None,
-            },
-        })
-        .collect()
-}
-
-fn limits<I: Isotherm>(low: f64, high: f64, sites_floor: f64, b_floor: f64) -> Vec<Limits> {
-    let ln = |low: f64, high: f64| Limits {
-        low: low.ln(),
-        high: high.ln(),
-    };
-    let mut limits: Vec<Limits> = I::NAMES
-        .iter()
-        .map(|name| {
-            if name.starts_with("kd") {
-                ln(low / KD_SEARCH, high * KD_SEARCH)
-            } else {
-                ln(sites_floor, sites_floor.max(high) * 1e9)
-            }
-        })
-        .collect();
-    limits.push(ln(NS_FLOOR, 1e9));
-    limits.push(ln(b_floor, f64::MAX));
-    limits.push(ln(CV_FLOOR, 1e2));
-    limits
-}
-
 impl<I: Isotherm> Evidence for RackEvidence<I> {
     fn dim(&self) -> usize {
-        Columns::of::<I>().dilutions() + self.links.len()
+        Columns::of::<I>().dilutions() + self.links.len() + self.scales.len()
     }
 
     fn cost(&self, theta: &[f64]) -> f64 {
@@ -342,45 +320,40 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
     fn rows(&self, theta: &[f64], rows: &mut Rows) {
         rows.clear(self.dim());
         let at = Columns::of::<I>();
-        let isotherm = I::from_ln(theta);
-        let (b, cv2) = (theta[at.background()].exp(), (2.0 * theta[at.cv()]).exp());
+        let c = self.common(theta);
         let mut by = [0.0; MOST_DIM];
         for (i, s) in self.samples.iter().enumerate() {
-            let (signal, by_ns, by_d) = self.signal(s, &isotherm, theta, &mut by[..I::DIM]);
-            let blank = s.minutes * b;
+            let (signal, by_ns, by_added) = self.signal(s, &c, theta, &mut by[..I::DIM]);
+            let blank = s.minutes * c.background;
             let mu = blank + signal;
-            let v = mu + cv2 * signal * signal;
+            let v = mu + c.cv2 * signal * signal;
+            // A row of the derivatives of what the vial shows beyond background, each times `weight`.
+            let fill = |row: &mut [f64], weight: f64| {
+                by[..I::DIM]
+                    .iter()
+                    .zip(row.iter_mut())
+                    .for_each(|(d, m)| *m = d * weight);
+                row[at.ns()] = by_ns * weight;
+                if let Some(j) = s.column {
+                    row[j] = by_added * weight;
+                }
+                for e in &self.scales {
+                    row[e.column] = (e.on_added * by_added + e.on_counts * signal) * weight;
+                }
+            };
             // mu' = signal' (and blank' = t b in the column of ln b); V' = mu' + 2 cv^2 signal signal'.
-            let root = v.sqrt();
             let miss = s.counts - mu;
-            let mean = rows.push(RowOf::Mean(i), miss / root);
-            let weight = 1.0 / root;
-            by[..I::DIM]
-                .iter()
-                .zip(mean.iter_mut())
-                .for_each(|(d, m)| *m = d * weight);
-            mean[at.ns()] = by_ns * weight;
+            let weight = 1.0 / v.sqrt();
+            let mean = rows.push(RowOf::Mean(i), miss * weight);
+            fill(mean, weight);
             mean[at.background()] = blank * weight;
-            if let Some(c) = s.column {
-                mean[c] = by_d * weight;
-            }
-            let spread = rows.push(
-                RowOf::Variance(i),
-                (miss * miss - v) / (std::f64::consts::SQRT_2 * v),
-            );
-            let weight = 1.0 / (std::f64::consts::SQRT_2 * v);
-            let of_signal = (1.0 + 2.0 * cv2 * signal) * weight;
-            by[..I::DIM]
-                .iter()
-                .zip(spread.iter_mut())
-                .for_each(|(d, m)| *m = d * of_signal);
-            spread[at.ns()] = by_ns * of_signal;
+            let weight = FRAC_1_SQRT_2 / v;
+            let spread = rows.push(RowOf::Variance(i), (miss * miss - v) * weight);
+            fill(spread, (1.0 + 2.0 * c.cv2 * signal) * weight);
             spread[at.background()] = blank * weight;
-            spread[at.cv()] = 2.0 * cv2 * signal * signal * weight;
-            if let Some(c) = s.column {
-                spread[c] = by_d * of_signal;
-            }
+            spread[at.cv()] = 2.0 * c.cv2 * signal * signal * weight;
         }
+        let b = c.background;
         let (n_b, t_b) = self.background;
         let root = (t_b * b).sqrt();
         rows.push(RowOf::Background, (n_b - t_b * b) / root)[at.background()] = root;
@@ -393,6 +366,9 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
             if let Some(from) = l.from {
                 row[from] = -1.0 / self.s_d;
             }
+        }
+        for s in &self.scales {
+            rows.push(RowOf::Scale(s.column), -theta[s.column] / s.sd)[s.column] = 1.0 / s.sd;
         }
     }
 

@@ -125,6 +125,7 @@ fn end(end: End) -> &'static str {
         End::At(_) => "at",
         End::Open => "open",
         End::Failed => "failed",
+        End::Unasked => "not_asked",
     }
 }
 

@@ -99,6 +99,7 @@ fn shown(e: &Estimate, scale: impl Fn(f64) -> f64, unit: &str, bare: bool) -> Sh
             value,
             interval: "interval failed".into(),
         },
+        (_, End::Unasked, _) | (_, _, End::Unasked) => only(value),
         (_, End::At(low), End::At(high)) => Shown {
             value,
             interval: format!("{} to {}", number(low), number(high)),

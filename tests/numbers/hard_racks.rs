@@ -228,7 +228,7 @@ fn total_below_nonspecific() {
 #[test]
 fn one_level() {
     let t = sheet(&[(LEVELS, "List([\"1 nM\"])")]);
-    too_early(&rack(t, sound), Missing::Levels { have: 1 });
+    too_early(&rack(t, sound), Missing::Levels { have: 1, want: 3 });
 }
 
 #[test]

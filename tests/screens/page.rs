@@ -2,7 +2,7 @@
 
 use rackside::analysis::analyse;
 use rackside::assay::{Kept, Reading, ReadingId, Role, Sheet, Titration, counts_per_nm};
-use rackside::binding::{Block, Isotherm, OneClass, Stuck, bound};
+use rackside::binding::{Block, Isotherm, Law, OneClass, Stuck, bound};
 use rackside::figure::Glyphs;
 use rackside::notebook::{Count, Notebook, What};
 use rackside::report::{Page, text};
@@ -109,7 +109,9 @@ fn amounts_lie_on_the_curve_for_either_place_of_sticking() {
         let changes: Vec<(&str, &str)> = changes.iter().map(|(a, b)| (*a, b.as_str())).collect();
         let t = rack(&changes, one, 0.1, stuck);
         let a = analyse(&t);
-        let fit = a.fit().unwrap().one_class();
+        let Law::OneClass(fit) = a.fit().unwrap().law else {
+            panic!("{:?}", a.fit());
+        };
         assert!(
             (fit.kd - 1.0).abs() < 1e-3 && (fit.sites - 0.2).abs() < 1e-3,
             "{fit:?}"

@@ -5,8 +5,8 @@ use super::super::form::Form;
 use super::Errors;
 use crate::assay::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Except, Fields, Incubation,
-    Ligand, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, Separation, SitesUnit,
-    Sticks, Unlabelled,
+    Ligand, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, ScaleErrors, Separation,
+    SitesUnit, Sticks, Unlabelled,
 };
 use crate::units::{Amount, Dimension, Fraction, Mark, Measure, NanoMolar, Typed, parse_decimal};
 
@@ -203,6 +203,8 @@ pub(super) fn numbers(b: &mut Reader) -> Numbers {
         cv_prior,
         dilution_error,
         confidence,
+        scale_errors: ScaleErrors::default(),
+        model: None,
     }
 }
 

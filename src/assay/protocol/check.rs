@@ -218,12 +218,12 @@ impl Numbers {
                 format!("{c}: allowed is 0.5 to 0.999"),
             ));
         }
-        Ok(())
+        self.scale_errors.check(&Checks { mark })
     }
 }
 
 /// Checks of typed amounts against the decimal mark in force.
-struct Checks {
+pub(super) struct Checks {
     mark: Mark,
 }
 
@@ -262,7 +262,7 @@ impl Checks {
         }
     }
 
-    fn maybe<D: Dimension>(
+    pub(super) fn maybe<D: Dimension>(
         &self,
         field: &str,
         a: Option<&Amount<D>>,

@@ -1,0 +1,146 @@
+//! Hill's isotherm.
+
+use super::{Isotherm, Kind, Law, OneClass};
+
+/// Hill's isotherm `S = R F^n / (Kh^n + F^n)` (Hill 1910, J Physiol 40: iv; from memory): half of the sites are taken at
+/// `F = Kh`, and `n` is the slope of the logit of occupancy against `ln F`.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Hill {
+    /// The free concentration at which half of the sites are taken, in nM.
+    pub kh: f64,
+    /// The concentration of sites in nM.
+    pub sites: f64,
+    /// The Hill coefficient.
+    pub n: f64,
+}
+
+/// More steps than the solution of a balance takes, by far.
+const MOST_STEPS: usize = 200;
+/// The farthest a step goes, on the ln scale, while one side has no bound yet.
+const LONGEST_STEP: f64 = 7.0;
+
+impl Hill {
+    /// The share of sites taken and the share free at `ln F`; neither loses digits near zero.
+    fn shares(&self, ln_free: f64) -> (f64, f64) {
+        let x = self.n * (ln_free - self.kh.ln());
+        if x <= 0.0 {
+            let e = x.exp();
+            (e / (1.0 + e), 1.0 / (1.0 + e))
+        } else {
+            let e = (-x).exp();
+            (1.0 / (1.0 + e), e / (1.0 + e))
+        }
+    }
+}
+
+impl Isotherm for Hill {
+    const DIM: usize = 3;
+    const NAMES: &'static [&'static str] = &["kh_nm", "sites_nm", "n"];
+    const KINDS: &'static [Kind] = &[Kind::Constant, Kind::Sites, Kind::Exponent];
+
+    fn from_ln(theta: &[f64]) -> Self {
+        let at = |i: usize| theta.get(i).copied().unwrap_or(f64::NAN).exp();
+        Hill {
+            kh: at(0),
+            sites: at(1),
+            n: at(2),
+        }
+    }
+
+    fn specific(&self, free: f64) -> f64 {
+        self.sites * self.shares(free.ln()).0
+    }
+
+    fn slope(&self, free: f64) -> f64 {
+        let (taken, open) = self.shares(free.ln());
+        self.sites * self.n * taken * open / free
+    }
+
+    fn by_ln(&self, free: f64, out: &mut [f64]) {
+        let (taken, open) = self.shares(free.ln());
+        let tilt = self.n * self.sites * taken * open;
+        if let [by_kh, by_sites, by_n, ..] = out {
+            *by_kh = -tilt;
+            *by_sites = self.sites * taken;
+            *by_n = if tilt == 0.0 {
+                0.0
+            } else {
+                tilt * (free / self.kh).ln()
+            };
+        }
+    }
+
+    /// Newton's method on `ln (a F + S(F)) = ln total` in `ln F`, kept between what was found too low and too high.
+    ///
+    /// On these scales the balance rises with a slope between those of its two terms, so that a few steps do.
+    fn free(&self, total: f64, a: f64) -> f64 {
+        if total == 0.0 {
+            return 0.0;
+        }
+        let ln_kh = self.kh.ln();
+        let ln_total = total.ln();
+        let (mut low, mut high) = (f64::NEG_INFINITY, (total / a).ln());
+        let start = OneClass {
+            kd: self.kh,
+            sites: self.sites,
+        };
+        let mut u = start.free(total, a).ln().min(high);
+        if !u.is_finite() {
+            u = high;
+        }
+        for _ in 0..MOST_STEPS {
+            let x = self.n * (u - ln_kh);
+            let e = (-x.abs()).exp();
+            let (small, large) = (e / (1.0 + e), 1.0 / (1.0 + e));
+            let (taken, open) = if x <= 0.0 {
+                (small, large)
+            } else {
+                (large, small)
+            };
+            let free = u.exp();
+            let bound = self.sites * taken;
+            let all = a * free + bound;
+            let rise = (a * free + self.n * bound * open) / all;
+            // Near the root the relative miss is exact where a difference of logarithms would not be.
+            let miss = (total - all) / all;
+            let short = if miss.abs() < 0.1 {
+                miss.ln_1p()
+            } else {
+                ln_total - all.ln()
+            };
+            if short > 0.0 {
+                low = low.max(u);
+            } else {
+                high = high.min(u);
+            }
+            let step = (short / rise).clamp(-LONGEST_STEP, LONGEST_STEP);
+            if step.abs() <= 2.0 * f64::EPSILON {
+                u += step;
+                break;
+            }
+            let next = u + step;
+            u = if next > low && next < high {
+                next
+            } else if low.is_finite() {
+                0.5 * (low + high)
+            } else {
+                u - LONGEST_STEP
+            };
+            if high - low <= 2.0 * f64::EPSILON * u.abs().max(1.0) {
+                break;
+            }
+        }
+        u.exp()
+    }
+
+    fn blocked(&self, factor: f64) -> Self {
+        Hill {
+            kh: self.kh * factor,
+            ..*self
+        }
+    }
+
+    fn law(self) -> Law {
+        Law::Hill(self)
+    }
+}
