@@ -48,6 +48,12 @@ pub trait Isotherm: Copy {
     /// `dS / d ln p` for each parameter at a fixed free concentration, in nM.
     fn by_ln(&self, free: f64, out: &mut [f64]);
 
+    /// Specific binding, its slope and its derivatives all at once, as the three above give them.
+    fn evaluate(&self, free: f64, by_ln: &mut [f64]) -> (f64, f64) {
+        self.by_ln(free, by_ln);
+        (self.specific(free), self.slope(free))
+    }
+
     /// The free concentration that solves `a F + S(F) = total`, in nM.
     fn free(&self, total: f64, a: f64) -> f64;
 

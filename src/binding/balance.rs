@@ -93,10 +93,9 @@ fn solved<I: Isotherm>(
 ) -> Bound {
     let share = added / total;
     let free = isotherm.free(total, a);
-    let slope = isotherm.slope(free);
+    let (specific, slope) = isotherm.evaluate(free, by_ln);
     let give = a + slope;
-    let all = isotherm.specific(free) + ns * free;
-    isotherm.by_ln(free, by_ln);
+    let all = specific + ns * free;
     // Bound as a whole, S + ns F, answers a parameter of S by S_p (1 - (S' + ns) / (a + S')); written out for
     // either place of sticking, the bracket loses nothing to cancellation.
     let kept = match stuck {

@@ -57,17 +57,23 @@ impl Isotherm for Hill {
     }
 
     fn by_ln(&self, free: f64, out: &mut [f64]) {
+        self.evaluate(free, out);
+    }
+
+    fn evaluate(&self, free: f64, by_ln: &mut [f64]) -> (f64, f64) {
         let (taken, open) = self.shares(free.ln());
-        let tilt = self.n * self.sites * taken * open;
-        if let [by_kh, by_sites, by_n, ..] = out {
+        let bound = self.sites * taken;
+        let tilt = self.n * bound * open;
+        if let [by_kh, by_sites, by_n, ..] = by_ln {
             *by_kh = -tilt;
-            *by_sites = self.sites * taken;
+            *by_sites = bound;
             *by_n = if tilt == 0.0 {
                 0.0
             } else {
                 tilt * (free / self.kh).ln()
             };
         }
+        (bound, tilt / free)
     }
 
     /// Newton's method on `ln (a F + S(F)) = ln total` in `ln F`, kept between what was found too low and too high.
@@ -101,10 +107,11 @@ impl Isotherm for Hill {
             let bound = self.sites * taken;
             let all = a * free + bound;
             let rise = (a * free + self.n * bound * open) / all;
-            // Near the root the relative miss is exact where a difference of logarithms would not be.
+            // Near the root the relative miss keeps digits that a difference of logarithms would lose, and three terms of
+            // ln(1 + miss) lead to the same root.
             let miss = (total - all) / all;
-            let short = if miss.abs() < 0.1 {
-                miss.ln_1p()
+            let short = if miss.abs() < 0.2 {
+                miss * (1.0 - miss * (0.5 - miss / 3.0))
             } else {
                 ln_total - all.ln()
             };
@@ -114,9 +121,10 @@ impl Isotherm for Hill {
                 high = high.min(u);
             }
             let step = (short / rise).clamp(-LONGEST_STEP, LONGEST_STEP);
-            if step.abs() <= 2.0 * f64::EPSILON {
-                u += step;
-                break;
+            // One more step would square the error: it is taken on the free concentration, which holds more digits than
+            // its logarithm.
+            if step.abs() <= 1e-8 {
+                return free * (1.0 + step);
             }
             let next = u + step;
             u = if next > low && next < high {
@@ -126,7 +134,7 @@ impl Isotherm for Hill {
             } else {
                 u - LONGEST_STEP
             };
-            if high - low <= 2.0 * f64::EPSILON * u.abs().max(1.0) {
+            if high - low <= 4.0 * f64::EPSILON * u.abs().max(1.0) {
                 break;
             }
         }
