@@ -12,6 +12,8 @@ mod conversions;
 mod dilution;
 mod hard_racks;
 mod nist;
+mod nist_models;
+mod nist_sets;
 mod racks;
 mod recounts;
 mod reference_fits;

@@ -1,7 +1,7 @@
 //! Published nonlinear regressions that are exactly a one-class isotherm, through the project's own isotherm, solver and
 //! profiles, with the variance estimated from the residuals.
 //!
-//! Sources: NIST Statistical Reference Datasets, nonlinear regression, Misra1d (public domain; the file is in `data/`).
+//! Sources: NIST Statistical Reference Datasets, nonlinear regression, Misra1d (public domain; the file is in `data/nist/`).
 //! Puromycin: Treloar 1974 (thesis, Toronto), in Bates & Watts 1988, *Nonlinear Regression Analysis*,
 //! and in the `datasets` of R; the figures below were computed with R's `nls` and in 50-digit arithmetic.
 
@@ -69,7 +69,7 @@ struct Certified {
 
 /// Data, parameters and the residual sum of squares of a file of the collection, at the lines its header gives.
 fn misra() -> (Readings, Vec<Certified>, f64) {
-    let text = include_str!("data/Misra1d.dat");
+    let text = include_str!("data/nist/Misra1d.dat");
     let numbers = |line: &str| -> Vec<f64> {
         line.split_whitespace()
             .filter_map(|w| w.parse().ok())
