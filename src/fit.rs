@@ -7,9 +7,14 @@ mod profile;
 mod rack;
 mod solver;
 mod start;
+mod statistics;
 
 pub use evidence::{Evidence, Limits, RowOf, Rows, Scale};
 pub use outcome::{Estimate, Fit, Missing, Model, Outcome, fit_rack};
 pub use profile::{End, ProfileCut, ProfileEnd, Profiles};
 pub use rack::{Columns, RackEvidence, Sample};
 pub use solver::{Ended, Solution, covariance, solve};
+pub use statistics::{
+    LackOfFit, Runs, chi_square_upper_tail, f_upper_tail, grubbs_critical, lack_of_fit,
+    runs_lower_tail, t_quantile, t_two_sided,
+};

@@ -18,3 +18,4 @@ mod racks;
 mod recounts;
 mod reference_fits;
 mod reference_racks;
+mod statistics;
