@@ -1,6 +1,7 @@
 //! The fit: evidence as rows of a linear problem, a solver that knows nothing of binding, and what
 //! follows from the two: estimates, standard errors, intervals.
 
+mod deletion;
 mod evidence;
 mod outcome;
 mod profile;
@@ -9,6 +10,7 @@ mod solver;
 mod start;
 mod statistics;
 
+pub use deletion::{Deleted, Parts, deleted, outlier_p};
 pub use evidence::{Evidence, Limits, RowOf, Rows, Scale};
 pub use outcome::{Estimate, Fit, Missing, Model, Outcome, fit_rack};
 pub use profile::{End, ProfileCut, ProfileEnd, Profiles};

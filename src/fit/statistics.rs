@@ -33,7 +33,7 @@ pub fn t_two_sided(t: f64, df: f64) -> Option<f64> {
 /// Small `p` are told apart better than those near one: take minus the quantile of what is above. `None` unless `0 < p < 1` and
 /// `df` is positive and finite.
 pub fn t_quantile(p: f64, df: f64) -> Option<f64> {
-    if !(p > 0.0 && p < 1.0) || !is_df(df) {
+    if !(p > 0.0 && p < 1.0 && is_df(df)) {
         return None;
     }
     let t = StudentsT::new(0.0, 1.0, df).ok()?.inverse_cdf(p);
@@ -43,7 +43,7 @@ pub fn t_quantile(p: f64, df: f64) -> Option<f64> {
 /// The probability of a chi-square of at least `x` on `df` degrees of freedom; `None` unless `x >= 0` and `df` is positive,
 /// both finite.
 pub fn chi_square_upper_tail(x: f64, df: f64) -> Option<f64> {
-    if !(x >= 0.0 && x.is_finite()) || !is_df(df) {
+    if !(x >= 0.0 && x.is_finite() && is_df(df)) {
         return None;
     }
     if x == 0.0 {

@@ -9,6 +9,7 @@
 
 mod balance;
 mod conversions;
+mod deletion;
 mod dilution;
 mod hard_racks;
 mod nist;

@@ -1,5 +1,6 @@
 //! The models of the NIST nonlinear regression sets, with derivatives exact by forward differentiation.
 
+use rackside::fit::{Evidence, RowOf, Rows, Scale};
 use std::f64::consts::PI;
 use std::ops::{Add, Div, Mul, Neg, Sub};
 
@@ -277,4 +278,54 @@ pub fn rat43(b: &[Dual], x: &[f64]) -> Dual {
 /// `b1 (b2 + x)^(-1 / b3)`.
 pub fn bennett(b: &[Dual], x: &[f64]) -> Dual {
     b[0] * (b[1] + x[0]).pow(-1.0 / b[2])
+}
+
+/// `b1 / (1 + (b2 / x)^b3)`, the isotherm of Hill; of no set.
+pub fn hill(b: &[Dual], x: &[f64]) -> Dual {
+    b[0] / (1.0 + (b[1] / x[0]).pow(b[2]))
+}
+
+/// A model beside its data, with one variance for all observations and natural parameters.
+pub struct Regression<'d> {
+    pub y: &'d [f64],
+    pub x: &'d [Vec<f64>],
+    pub dim: usize,
+    pub model: Model,
+}
+
+impl Regression<'_> {
+    /// Residual and expectation of every observation.
+    fn residuals(&self, theta: &[f64]) -> impl Iterator<Item = (f64, Dual)> {
+        let b: Vec<Dual> = theta
+            .iter()
+            .enumerate()
+            .map(|(j, t)| Dual::parameter(*t, j))
+            .collect();
+        self.y.iter().zip(self.x).map(move |(y, x)| {
+            let expected = (self.model)(&b, x);
+            (y - expected.value, expected)
+        })
+    }
+}
+
+impl Evidence for Regression<'_> {
+    fn dim(&self) -> usize {
+        self.dim
+    }
+
+    fn cost(&self, theta: &[f64]) -> f64 {
+        self.residuals(theta).map(|(r, _)| r * r).sum()
+    }
+
+    fn rows(&self, theta: &[f64], rows: &mut Rows) {
+        rows.clear(self.dim);
+        for (i, (r, expected)) in self.residuals(theta).enumerate() {
+            rows.push(RowOf::Mean(i), r)
+                .copy_from_slice(&expected.by[..self.dim]);
+        }
+    }
+
+    fn scale(&self) -> Scale {
+        Scale::Estimated
+    }
 }

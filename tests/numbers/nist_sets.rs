@@ -5,8 +5,8 @@
 //! are certified to 11 digits, so that no more can be seen here. Agreement is counted in digits, minus the decimal
 //! logarithm of the relative error.
 
-use super::nist_models::{self as models, Dual, Model};
-use rackside::fit::{Ended, Evidence, RowOf, Rows, Scale, covariance, solve};
+use super::nist_models::{self as models, Model, Regression};
+use rackside::fit::{Ended, covariance, solve};
 
 /// What the certified values show at most.
 const CERTIFIED: f64 = 11.0;
@@ -71,50 +71,6 @@ impl Set {
     }
 }
 
-/// A model beside its data.
-struct Regression<'s> {
-    set: &'s Set,
-    model: Model,
-}
-
-impl Regression<'_> {
-    /// Residual and expectation of every observation.
-    fn residuals(&self, theta: &[f64]) -> impl Iterator<Item = (f64, Dual)> {
-        let b: Vec<Dual> = theta
-            .iter()
-            .enumerate()
-            .map(|(j, t)| Dual::parameter(*t, j))
-            .collect();
-        self.set.y.iter().zip(&self.set.x).map(move |(y, x)| {
-            let expected = (self.model)(&b, x);
-            (y - expected.value, expected)
-        })
-    }
-}
-
-impl Evidence for Regression<'_> {
-    fn dim(&self) -> usize {
-        self.set.values.len()
-    }
-
-    fn cost(&self, theta: &[f64]) -> f64 {
-        self.residuals(theta).map(|(r, _)| r * r).sum()
-    }
-
-    fn rows(&self, theta: &[f64], rows: &mut Rows) {
-        let dim = self.dim();
-        rows.clear(dim);
-        for (i, (r, expected)) in self.residuals(theta).enumerate() {
-            rows.push(RowOf::Mean(i), r)
-                .copy_from_slice(&expected.by[..dim]);
-        }
-    }
-
-    fn scale(&self) -> Scale {
-        Scale::Estimated
-    }
-}
-
 /// The digits in which the least agreeing value agrees.
 fn digits(got: impl IntoIterator<Item = f64>, certified: &[f64]) -> f64 {
     let agree = |(g, c): (f64, &f64)| -((g - c).abs() / c.abs()).log10();
@@ -126,7 +82,12 @@ fn digits(got: impl IntoIterator<Item = f64>, certified: &[f64]) -> f64 {
 
 /// Both starts of a set; standard deviations and the residual sum of squares are wanted to `noisy` digits.
 fn certified(name: &str, set: &Set, model: Model, noisy: f64) {
-    let regression = Regression { set, model };
+    let regression = Regression {
+        y: &set.y,
+        x: &set.x,
+        dim: set.values.len(),
+        model,
+    };
     for (which, start) in (1..).zip(&set.starts) {
         let solution = solve(&regression, start, None);
         assert_eq!(
