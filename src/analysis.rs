@@ -4,7 +4,10 @@ use crate::assay::{
     Background, Measured, Observed, Sticks, Suspicion, Titration, Tube, background, measured,
     observed,
 };
-use crate::fit::{Fit, Outcome, fit_rack};
+use crate::fit::{Compared, Fit, Model, Outcome, compare, fit_model};
+use crate::judge::{
+    Choice, Soundness, Suspects, asked_for, choose, soundness, supported_at, suspects,
+};
 
 /// One tube with what its counts say.
 #[derive(Debug, Clone, PartialEq)]
@@ -33,10 +36,18 @@ pub struct Analysis {
     pub tubes: Vec<TubeResult>,
     /// The background vials taken together.
     pub background: Option<Background>,
-    /// The fit, flagged readings left out.
+    /// The fit of the law that is shown, flagged readings left out.
     pub outcome: Outcome,
     /// The fit with no reading left out; `None` where nothing is flagged, since it is the same.
     pub all_readings: Option<Outcome>,
+    /// Every law of binding, fitted to the same readings.
+    pub compared: Compared,
+    /// Which law is shown, and where the others stand.
+    pub choice: Choice,
+    /// Tubes and replicates that do not fit with the others; nothing is flagged by that. Empty without a fit.
+    pub suspects: Suspects,
+    /// Numbers to judge the shown fit by; `None` without one.
+    pub soundness: Option<Soundness>,
 }
 
 impl Analysis {
@@ -48,6 +59,11 @@ impl Analysis {
     /// The fit with no reading left out.
     pub fn without_flags(&self) -> &Outcome {
         self.all_readings.as_ref().unwrap_or(&self.outcome)
+    }
+
+    /// The fit of a law of binding, flagged readings left out.
+    pub fn fit_of(&self, model: Model) -> Option<&Fit> {
+        self.compared.outcome(model).fit()
     }
 }
 
@@ -66,8 +82,21 @@ fn free(measured: Measured, sticks: Sticks, ns: Option<f64>) -> f64 {
 /// Everything that can be said of a titration: a pure function, so that a notebook gives the same
 /// bits live and reloaded.
 pub fn analyse(titration: &Titration) -> Analysis {
-    let outcome = fit_rack(titration, true);
-    let all_readings = titration.has_flags().then(|| fit_rack(titration, false));
+    analyse_with(titration, false)
+}
+
+/// The same, with the intervals of every law of binding where `every` is set, and not only of those that matter.
+pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
+    let asked = |model| every || asked_for(titration, model);
+    let compared = compare(titration, true, asked, supported_at);
+    let choice = choose(titration, &compared);
+    let outcome = compared.outcome(choice.shown).clone();
+    let all_readings = titration
+        .has_flags()
+        .then(|| fit_model(titration, false, choice.shown));
+    let fit = outcome.fit();
+    let suspects = fit.map_or_else(Suspects::default, |f| suspects(titration, true, f));
+    let soundness = fit.map(|f| soundness(titration, true, f));
     let blank = background(titration, true);
     let ns = outcome.fit().map(|f| f.value("ns"));
     let sticks = titration.protocol.nonspecific.sticks;
@@ -106,5 +135,9 @@ pub fn analyse(titration: &Titration) -> Analysis {
         background: blank,
         outcome,
         all_readings,
+        compared,
+        choice,
+        suspects,
+        soundness,
     }
 }

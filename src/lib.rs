@@ -13,6 +13,7 @@ pub mod binding;
 pub mod cli;
 pub mod figure;
 pub mod fit;
+pub mod judge;
 pub mod notebook;
 pub mod report;
 pub mod shell;

@@ -24,6 +24,26 @@ pub struct Estimate {
     pub high: End,
 }
 
+impl Estimate {
+    /// The same with a further relative error (the standard deviation of its logarithm) that no reading knows of, as of the
+    /// amount that an estimate is divided by.
+    ///
+    /// Where a profile is a parabola of half-width `h` at the cut, the best of it and of a normal error together is one of
+    /// half-width `sqrt(h^2 + cut sd^2)` (algebra).
+    pub fn widened(&self, sd_ln: f64, cut: f64) -> Estimate {
+        let ln = self.value.ln();
+        let away = |end: End, sign: f64| {
+            end.map(|v| (ln + sign * ((v.ln() - ln).powi(2) + cut * sd_ln * sd_ln).sqrt()).exp())
+        };
+        Estimate {
+            se_ln: self.se_ln.map(|se| se.hypot(sd_ln)),
+            low: away(self.low, -1.0),
+            high: away(self.high, 1.0),
+            ..self.clone()
+        }
+    }
+}
+
 /// A tube beside what the fit expects of it.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct FittedTube {

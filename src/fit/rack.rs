@@ -2,6 +2,7 @@
 
 mod lay;
 
+use super::deletion::Parts;
 use super::evidence::{Evidence, Limits, RowOf, Rows, Scale};
 use crate::assay::{LevelNo, Role, Sticks, Titration, TubeNo, background, counts_per_nm, observed};
 use crate::binding::{Block, Isotherm, Stuck, bound};
@@ -176,15 +177,6 @@ impl<I: Isotherm> RackEvidence<I> {
             added: (low, high),
             isotherm: PhantomData,
         })
-    }
-
-    /// The same evidence without one of its tubes. Columns stay where they are.
-    pub fn without_sample(&self, i: usize) -> Self {
-        let mut rest = self.clone();
-        if i < rest.samples.len() {
-            rest.samples.remove(i);
-        }
-        rest
     }
 
     /// The tubes that inform the fit.
@@ -378,5 +370,19 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
 
     fn limits(&self, j: usize) -> Limits {
         self.limits.get(j).copied().unwrap_or(Limits::NONE)
+    }
+}
+
+impl<I: Isotherm> Parts for RackEvidence<I> {
+    fn parts(&self) -> usize {
+        self.samples.len()
+    }
+
+    fn without(&self, part: usize) -> Self {
+        let mut rest = self.clone();
+        if part < rest.samples.len() {
+            rest.samples.remove(part);
+        }
+        rest
     }
 }

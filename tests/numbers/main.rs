@@ -9,10 +9,14 @@
 
 mod balance;
 mod conversions;
+mod deletion;
 mod dilution;
 mod hard_racks;
 mod nist;
+mod nist_models;
+mod nist_sets;
 mod racks;
 mod recounts;
 mod reference_fits;
 mod reference_racks;
+mod statistics;

@@ -1,7 +1,7 @@
 //! Published nonlinear regressions that are exactly a one-class isotherm, through the project's own isotherm, solver and
 //! profiles, with the variance estimated from the residuals.
 //!
-//! Sources: NIST Statistical Reference Datasets, nonlinear regression, Misra1d (public domain; the file is in `data/`).
+//! Sources: NIST Statistical Reference Datasets, nonlinear regression, Misra1d (public domain; the file is in `data/nist/`).
 //! Puromycin: Treloar 1974 (thesis, Toronto), in Bates & Watts 1988, *Nonlinear Regression Analysis*,
 //! and in the `datasets` of R; the figures below were computed with R's `nls` and in 50-digit arithmetic.
 
@@ -12,9 +12,10 @@ use rackside::fit::{
 };
 
 /// Specific binding read at given free concentrations, with one variance for all; theta is `[ln Kd, ln sites]`.
-struct Readings {
-    free: Vec<f64>,
-    bound: Vec<f64>,
+#[derive(Clone)]
+pub struct Readings {
+    pub free: Vec<f64>,
+    pub bound: Vec<f64>,
 }
 
 impl Evidence for Readings {
@@ -43,7 +44,7 @@ impl Evidence for Readings {
 }
 
 /// The solution from a start in natural units, and its covariance.
-fn fitted(readings: &Readings, kd: f64, sites: f64) -> (Solution, DMatrix<f64>) {
+pub fn fitted(readings: &Readings, kd: f64, sites: f64) -> (Solution, DMatrix<f64>) {
     let solution = solve(readings, &[kd.ln(), sites.ln()], None);
     assert_eq!(solution.ended, Ended::Converged);
     let cov = covariance(readings, &solution).unwrap();
@@ -52,7 +53,7 @@ fn fitted(readings: &Readings, kd: f64, sites: f64) -> (Solution, DMatrix<f64>) 
 
 /// Within half a unit of the last of `digits` digits.
 #[track_caller]
-fn digits(got: f64, want: f64, digits: i32) {
+pub fn digits(got: f64, want: f64, digits: i32) {
     let unit = 10f64.powi(want.abs().log10().floor() as i32 + 1 - digits);
     assert!(
         (got - want).abs() <= 0.5 * unit * (1.0 + 1e-6),
@@ -69,7 +70,7 @@ struct Certified {
 
 /// Data, parameters and the residual sum of squares of a file of the collection, at the lines its header gives.
 fn misra() -> (Readings, Vec<Certified>, f64) {
-    let text = include_str!("data/Misra1d.dat");
+    let text = include_str!("data/nist/Misra1d.dat");
     let numbers = |line: &str| -> Vec<f64> {
         line.split_whitespace()
             .filter_map(|w| w.parse().ok())
@@ -128,7 +129,7 @@ fn misra_is_the_one_class_isotherm() {
     }
 }
 
-fn puromycin() -> Readings {
+pub fn puromycin() -> Readings {
     Readings {
         free: vec![
             0.02, 0.02, 0.06, 0.06, 0.11, 0.11, 0.22, 0.22, 0.56, 0.56, 1.10, 1.10,

@@ -1,0 +1,193 @@
+//! Which law of binding: one class, unless more is clearly there and nothing else would look the same.
+
+use super::depletion::{Depletion, depletion};
+use crate::assay::{LevelNo, Model, Titration};
+use crate::fit::{Compared, Gain, Missing, Outcome, Rival};
+use std::fmt;
+
+/// Why a law that fits better is not offered.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub enum WhyWithheld {
+    /// An interval of one of its parameters has an open end.
+    OpenEnd(&'static str),
+    /// So much label is bound at a level that a small error in what was added would look the same.
+    Depletion(Depletion),
+    /// The other law fits as well with fewer parameters, or better.
+    Other(Model),
+    /// Its AICc is not lower than that of one class.
+    Aicc,
+}
+
+/// Where a law of binding stands.
+#[derive(Debug, Clone, PartialEq)]
+pub enum Standing {
+    /// The readings support it and nothing known speaks against it.
+    Offered,
+    /// It fits better, and still is not offered.
+    Withheld(WhyWithheld),
+    /// It does not fit clearly better than one class.
+    NotSupported,
+    /// It has no fit: what it lacks; empty where no solution was found.
+    NoFit(Vec<Missing>),
+}
+
+/// A law of binding beside one class.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Verdict {
+    /// Which law.
+    pub model: Model,
+    /// What it gains over one class.
+    pub gain: Option<Gain>,
+    /// Where it stands.
+    pub standing: Standing,
+}
+
+impl Verdict {
+    /// Whether it is offered.
+    pub fn offered(&self) -> bool {
+        self.standing == Standing::Offered
+    }
+}
+
+/// Which law of binding is shown, and where the others stand.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Choice {
+    /// The law shown.
+    pub shown: Model,
+    /// Whether somebody chose it.
+    pub pinned: bool,
+    /// The others against one class, in the order of [`Model::ALL`].
+    pub verdicts: Vec<Verdict>,
+}
+
+impl Choice {
+    /// The law that is offered, if there is one.
+    pub fn offered(&self) -> Option<Model> {
+        self.verdicts.iter().find(|v| v.offered()).map(|v| v.model)
+    }
+}
+
+/// The chance of its gain at which a law is taken as supported.
+///
+/// Calibrated on simulated racks of one class so that two classes or Hill are offered in at most 5 % of them; the
+/// plain 5 % point of either test would offer one too often, since there are two and two classes are not a regular extension of one.
+pub fn supported_at(model: Model) -> f64 {
+    match model {
+        Model::OneClass => 1.0,
+        Model::TwoClasses => 0.02,
+        Model::Hill => 0.02,
+    }
+}
+
+/// Whether the protocol asks for a law of binding to be shown.
+pub fn asked_for(titration: &Titration, model: Model) -> bool {
+    titration.protocol.numbers.model == Some(model)
+}
+
+/// Which law is shown and which is offered.
+///
+/// A second class or a Hill coefficient is offered only if its gain is supported, AICc agrees, its parameters all have closed
+/// intervals, and depletion holds (two-class and cooperative fits only after equilibration and depletion are settled: Jarmoskaite
+/// et al. 2020, eLife 9:e57264). Of two the one of lower AICc is offered.
+pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
+    let pin = titration.protocol.numbers.model;
+    let depleted = compared
+        .one
+        .fit()
+        .and_then(|one| depletion(titration, one))
+        .filter(|d| !d.holds());
+    let mut verdicts: Vec<Verdict> = compared
+        .rivals
+        .iter()
+        .map(|rival| Verdict {
+            model: rival.model,
+            gain: rival.gain,
+            standing: standing(rival, depleted),
+        })
+        .collect();
+    let aicc = |m: Model| compared.outcome(m).fit().and_then(|f| f.aicc);
+    let best = verdicts
+        .iter()
+        .filter(|v| v.offered())
+        .min_by(|a, b| {
+            let of = |v: &Verdict| aicc(v.model).unwrap_or(f64::INFINITY);
+            of(a).total_cmp(&of(b))
+        })
+        .map(|v| v.model);
+    for v in &mut verdicts {
+        if let (true, Some(best)) = (v.offered(), best)
+            && best != v.model
+        {
+            v.standing = Standing::Withheld(WhyWithheld::Other(best));
+        }
+    }
+    Choice {
+        shown: pin.unwrap_or(Model::OneClass),
+        pinned: pin.is_some(),
+        verdicts,
+    }
+}
+
+fn standing(rival: &Rival, depleted: Option<Depletion>) -> Standing {
+    let fit = match &rival.outcome {
+        Outcome::Fitted(fit) => fit,
+        Outcome::TooEarly(missing) => return Standing::NoFit(missing.clone()),
+        Outcome::NoConvergence => return Standing::NoFit(Vec::new()),
+    };
+    let Some(gain) = rival.gain.filter(|g| g.p <= supported_at(rival.model)) else {
+        return Standing::NotSupported;
+    };
+    if gain.delta_aicc.is_none_or(|d| d >= 0.0) {
+        return Standing::Withheld(WhyWithheld::Aicc);
+    }
+    let open = fit
+        .of_isotherm()
+        .iter()
+        .find(|e| e.low.value().is_none() || e.high.value().is_none());
+    if let Some(e) = open {
+        return Standing::Withheld(WhyWithheld::OpenEnd(e.name));
+    }
+    depleted.map_or(Standing::Offered, |d| {
+        Standing::Withheld(WhyWithheld::Depletion(d))
+    })
+}
+
+impl fmt::Display for Standing {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Standing::Offered => f.write_str(
+                "offered; whether the lowest level was at equilibrium is not shown, and too short an incubation looks the same",
+            ),
+            Standing::NotSupported => f.write_str("no clear gain over one class"),
+            Standing::NoFit(missing) if missing.is_empty() => f.write_str("no fit found"),
+            Standing::NoFit(missing) => {
+                let list: Vec<String> = missing.iter().map(ToString::to_string).collect();
+                write!(f, "no result; wanted: {}", list.join(", "))
+            }
+            Standing::Withheld(why) => write!(f, "fits better, not offered: {why}"),
+        }
+    }
+}
+
+impl fmt::Display for WhyWithheld {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            WhyWithheld::OpenEnd(name) => {
+                let name = name.trim_end_matches("_nm");
+                write!(f, "the interval of {name} has an open end")
+            }
+            WhyWithheld::Depletion(Depletion {
+                level: LevelNo(no),
+                share,
+            }) => write!(
+                f,
+                "{:.0} % of the label is bound at level {no} (limit {:.0} %), so that a small error in what was added \
+                 looks the same",
+                100.0 * share,
+                100.0 * Depletion::LIMIT
+            ),
+            WhyWithheld::Other(model) => write!(f, "{} has the lower AICc", model.words()),
+            WhyWithheld::Aicc => f.write_str("its AICc is not lower than that of one class"),
+        }
+    }
+}

@@ -1,0 +1,43 @@
+//! How much of the label is bound.
+
+use crate::assay::{LevelNo, Role, Titration, counts_per_nm, observed};
+use crate::fit::Fit;
+
+/// The tube that binds the largest share of its label.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Depletion {
+    /// Its level.
+    pub level: LevelNo,
+    /// Bound over added, nonspecific included, as fitted.
+    pub share: f64,
+}
+
+impl Depletion {
+    /// The share below which free is close to added (NIH Assay Guidance Manual, receptor binding: bound below 10 % of added).
+    pub const LIMIT: f64 = 0.10;
+
+    /// Whether bound stays below the limit.
+    pub fn holds(self) -> bool {
+        self.share < Self::LIMIT
+    }
+}
+
+/// The largest share of the label that is bound in a total tube, as fitted.
+pub fn depletion(titration: &Titration, fit: &Fit) -> Option<Depletion> {
+    let per_nm = counts_per_nm(&titration.protocol);
+    let background = fit.value("background_cpm");
+    let share = |t: &crate::fit::FittedTube| {
+        let minutes = observed(titration, t.tube, t.used)?.minutes;
+        let added = titration.level(t.level)?.added.base();
+        let bound = (t.expected / minutes - background) / per_nm;
+        Some(Depletion {
+            level: t.level,
+            share: bound / added,
+        })
+    };
+    fit.tubes
+        .iter()
+        .filter(|t| t.used && t.role == Role::Total)
+        .filter_map(share)
+        .max_by(|a, b| a.share.total_cmp(&b.share))
+}

@@ -1,0 +1,42 @@
+//! Tubes that should read the same: those of one level and role.
+
+use crate::assay::{LevelNo, Role, TubeNo};
+use crate::fit::Fit;
+use std::collections::BTreeMap;
+
+/// Replicates that the fit uses, with their residuals in standard deviations.
+#[derive(Debug, Clone, PartialEq)]
+pub(super) struct Group {
+    pub(super) level: LevelNo,
+    pub(super) role: Role,
+    pub(super) tubes: Vec<TubeNo>,
+    pub(super) residuals: Vec<f64>,
+}
+
+impl Group {
+    pub(super) fn mean(&self) -> f64 {
+        self.residuals.iter().sum::<f64>() / self.residuals.len() as f64
+    }
+
+    /// The sum of squares about the mean.
+    pub(super) fn about_mean(&self) -> f64 {
+        let mean = self.mean();
+        self.residuals.iter().map(|r| (r - mean).powi(2)).sum()
+    }
+}
+
+/// The groups of a fit, by level and role.
+pub(super) fn groups(fit: &Fit) -> Vec<Group> {
+    let mut found: BTreeMap<(LevelNo, Role), Group> = BTreeMap::new();
+    for t in fit.tubes.iter().filter(|t| t.used) {
+        let group = found.entry((t.level, t.role)).or_insert_with(|| Group {
+            level: t.level,
+            role: t.role,
+            tubes: Vec::new(),
+            residuals: Vec::new(),
+        });
+        group.tubes.push(t.tube);
+        group.residuals.push(t.residual());
+    }
+    found.into_values().collect()
+}
