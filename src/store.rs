@@ -79,6 +79,8 @@ pub fn carried(name: &str, text: &str) -> Result<Opened, StoreError> {
 
 /// Opens a notebook for writing: locked first, then read.
 ///
+/// A notebook of an older format gets the newest one with the first save, and a copy of it as it was is kept beside it.
+///
 /// # Errors
 /// As [`open`], and [`StoreError::Locked`] while another has it; it may still be opened for reading.
 pub fn open_for_writing(path: &Path, holder: &Holder) -> Result<Opened, StoreError> {
@@ -86,7 +88,13 @@ pub fn open_for_writing(path: &Path, holder: &Holder) -> Result<Opened, StoreErr
     let mut target = Target::existing(path, holder)?;
     let bytes = read(target.path())?;
     target.read_as(Seen::of(&bytes));
-    opened(path, &bytes, Access::Write(target))
+    let mut opened = opened(path, &bytes, Access::Read)?;
+    if opened.text.format() < format::FORMAT {
+        target.keep_first(opened.text.format(), bytes);
+        opened.text = opened.text.renewed(&opened.changed);
+    }
+    opened.access = Access::Write(target);
+    Ok(opened)
 }
 
 /// Makes the file of a new notebook, and keeps it locked.

@@ -40,7 +40,7 @@ pub enum StoreError {
     },
     /// Written by a newer rackside.
     #[error(
-        "{}: format {found}, written by a newer rackside; this one reads format {known}. The file is left as it is",
+        "{}: format {found}, written by a newer rackside; this one reads formats up to {known}. The file is left as it is",
         shown(path)
     )]
     Newer {

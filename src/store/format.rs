@@ -1,7 +1,7 @@
 //! The text of a notebook: one RON document, one entry to a line, each line chained to the one before.
 //!
 //! ```text
-//! (format: 1, entries: [
+//! (format: 2, entries: [
 //! (n:1,at:"2031-05-04T10:14:03+02:00",who:"ann",what:Opened(...)), // 9f3c0a...
 //! (n:2,at:"2031-05-04T10:15:40+02:00",who:"ann",what:Counted(...)), // 71d2e4...
 //! ])
@@ -11,6 +11,9 @@
 //! The link that ends a line is the first 16 hex digits of SHA-256 over the link of the line before
 //! (the first line of the file, for the first) and the line up to and with its comma. It shows damage and careless
 //! editing; who sets out to forge a notebook can compute it too.
+//!
+//! Formats: 1 as first released; 2 knows scale errors and a chosen law of binding in the protocol. Lines of an older
+//! format are lines of the newer ones too, so that it is enough to link them anew.
 
 use crate::notebook::{Entry, Notebook, Rejection};
 use crate::units::clean;
@@ -20,14 +23,18 @@ use std::fmt::Write;
 use std::sync::Arc;
 
 /// The format written here, and the newest one read.
-pub const FORMAT: u32 = 1;
+pub const FORMAT: u32 = 2;
 
 /// The largest notebook read or written, in bytes: 32 MiB.
 pub const MOST_BYTES: usize = 32 * 1024 * 1024;
 
-const HEADER: &str = "(format: 1, entries: [";
 const CLOSING: &str = "])";
 const LINK_DIGITS: usize = 16;
+
+/// The first line of a notebook of this format.
+fn header(format: u32) -> String {
+    format!("(format: {format}, entries: [")
+}
 
 /// A text that is not a notebook, or cannot become one.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
@@ -40,7 +47,7 @@ pub enum Fault {
         bytes: usize,
     },
     /// Of a newer format.
-    #[error("format {found}; this rackside reads format {FORMAT}")]
+    #[error("format {found}; this rackside reads formats up to {FORMAT}")]
     Newer {
         /// The format found.
         found: u32,
@@ -64,6 +71,7 @@ fn damaged(line: usize, cause: impl Into<String>) -> Fault {
 /// The lines of a notebook as they are or will be on disk. Lines are added, never touched.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Text {
+    format: u32,
     /// Header and entries, each line with its end.
     body: String,
     entries: u32,
@@ -75,11 +83,13 @@ pub struct Text {
 
 impl Default for Text {
     fn default() -> Self {
+        let header = header(FORMAT);
         Text {
-            body: format!("{HEADER}\n"),
+            format: FORMAT,
+            body: format!("{header}\n"),
             entries: 0,
-            link: HEADER.into(),
-            digest: HEADER.into(),
+            link: header.clone(),
+            digest: header,
         }
     }
 }
@@ -117,6 +127,32 @@ impl Text {
         (self.link, self.digest) = (link, digest);
         self.entries += 1;
         Ok(())
+    }
+
+    /// The format that its lines are linked under.
+    pub fn format(&self) -> u32 {
+        self.format
+    }
+
+    /// The same lines, linked anew under the newest format; entries that were changed still do not fit their links.
+    pub fn renewed(&self, changed: &[u32]) -> Text {
+        let mut new = Text::default();
+        let first = self.body.find('\n').map_or(self.body.len(), |at| at + 1);
+        for (n, line) in (1..).zip(self.body[first..].lines()) {
+            let Ok(Line { linked, link, .. }) = read_line(line) else {
+                continue;
+            };
+            let next = if changed.contains(&n) {
+                link.to_string()
+            } else {
+                link_of(&new.link, linked)
+            };
+            new.digest = link_of(&new.digest, linked);
+            new.body.push_str(&format!("{linked} // {next}\n"));
+            new.link = next;
+            new.entries += 1;
+        }
+        new
     }
 
     /// How many entries it holds.
@@ -248,6 +284,7 @@ struct Line<'a> {
 
 /// The lines of a notebook, found to be where they belong.
 struct Layout<'a> {
+    format: u32,
     lines: Vec<Line<'a>>,
     /// Where the entries end in the text.
     body: usize,
@@ -266,10 +303,13 @@ impl<'a> Layout<'a> {
         let Some((&header, rest)) = all.split_first() else {
             return Err(damaged(1, "the file is empty"));
         };
-        if header != HEADER {
-            let cause = format!("not a notebook: the first line is not `{HEADER}`");
+        let Some(format) = (1..=FORMAT).find(|f| header == self::header(*f)) else {
+            let cause = format!(
+                "not a notebook: the first line is not `{}`",
+                self::header(FORMAT)
+            );
             return Err(damaged(1, cause));
-        }
+        };
         let Some((&foot, rest)) = rest.split_last() else {
             return Err(damaged(1, "cut short after the first line"));
         };
@@ -289,6 +329,7 @@ impl<'a> Layout<'a> {
             .map(|(no, line)| read_line(line).map_err(|cause| damaged(no, cause)))
             .collect::<Result<Vec<_>, _>>()?;
         Ok(Layout {
+            format,
             lines,
             body: text.len() - foot.len() - closing.len() - 2,
             footer_entries,
@@ -303,7 +344,7 @@ impl<'a> Layout<'a> {
     fn chained(&self, text: &str) -> (Text, Vec<u32>) {
         let mut changed = Vec::new();
         // The first link is over the first line too, which holds the number of the format.
-        let head = || HEADER.to_string();
+        let head = || header(self.format);
         let (mut written, mut due, mut digest) = (head(), head(), head());
         for (n, line) in (1..).zip(&self.lines) {
             let by_written = link_of(&written, line.linked);
@@ -334,6 +375,7 @@ impl<'a> Layout<'a> {
             changed.dedup();
         }
         let text = Text {
+            format: self.format,
             body: text[..self.body].to_string(),
             entries,
             // From the footer: if that does not fit the last line, the next one will show it for ever.
@@ -378,7 +420,7 @@ fn parse(text: &str, layout: &Layout<'_>) -> Result<Vec<Arc<Entry>>, Fault> {
     }
     let whole: Document =
         ron::from_str(text).map_err(|e| damaged(e.span.start.line, e.code.to_string()))?;
-    if whole.format != FORMAT || whole.entries.len() != layout.lines.len() {
+    if whole.format != layout.format || whole.entries.len() != layout.lines.len() {
         return Err(damaged(1, "the lines and the document do not agree"));
     }
     Ok(whole.entries)

@@ -62,6 +62,8 @@ pub struct Target {
     path: PathBuf,
     /// What is there: nothing yet, or the file as it was last read or written here.
     seen: Option<Seen>,
+    /// The file in an older format, to be kept beside before it is written anew.
+    older: Option<(u32, Vec<u8>)>,
     _lock: Lock,
 }
 
@@ -78,12 +80,39 @@ impl Target {
         Ok(Target {
             path,
             seen: None,
+            older: None,
             _lock: lock,
         })
     }
 
     pub(super) fn read_as(&mut self, seen: Seen) {
         self.seen = Some(seen);
+    }
+
+    /// Keeps `bytes`, the file in an older format, beside it before the first save.
+    pub(super) fn keep_first(&mut self, format: u32, bytes: Vec<u8>) {
+        self.older = Some((format, bytes));
+    }
+
+    /// Writes the file in its older format beside it, under a name that nothing has yet.
+    fn keep_older(&self, format: u32, bytes: &[u8]) -> Result<(), StoreError> {
+        let stem = self.path.file_stem().unwrap_or_default().to_string_lossy();
+        for n in 1.. {
+            let again = if n == 1 {
+                String::new()
+            } else {
+                format!("-{n}")
+            };
+            let copy = self
+                .path
+                .with_file_name(format!("{stem}.format-{format}{again}.ron"));
+            let mode = fs::metadata(&self.path).ok().map(|m| m.permissions());
+            match Temporary::write(&copy, bytes, mode)?.make(&copy) {
+                Err(StoreError::Exists { .. }) => {}
+                done => return done,
+            }
+        }
+        Ok(())
     }
 
     /// A file that is to be made; the first save makes it, and never in the place of another.
@@ -113,6 +142,7 @@ impl Target {
         Ok(Target {
             path,
             seen: None,
+            older: None,
             _lock: lock,
         })
     }
@@ -134,6 +164,10 @@ impl Target {
         let bytes = text.to_bytes();
         let new = Seen::of(&bytes);
         let mode = self.still_ours(&new)?;
+        if let Some((format, bytes)) = &self.older {
+            self.keep_older(*format, bytes)?;
+            self.older = None;
+        }
         let temporary = Temporary::write(&self.path, &bytes, mode)?;
         if self.seen.is_none() {
             temporary.make(&self.path)?;

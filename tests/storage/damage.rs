@@ -153,9 +153,9 @@ fn lines_left_out_doubled_or_swapped_do_not_add_up() {
 fn the_layout_is_held_to() {
     let whole = text(&book([counted(1, 5.0)]));
     for (from, to, line, words) in [
-        ("(format: 1, ", "(format:1, ", 1, "first line"),
-        ("(format: 1, ", "(format: 0, ", 1, "first line"),
-        ("(format: 1, ", "\u{feff}(format: 1, ", 1, "first line"),
+        ("(format: 2, ", "(format:1, ", 1, "first line"),
+        ("(format: 2, ", "(format: 0, ", 1, "first line"),
+        ("(format: 2, ", "\u{feff}(format: 1, ", 1, "first line"),
         ("\n])\n", "\n\n])\n", 4, "does not end in its link"),
         ("\n])\n", "\n]) \n", 4, "not `])`"),
         ("])\n// 2 entries", "// 2 entries", 3, "not `])`"),
@@ -218,11 +218,11 @@ fn the_layout_is_held_to() {
 fn a_newer_format_is_refused_by_its_number() {
     let whole = text(&book([counted(1, 5.0)]));
     let newer = [
-        whole.replace("(format: 1,", "(format: 2,"),
-        "(format: 2, entries: [\n(n:1, colour: Blue), // 3\n])\n".into(),
-        "(\n  format: 2,\n  things: {\"a\": [1, 2.5, None]},\n)\n".into(),
+        whole.replace("(format: 2,", "(format: 3,"),
+        "(format: 3, entries: [\n(n:1, colour: Blue), // 3\n])\n".into(),
+        "(\n  format: 3,\n  things: {\"a\": [1, 2.5, None]},\n)\n".into(),
         // Cut short, which does not matter: it is not ours to judge.
-        "(format: 2, entries: [\n(n:".into(),
+        "(format: 3, entries: [\n(n:".into(),
     ];
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("newer.ron");
@@ -232,8 +232,8 @@ fn a_newer_format_is_refused_by_its_number() {
         let StoreError::Newer { found, known, .. } = &e else {
             panic!("{e}");
         };
-        assert_eq!((*found, *known, e.exit_code()), (2, 1, 65));
-        assert!(e.to_string().contains("format 2") && e.to_string().contains("format 1"));
+        assert_eq!((*found, *known, e.exit_code()), (3, 2, 65));
+        assert!(e.to_string().contains("format 3") && e.to_string().contains("formats up to 2"));
         assert_eq!(fs::read_to_string(&path).unwrap(), text);
     }
 }

@@ -2,10 +2,12 @@
 
 use crate::common::{at, book, counted, everything, note, opened};
 use proptest::prelude::*;
-use rackside::assay::{Reading, Stamp, TubeNo};
+use rackside::assay::{Model, Reading, ScaleErrors, Stamp, TubeNo};
 use rackside::notebook::{Count, Entry, Notebook, What};
-use rackside::store::Text;
 use rackside::store::format::{Fault, MOST_BYTES, read};
+use rackside::store::{Access, Holder, Text, open_for_writing};
+use rackside::units::{Mark, Typed};
+use std::fs;
 use std::sync::Arc;
 
 fn bytes(b: &Notebook) -> Vec<u8> {
@@ -36,7 +38,7 @@ fn the_layout_is_the_one_described() {
     let lines = lines(&b);
     let n = b.entries().len();
     assert_eq!(lines.len(), n + 3);
-    assert_eq!(lines[0], "(format: 1, entries: [");
+    assert_eq!(lines[0], "(format: 2, entries: [");
     assert_eq!(lines[n + 1], "])");
     let last = lines[n].rsplit_once(" // ").unwrap().1;
     assert_eq!(lines[n + 2], format!("// {n} entries, last {last}"));
@@ -56,7 +58,7 @@ fn links_are_those_of_sha256sum() {
     use std::io::Write;
     use std::process::{Command, Stdio};
     let lines = lines(&everything());
-    let mut previous = String::from("(format: 1, entries: [");
+    let mut previous = String::from("(format: 2, entries: [");
     for line in &lines[1..4] {
         let (text, link) = line.rsplit_once(" // ").unwrap();
         let mut sum = Command::new("sha256sum")
@@ -74,15 +76,80 @@ fn links_are_those_of_sha256sum() {
     }
 }
 
-/// A file of format 1 as it was first written. It must read for ever; while 1 is the newest format,
-/// the same entries also give the same bytes.
+/// Files as they were first written in each format. They must read for ever; those of the newest format are
+/// also what the same entries give today.
 #[test]
-fn the_golden_file_of_format_1() {
-    let golden = include_bytes!("golden/format-1.ron");
+fn the_golden_files() {
+    let older = include_bytes!("golden/format-1.ron");
+    let back = read(older).unwrap();
+    assert!(back.changed.is_empty());
+    assert_eq!(back.text.format(), 1);
+    assert_eq!(back.text.to_bytes(), older);
+    assert_eq!(back.notebook.entries(), everything().entries());
+    let golden = include_bytes!("golden/format-2.ron");
     let back = read(golden).unwrap();
     assert!(back.changed.is_empty());
-    assert_eq!(back.notebook.entries(), everything().entries());
+    assert_eq!(back.text.format(), 2);
+    assert_eq!(back.notebook.entries(), newest().entries());
     assert_eq!(bytes(&back.notebook), golden);
+}
+
+/// Everything, and what format 2 added: scale errors and a chosen law of binding.
+fn newest() -> Notebook {
+    let mut book = everything();
+    let t = book.titration();
+    let mut protocol = t.protocol.clone();
+    let share = |text: &str| Some(Typed::parse(text, Mark::Point).unwrap());
+    protocol.numbers.scale_errors = ScaleErrors {
+        stock: share("3 %"),
+        specific_activity: share("4 %"),
+        efficiency: share("2 %"),
+        volume: share("1 %"),
+        protein: share("10 %"),
+    };
+    protocol.numbers.model = Some(Model::TwoClasses);
+    let what = What::Amended {
+        protocol: Box::new(protocol),
+        levels: t.levels.clone(),
+        reason: "errors that all tubes share".into(),
+    };
+    book.record(what, at(), "ann").unwrap();
+    book
+}
+
+/// A file of format 1 stays as it is until something is saved; then it is of the newest format, with all its lines, and
+/// the old one is beside it.
+#[test]
+fn an_older_format_is_taken_on_with_a_copy_kept() {
+    let older = include_bytes!("golden/format-1.ron");
+    let changed = String::from_utf8(older.to_vec())
+        .unwrap()
+        .replacen("n:3,", "n: 3,", 1);
+    for (bytes, marked) in [(older.to_vec(), vec![]), (changed.into_bytes(), vec![3])] {
+        let folder = tempfile::tempdir().unwrap();
+        let path = folder.path().join("old.ron");
+        let copy = folder.path().join("old.format-1.ron");
+        fs::write(&path, &bytes).unwrap();
+        let holder = Holder {
+            who: "ann".into(),
+            since: at(),
+        };
+        let mut opened = open_for_writing(&path, &holder).unwrap();
+        assert_eq!(opened.changed, marked);
+        assert_eq!(fs::read(&path).unwrap(), bytes);
+        assert!(!copy.exists());
+        let entry = opened.notebook.record(note("y"), at(), "ann").unwrap();
+        opened.text.append(&entry).unwrap();
+        let Access::Write(mut target) = opened.access else {
+            panic!()
+        };
+        target.save(&opened.text).unwrap();
+        assert_eq!(fs::read(&copy).unwrap(), bytes);
+        let back = read(&fs::read(&path).unwrap()).unwrap();
+        assert_eq!(back.text.format(), 2);
+        assert_eq!(back.changed, marked);
+        assert_eq!(back.notebook.entries(), opened.notebook.entries());
+    }
 }
 
 #[test]
@@ -139,7 +206,7 @@ impl DigestAfter for Text {
     /// The chain over lines as they are, links left aside.
     fn digest_after(self, lines: Vec<String>) -> String {
         use sha2::{Digest, Sha256};
-        let first = String::from("(format: 1, entries: [");
+        let first = String::from("(format: 2, entries: [");
         lines.iter().fold(first, |link, line| {
             let sum = Sha256::digest(format!("{link}{line}").as_bytes());
             sum[..8].iter().map(|b| format!("{b:02x}")).collect()

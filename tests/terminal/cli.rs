@@ -217,7 +217,7 @@ fn files() -> Home {
     assert_ne!(changed, whole);
     home.write("changed.ron", changed);
     home.write("cut.ron", &whole[..whole.len() / 2]);
-    home.write("newer.ron", whole.replacen("format: 1", "format: 2", 1));
+    home.write("newer.ron", whole.replacen("format: 2", "format: 3", 1));
     home.write("other.ron", "(a: 1)\n");
     home.write("empty.ron", "");
     home.write("bytes.ron", [0xff, 0xfe, 0x00]);
