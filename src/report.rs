@@ -1,6 +1,8 @@
 //! What leaves the bench: a summary to read and one for programs.
 
 mod json;
+mod json_judged;
+pub mod judged;
 mod text;
 pub mod values;
 

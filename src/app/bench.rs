@@ -174,6 +174,14 @@ impl Desk {
                 };
                 Vec::new()
             }
+            Command::Laws => {
+                if self.analysed.is_some() {
+                    self.layers.push(Layer::Laws);
+                } else {
+                    self.refuse("fitting; a moment");
+                }
+                Vec::new()
+            }
             Command::Glyphs => {
                 self.look.fine = !self.look.fine;
                 Vec::new()

@@ -27,6 +27,8 @@ pub const BLANKS: [&str; 3] = ["scintillant", "scintillant and filter", "empty c
 pub const LAID: [&str; 2] = ["equal ratios", "a list"];
 /// How solutions are made.
 pub const MADE: [&str; 2] = ["each from stock", "serial from the top"];
+/// Laws of binding that can be shown.
+pub const LAWS: [&str; 4] = ["one class, as usual", "one class", "two classes", "Hill"];
 /// Characters of the plot.
 pub const GLYPHS: [&str; 3] = ["automatic", "fine", "plain"];
 
@@ -299,6 +301,18 @@ pub const COUNTER: &[Spec] = &[
         "numbers.dilution_error",
         Kind::Text,
         "pipetting error of one dilution step, e.g. 2 %; 0 takes levels as exact",
+    ),
+    field(
+        "shared errors",
+        "numbers.scale_errors",
+        Kind::Text,
+        "e.g. stock 3 %; efficiency 2 %; volume 1 %; specific activity 4 %; protein 10 %",
+    ),
+    field(
+        "law shown",
+        "numbers.model",
+        Kind::Choice(&LAWS),
+        "one class, unless you choose another here or with m at the tubes",
     ),
     field(
         "confidence",

@@ -114,7 +114,7 @@ impl Form {
         for f in &mut self.fields {
             f.error = errors
                 .iter()
-                .find(|(at, _)| at == f.spec.name || at == f.spec.path)
+                .find(|(at, _)| at == f.spec.name || lies_at(at, f.spec.path))
                 .map(|(_, what)| what.clone());
         }
     }
@@ -230,4 +230,10 @@ pub(super) fn edit(input: &mut Input, key: Key, most: usize) -> Did {
         Some(changed) if changed.value => Did::Changed,
         _ => Did::Moved,
     }
+}
+
+/// Whether an error at `at` is one of the field at `path`, or of a part of it.
+fn lies_at(at: &str, path: &str) -> bool {
+    at.strip_prefix(path)
+        .is_some_and(|rest| !path.is_empty() && (rest.is_empty() || rest.starts_with('.')))
 }

@@ -3,7 +3,7 @@
 use super::form::edit;
 use super::keys::{self, Key};
 use super::{Desk, Effect, Step};
-use crate::assay::{ReadingId, Reason, Stamp, Suspicion, TubeNo};
+use crate::assay::{Model, ReadingId, Reason, Stamp, Suspicion, TubeNo};
 use crate::notebook::{What, reading_in_words};
 use tui_input::Input;
 
@@ -52,6 +52,8 @@ pub enum Layer {
         /// The line.
         input: Input,
     },
+    /// The laws of binding side by side, one to be chosen by its digit.
+    Laws,
     /// The keys, from a line down.
     Help {
         /// The first line shown.
@@ -99,6 +101,7 @@ impl Desk {
                     Vec::new()
                 }
             },
+            Some(Layer::Laws) => self.law_key(key, now),
             Some(Layer::Help { top }) => {
                 let lines = match self.step {
                     Step::Result => keys::result_help(self.look.columns),
@@ -159,6 +162,42 @@ impl Desk {
             }
             _ => Vec::new(),
         }
+    }
+
+    /// Chooses a law of binding: an amendment, since the summary depends on it.
+    fn law_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
+        let chosen = match key {
+            Key::Char('0') => None,
+            Key::Char('1') => Some(Model::OneClass),
+            Key::Char('2') => Some(Model::TwoClasses),
+            Key::Char('3') => Some(Model::Hill),
+            Key::Char('-' | 'q') | Key::Esc | Key::Enter => {
+                self.layers.pop();
+                return Vec::new();
+            }
+            _ => {
+                self.refuse("a law is chosen by its digit; 0 chooses none, - leaves it");
+                return Vec::new();
+            }
+        };
+        self.layers.pop();
+        let t = self.titration();
+        if t.protocol.numbers.model == chosen {
+            self.say("that is what is shown already");
+            return Vec::new();
+        }
+        let (mut protocol, levels) = (t.protocol.clone(), t.levels.clone());
+        protocol.numbers.model = chosen;
+        let reason = match chosen {
+            Some(model) => format!("{} chosen to be shown", model.words()),
+            None => "no law of binding chosen: one class is shown".into(),
+        };
+        let what = What::Amended {
+            protocol: Box::new(protocol),
+            levels,
+            reason,
+        };
+        self.recorded(what, now)
     }
 
     fn line_done(&mut self, what: LineFor, words: String, now: Stamp) -> Vec<Effect> {

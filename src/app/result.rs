@@ -11,7 +11,10 @@ use crate::report::{self, Page, values};
 pub fn fit_line(t: &Titration, analysis: &Analysis) -> String {
     let (read, all) = t.progress();
     let said = match &analysis.outcome {
-        Outcome::Fitted(fit) => format!("Kd {}", values::kd(&t.protocol, fit).value),
+        Outcome::Fitted(fit) => {
+            let kd = values::kd(&t.protocol, fit);
+            format!("{} {}", kd.name, kd.shown.value)
+        }
         Outcome::TooEarly(_) => "too early for Kd".into(),
         Outcome::NoConvergence => "no fit found".into(),
     };

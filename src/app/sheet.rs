@@ -6,7 +6,7 @@ mod write;
 
 pub(super) use lab::{lab_form, lab_key, read_lab};
 
-use super::fields::{self, BLANKS, LAID, MADE, MARKS, READING, SITES, STICKS, UNITS};
+use super::fields::{self, BLANKS, LAID, LAWS, MADE, MARKS, READING, SITES, STICKS, UNITS};
 use super::form::{Did, Form};
 use super::keys::Key;
 use super::{Step, Typed};
@@ -57,6 +57,7 @@ impl Forms {
             "background vial" => BLANKS[0].into(),
             "decimal mark" => MARKS[usize::from(lab.mark == Mark::Comma)].into(),
             "confidence" => "95 %".into(),
+            "law shown" => LAWS[0].into(),
             "try a printout" => "2406".into(),
             name => cv_fields(name, lab.cv_prior, &lab.dilution_error, lab.mark),
         });

@@ -78,7 +78,7 @@ pub(super) enum Command {
     },
     /// Print the result
     #[command(
-        after_help = "Examples:\n  rackside summary rack.ron\n  rackside summary rack.ron --format json | head"
+        after_help = "Examples:\n  rackside summary rack.ron\n  rackside summary rack.ron --format json | head\n  rackside summary rack.ron --all-laws"
     )]
     Summary {
         /// The titration
@@ -89,6 +89,9 @@ pub(super) enum Command {
         /// Plain characters in the plot
         #[arg(long)]
         ascii: bool,
+        /// Two classes and Hill with their intervals too, whether or not they are supported
+        #[arg(long)]
+        all_laws: bool,
     },
     /// Say whether a file is whole and as rackside wrote it
     #[command(after_help = "Example:\n  rackside check rack.ron")]

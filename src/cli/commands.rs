@@ -3,7 +3,7 @@
 use super::args::{Args, Command, Format, Sitting};
 use super::failure::Failure;
 use super::{out, table};
-use crate::analysis::analyse;
+use crate::analysis::analyse_with;
 use crate::app::{Look, Wide};
 use crate::assay::{Lab, PlotGlyphs, Sheet};
 use crate::figure::Glyphs;
@@ -54,7 +54,8 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
             file,
             format,
             ascii,
-        } => summary(&file, format, ascii)?,
+            all_laws,
+        } => summary(&file, format, ascii, all_laws)?,
         Command::Check { file } => return check(&file),
         Command::Demo { list: true, .. } => {
             let lines: Vec<String> = demos::DEMOS
@@ -292,9 +293,14 @@ fn take(
     Ok(())
 }
 
-fn page(opened: &store::Opened, format: Format, ascii: bool) -> Result<String, Failure> {
+fn page(
+    opened: &store::Opened,
+    format: Format,
+    ascii: bool,
+    all_laws: bool,
+) -> Result<String, Failure> {
     let t = opened.notebook.titration();
-    let analysis = analyse(t);
+    let analysis = analyse_with(t, all_laws);
     match format {
         Format::Json => report::json(t, &analysis).map_err(|e| Failure::new(1, e.to_string())),
         Format::Text => Ok(report::text(&Page {
@@ -308,10 +314,10 @@ fn page(opened: &store::Opened, format: Format, ascii: bool) -> Result<String, F
     }
 }
 
-fn summary(path: &Path, format: Format, ascii: bool) -> Result<(), Failure> {
+fn summary(path: &Path, format: Format, ascii: bool, all_laws: bool) -> Result<(), Failure> {
     let opened = store::open(path)?;
     say_changed(path, &opened);
-    out::result(&page(&opened, format, ascii)?)
+    out::result(&page(&opened, format, ascii, all_laws)?)
 }
 
 fn check(path: &Path) -> Result<ExitCode, Failure> {
@@ -349,5 +355,5 @@ fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
         return sit(&path, sitting);
     }
     let opened = store::carried(demo.name, demo.text)?;
-    out::result(&page(&opened, Format::Text, sitting.ascii)?)
+    out::result(&page(&opened, Format::Text, sitting.ascii, false)?)
 }

@@ -1,8 +1,10 @@
 //! The summary for programs. Its keys are stable and documented in the README.
 
+use super::json_judged::{JsonModel, JsonSoundness, JsonSuspects, models, soundness, suspects};
+use super::values;
 use crate::analysis::{Analysis, TubeResult};
 use crate::assay::{Titration, sites_by_amount};
-use crate::fit::{End, Fit, Outcome};
+use crate::fit::{End, Estimate, Fit, Outcome};
 use serde::Serialize;
 
 /// The number of this layout; raised when a key changes its meaning or goes.
@@ -18,6 +20,11 @@ struct Summary<'a> {
     without_flags: Option<JsonFit>,
     too_early: Option<Vec<String>>,
     no_convergence: bool,
+    model_chosen: Option<&'static str>,
+    models: Vec<JsonModel>,
+    suspects: JsonSuspects,
+    soundness: Option<JsonSoundness>,
+    left_out: Vec<String>,
 }
 
 #[derive(Serialize)]
@@ -34,13 +41,15 @@ struct JsonTube {
     free_nm: Option<f64>,
     free_in_tube_nm: Option<f64>,
     specific_nm: Option<f64>,
+    expected_counts: Option<f64>,
+    residual: Option<f64>,
     suspect: bool,
     suspect_reason: Option<String>,
     lost: Option<String>,
 }
 
 #[derive(Serialize)]
-struct JsonFit {
+pub(super) struct JsonFit {
     model: &'static str,
     tubes_used: usize,
     minus2lnl: f64,
@@ -49,6 +58,7 @@ struct JsonFit {
     cv: f64,
     parameters: Vec<JsonParameter>,
     sites: Option<JsonSites>,
+    sites_by_amount: Vec<JsonSites>,
 }
 
 #[derive(Serialize)]
@@ -65,6 +75,7 @@ struct JsonParameter {
 
 #[derive(Serialize)]
 struct JsonSites {
+    name: &'static str,
     unit: &'static str,
     estimate: f64,
     low: Option<f64>,
@@ -88,18 +99,30 @@ pub fn json(titration: &Titration, analysis: &Analysis) -> Result<String, serde_
         format: FORMAT,
         title: &titration.protocol.title,
         confidence: titration.protocol.numbers.confidence,
-        tubes: analysis.tubes.iter().map(|t| tube(titration, t)).collect(),
+        tubes: analysis
+            .tubes
+            .iter()
+            .map(|t| tube(titration, analysis, t))
+            .collect(),
         fit: analysis.fit().map(|f| fit(titration, f)),
         without_flags: analysis.without_flags().fit().map(|f| fit(titration, f)),
         too_early,
         no_convergence,
+        model_chosen: titration.protocol.numbers.model.map(|m| m.id()),
+        models: models(titration, analysis),
+        suspects: suspects(analysis),
+        soundness: soundness(analysis),
+        left_out: values::left_out(&titration.protocol),
     };
     let mut text = serde_json::to_string_pretty(&summary)?;
     text.push('\n');
     Ok(text)
 }
 
-fn tube(titration: &Titration, t: &TubeResult) -> JsonTube {
+fn tube(titration: &Titration, analysis: &Analysis, t: &TubeResult) -> JsonTube {
+    let fitted = analysis
+        .fit()
+        .and_then(|f| f.tubes.iter().find(|x| x.tube == t.tube.no));
     JsonTube {
         vial: t.tube.no.0,
         level: t.tube.level.map(|l| l.0),
@@ -113,6 +136,8 @@ fn tube(titration: &Titration, t: &TubeResult) -> JsonTube {
         free_nm: t.measured.map(|m| m.free_nm),
         free_in_tube_nm: t.free_nm,
         specific_nm: t.specific_nm,
+        expected_counts: fitted.map(|x| x.expected),
+        residual: fitted.map(|x| x.residual()),
         suspect: t.suspect.is_some(),
         suspect_reason: t.suspect.as_ref().map(ToString::to_string),
         lost: titration.lost.get(&t.tube.no).map(|l| l.why.to_string()),
@@ -129,7 +154,7 @@ fn end(end: End) -> &'static str {
     }
 }
 
-fn fit(titration: &Titration, f: &Fit) -> JsonFit {
+pub(super) fn fit(titration: &Titration, f: &Fit) -> JsonFit {
     let parameters = f
         .estimates
         .iter()
@@ -144,17 +169,23 @@ fn fit(titration: &Titration, f: &Fit) -> JsonFit {
             at_floor: e.at_floor,
         })
         .collect();
-    let sites = sites_by_amount(&titration.protocol)
-        .zip(f.estimate("sites_nm"))
-        .map(|(scale, e)| {
+    let by_amount = |e: &Estimate| {
+        sites_by_amount(&titration.protocol).map(|scale| {
             let of = |nm: f64| nm * scale.per_nm;
+            let e = values::by_amount(&titration.protocol, f, e);
             JsonSites {
+                name: e.name,
                 unit: scale.unit,
                 estimate: of(e.value),
                 low: e.low.value().map(of),
                 high: e.high.value().map(of),
             }
-        });
+        })
+    };
+    let all_sites = f
+        .of_isotherm()
+        .iter()
+        .filter(|e| e.name.starts_with("sites"));
     JsonFit {
         model: f.model.id(),
         tubes_used: f.tubes_used,
@@ -163,6 +194,7 @@ fn fit(titration: &Titration, f: &Fit) -> JsonFit {
         aicc: f.aicc,
         cv: f.cv,
         parameters,
-        sites,
+        sites: f.estimate("sites_nm").and_then(by_amount),
+        sites_by_amount: all_sites.filter_map(by_amount).collect(),
     }
 }

@@ -1,12 +1,11 @@
 //! The summary as a page of text for 80 columns.
 
+use super::judged;
 use super::values::{self, Shown};
 use crate::analysis::Analysis;
-use crate::assay::{
-    FieldLine, Kept, Made, Protocol, Reason, Role, Sticks, Titration, Tube, sites_by_amount,
-};
+use crate::assay::{FieldLine, Kept, Made, Protocol, Reason, Role, Sticks, Titration, Tube};
 use crate::figure::{Glyphs, Scale, isotherm, render};
-use crate::fit::{Fit, Outcome};
+use crate::fit::{End, Fit, Model, Outcome};
 use crate::notebook::{Notebook, What};
 use crate::units::{clean, fixed, grouped, short, significant};
 
@@ -45,6 +44,8 @@ pub fn text(page: &Page) -> String {
     head(&mut out, page, t);
     result(&mut out, t, page.analysis);
     plot(&mut out, page, t);
+    laws(&mut out, t, page.analysis);
+    soundness(&mut out, t, page.analysis);
     flags(&mut out, t);
     rack(&mut out, t, page.analysis);
     protocol(&mut out, t);
@@ -75,6 +76,19 @@ impl Lines {
         self.line(format!("{text} {}", "-".repeat(rest)));
     }
 
+    /// Words behind a fixed start, broken to the width of the page and kept to the right of it.
+    fn hanging(&mut self, start: &str, text: &str) {
+        let column = start.chars().count();
+        let mut lead = start.to_string();
+        for line in words_in(text, WIDTH.saturating_sub(column)) {
+            self.line(format!("{lead}{line}"));
+            lead = " ".repeat(column);
+        }
+        if !lead.trim().is_empty() {
+            self.line(lead);
+        }
+    }
+
     /// Words broken to the width of the page, each line after the first begun with `indent`.
     fn wrapped(&mut self, text: &str, indent: &str) {
         let lead = text.len() - text.trim_start().len();
@@ -91,6 +105,21 @@ impl Lines {
         }
         self.line(&line);
     }
+}
+
+/// Words in lines of at most this width.
+fn words_in(text: &str, most: usize) -> Vec<String> {
+    let mut lines: Vec<String> = Vec::new();
+    for word in text.split_whitespace() {
+        match lines.last_mut() {
+            Some(line) if line.chars().count() + 1 + word.chars().count() <= most => {
+                line.push(' ');
+                line.push_str(word);
+            }
+            _ => lines.push(word.to_string()),
+        }
+    }
+    lines
 }
 
 fn head(out: &mut Lines, page: &Page, t: &Titration) {
@@ -162,19 +191,23 @@ fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
             s.value, s.interval
         ));
     };
-    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("pKd {p}"));
-    line("Kd", values::kd(protocol, fit), p_kd);
-    line("sites", values::sites(protocol, fit), String::new());
-    if sites_by_amount(protocol).is_some()
-        && values::sites(protocol, fit) != values::sites_in_tube(protocol, fit)
-    {
-        line("", values::sites_in_tube(protocol, fit), String::new());
+    for n in values::isotherm(protocol, fit) {
+        let p_kd = n.p_kd.map_or(String::new(), |p| format!("pKd {p}"));
+        line(&n.name, n.shown, p_kd);
+        if let Some(in_tube) = n.in_tube {
+            line("", in_tube, String::new());
+        }
     }
     line("ns", values::ns(fit), "bound per free".into());
     line("background", values::background(fit), String::new());
     out.line(format!(
-        "  {}, {} of {tubes} tubes used, tube CV found {} %",
+        "  {}{}, {} of {tubes} tubes used, tube CV found {} %",
         fit.model.words(),
+        if protocol.numbers.model.is_some() {
+            " (chosen by hand)"
+        } else {
+            ""
+        },
         fit.tubes_used,
         significant(100.0 * fit.cv, 2)
     ));
@@ -185,7 +218,55 @@ fn estimates(out: &mut Lines, protocol: &Protocol, fit: &Fit, tubes: usize) {
         fixed(fit.prior_term, 3)
     ));
     out.line("  fitted to gross counts by maximum likelihood; intervals by profile likelihood");
-    out.line(format!("  {}", values::TAKEN_AS_EXACT));
+    for said in values::left_out(protocol) {
+        out.hanging("  ", &said);
+    }
+}
+
+/// The laws of binding side by side.
+fn laws(out: &mut Lines, t: &Titration, analysis: &Analysis) {
+    if analysis.fit_of(Model::OneClass).is_none() && analysis.fit().is_none() {
+        return;
+    }
+    out.title("Laws of binding, against one class");
+    for l in judged::laws(analysis) {
+        let start = format!("  {:<12}AICc {:<9}{:<11}", l.model.words(), l.aicc, l.p);
+        out.hanging(&start, &l.standing);
+        let offered = analysis.choice.offered() == Some(l.model);
+        let outcome = analysis.compared.outcome(l.model);
+        let asked = outcome
+            .fit()
+            .is_some_and(|f| f.estimates.iter().all(|e| e.low != End::Unasked));
+        if l.model != analysis.choice.shown && (offered || (asked && l.model != Model::OneClass)) {
+            let of = |f: &Fit| values::isotherm(&t.protocol, f);
+            out.hanging(&" ".repeat(14), &judged::in_short(outcome, of));
+        }
+    }
+}
+
+/// Whether the fit describes its readings, and what does not fit with the others.
+fn soundness(out: &mut Lines, t: &Titration, analysis: &Analysis) {
+    let lines = judged::soundness(t, analysis);
+    if lines.is_empty() {
+        return;
+    }
+    out.title("Soundness of the fit");
+    for (name, found) in lines {
+        out.hanging(&format!("  {name:.<20} "), &clean(&found));
+    }
+    let suspects = analysis
+        .suspects
+        .tubes
+        .iter()
+        .map(|s| judged::suspect(t, s));
+    let groups = analysis
+        .suspects
+        .groups
+        .iter()
+        .map(|d| judged::disagreement(t, d));
+    for said in suspects.chain(groups) {
+        out.hanging(&format!("  {:.<20} ", "look at"), &clean(&said));
+    }
 }
 
 fn plot(out: &mut Lines, page: &Page, t: &Titration) {

@@ -1,7 +1,9 @@
 //! Estimates in words, the same on the screen and on paper.
 
 use crate::analysis::Analysis;
-use crate::assay::{DisplayUnit, Protocol, sites_shown};
+use crate::assay::{
+    DisplayUnit, Protocol, ReceptorAmount, SitesScale, sites_by_amount, sites_shown,
+};
 use crate::fit::{End, Estimate, Fit};
 use crate::units::significant;
 
@@ -17,45 +19,85 @@ pub struct Shown {
 /// Significant digits of an estimate and of the ends of its interval.
 const DIGITS: usize = 3;
 
-/// Kd in the unit of the protocol.
+/// A parameter of the isotherm as it is shown.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Named {
+    /// What it is called: `Kd`, `sites`; with a number where there are two classes; `Kh` and `n` for Hill.
+    pub name: String,
+    /// Its estimate and interval.
+    pub shown: Shown,
+    /// pKd of a constant whose interval has both ends.
+    pub p_kd: Option<String>,
+    /// Sites in the tube, where `shown` has them by the amount of preparation.
+    pub in_tube: Option<Shown>,
+}
+
+/// The parameters of the isotherm in the units of the protocol.
 ///
-/// While the interval has no upper end no estimate is shown: the readings only say what Kd is above.
-pub fn kd(protocol: &Protocol, fit: &Fit) -> Shown {
+/// While the interval of a constant has no upper end no estimate is shown: the readings only say what it is above.
+pub fn isotherm(protocol: &Protocol, fit: &Fit) -> Vec<Named> {
     let unit = protocol.display.concentration;
-    let Some(e) = fit.estimate("kd_nm") else {
-        return nothing();
-    };
-    shown(e, |nm| unit.from_nm(nm), unit.word(), false)
-}
-
-/// pKd, the negative decadic logarithm of Kd in M; `None` while an end of Kd is open.
-pub fn p_kd(fit: &Fit) -> Option<String> {
-    let e = fit.estimate("kd_nm")?;
-    e.low.value().and(e.high.value())?;
-    Some(format!("{:.2}", 9.0 - e.value.log10()))
-}
-
-/// Sites in the unit of the protocol.
-pub fn sites(protocol: &Protocol, fit: &Fit) -> Shown {
     let scale = sites_shown(protocol);
-    let Some(e) = fit.estimate("sites_nm") else {
-        return nothing();
-    };
-    shown(e, |nm| nm * scale.per_nm, scale.unit, false)
+    fit.of_isotherm()
+        .iter()
+        .map(|e| {
+            let name = called(e.name);
+            let concentration =
+                |unit_words: &str| shown(e, |nm| unit.from_nm(nm), unit_words, false);
+            let (shown, p_kd, in_tube) = if e.name == "n" {
+                (shown(e, |n| n, "", true), None, None)
+            } else if e.name.starts_with('k') {
+                let closed = e.low.value().and(e.high.value()).is_some();
+                let p_kd = closed.then(|| format!("{:.2}", 9.0 - e.value.log10()));
+                (concentration(unit.word()), p_kd, None)
+            } else if scale == SitesScale::IN_TUBE {
+                (shown(e, |nm| nm, scale.unit, false), None, None)
+            } else {
+                let by_amount = by_amount(protocol, fit, e);
+                let shown = shown(&by_amount, |nm| nm * scale.per_nm, scale.unit, false);
+                let in_tube = concentration(&format!("{} in the tube", unit.word()));
+                (shown, None, Some(in_tube))
+            };
+            Named {
+                name,
+                shown,
+                p_kd,
+                in_tube,
+            }
+        })
+        .collect()
 }
 
-/// Sites as a concentration in the tube.
-pub fn sites_in_tube(protocol: &Protocol, fit: &Fit) -> Shown {
-    let unit = protocol.display.concentration;
-    let Some(e) = fit.estimate("sites_nm") else {
-        return nothing();
+/// What a parameter of an isotherm is called on screen and paper: `Kd 2` for `kd2_nm`.
+pub fn called(name: &str) -> String {
+    let bare = name.trim_end_matches("_nm");
+    let (word, no) = match bare.find(|c: char| c.is_ascii_digit()) {
+        Some(at) => bare.split_at(at),
+        None => (bare, ""),
     };
-    shown(
-        e,
-        |nm| unit.from_nm(nm),
-        &format!("{} in the tube", unit.word()),
-        false,
-    )
+    let word = match word {
+        "kd" => "Kd",
+        "kh" => "Kh",
+        other => other,
+    };
+    if no.is_empty() {
+        word.into()
+    } else {
+        format!("{word} {no}")
+    }
+}
+
+/// Sites with what is not known of the amount of preparation that they are divided by.
+pub fn by_amount(protocol: &Protocol, fit: &Fit, sites: &Estimate) -> Estimate {
+    match &protocol.numbers.scale_errors.protein {
+        Some(error) => sites.widened(error.base(), fit.cut),
+        None => sites.clone(),
+    }
+}
+
+/// The first constant of the isotherm in the unit of the protocol.
+pub fn kd(protocol: &Protocol, fit: &Fit) -> Named {
+    isotherm(protocol, fit).swap_remove(0)
 }
 
 /// Nonspecific bound per free, dimensionless.
@@ -142,9 +184,53 @@ pub fn decimals(analysis: &Analysis, unit: DisplayUnit) -> usize {
     }
 }
 
-/// What the intervals leave out.
-pub const TAKEN_AS_EXACT: &str =
-    "stock (no decay computed), efficiency, volume, protein taken as exact";
+/// What the intervals allow for beyond the readings, and what they leave out.
+pub fn left_out(protocol: &Protocol) -> Vec<String> {
+    let (given, exact) = shared_errors(protocol);
+    let mut said = Vec::new();
+    if !given.is_empty() {
+        said.push(format!("allowed for: {}", given.join(", ")));
+    }
+    if !exact.is_empty() {
+        said.push(format!("taken as exact: {}", exact.join(", ")));
+    }
+    said.push("no decay computed".into());
+    said
+}
 
 /// The same in the room of a screen.
-pub const TAKEN_AS_EXACT_SHORT: &str = "stock, efficiency, volume taken as exact";
+pub fn left_out_in_short(protocol: &Protocol) -> String {
+    let (given, exact) = shared_errors(protocol);
+    match (given.len(), exact.as_slice()) {
+        (0, _) => "stock, efficiency, volume taken as exact".into(),
+        (_, []) => "errors of scale allowed for".into(),
+        (_, exact) => format!("{} exact", exact.join(", ")),
+    }
+}
+
+/// The errors that all tubes share: those that are known, with their size, and those that are taken as none.
+fn shared_errors(protocol: &Protocol) -> (Vec<String>, Vec<&'static str>) {
+    let amount = sites_by_amount(protocol).is_some();
+    let (mut given, mut exact) = (Vec::new(), Vec::new());
+    for (name, error) in protocol.numbers.scale_errors.all() {
+        match error {
+            Some(e) => given.push(format!("{name} {e}")),
+            None if name == "protein" && !amount => {}
+            None => exact.push(if name == "protein" {
+                amount_word(protocol)
+            } else {
+                name
+            }),
+        }
+    }
+    (given, exact)
+}
+
+/// What sites are divided by.
+fn amount_word(protocol: &Protocol) -> &'static str {
+    match protocol.receptor.amount {
+        ReceptorAmount::Cells(_) => "number of cells",
+        ReceptorAmount::Tissue(_) => "tissue weight",
+        _ => "protein",
+    }
+}

@@ -5,7 +5,8 @@ use crate::analysis::Analysis;
 use crate::app::Desk;
 use crate::assay::{Protocol, TubeNo, sites_shown};
 use crate::fit::{Fit, Missing, Outcome};
-use crate::report::values::{self, Shown};
+use crate::report::judged;
+use crate::report::values::{self, Named, Shown};
 use crate::units::{clean, significant};
 use ratatui::Frame;
 use ratatui::layout::Rect;
@@ -21,7 +22,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     while lines.len() + 1 < usize::from(area.height) {
         lines.push(Line::default());
     }
-    lines.push(newest(app));
+    lines.push(remark(app, usize::from(area.width)).unwrap_or_else(|| newest(app)));
     frame.render_widget(Paragraph::new(lines), area);
 }
 
@@ -80,7 +81,6 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
 }
 
 fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<'static>> {
-    let p_kd = values::p_kd(fit).map_or(String::new(), |p| format!("  pKd {p}"));
     let of = app
         .titration()
         .tubes
@@ -88,66 +88,103 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
         .filter(|t| t.level.is_some())
         .count();
     let background = values::background(fit);
+    let by_hand = if protocol.numbers.model.is_some() {
+        ", by hand"
+    } else {
+        ""
+    };
     let model = format!(
-        " {}   CV {} %   {} of {of} used",
+        " {}{by_hand}   CV {} %   {} of {of} used",
         fit.model.words(),
         significant(100.0 * fit.cv, 2),
         fit.tubes_used,
     );
     let after = if app.is_current() {
-        values::TAKEN_AS_EXACT_SHORT
+        values::left_out_in_short(protocol)
     } else {
-        "refitting ..."
+        "refitting ...".into()
     };
     let model = match format!("{model}   {after}") {
         whole if whole.len() <= width => whole,
         _ => model,
     };
-    vec![
-        line("Kd", &values::kd(protocol, fit), &p_kd),
-        line("sites", &values::sites(protocol, fit), ""),
-        line(
-            "ns",
-            &values::ns(fit),
-            &format!("   background {}", background.value),
-        ),
-        Line::from(model),
-    ]
+    let mut lines = parameters(values::isotherm(protocol, fit));
+    lines.push(line(
+        "ns",
+        &values::ns(fit),
+        &format!("   background {}", background.value),
+    ));
+    lines.push(Line::from(model));
+    lines
 }
 
+/// The parameters of the isotherm on two lines: those of a class of sites together, and Hill's coefficient with Kh.
+fn parameters(named: Vec<Named>) -> Vec<Line<'static>> {
+    let first = |n: &Named| {
+        let after = n
+            .p_kd
+            .as_ref()
+            .map_or(String::new(), |p| format!("  pKd {p}"));
+        line(&n.name, &n.shown, &after)
+    };
+    let beside = |mut line: Line<'static>, n: &Named| {
+        let gap = SECOND.saturating_sub(line.width()).max(2);
+        line.push_span(Span::raw(format!("{}{} ", " ".repeat(gap), n.name)));
+        line.push_span(Span::styled(n.shown.value.clone(), style::strong()));
+        if !n.shown.interval.is_empty() {
+            line.push_span(Span::raw(format!("  {}", n.shown.interval)));
+        }
+        line
+    };
+    match &named[..] {
+        [k1, r1, k2, r2] => {
+            let bare = |n: &Named| line(&n.name, &n.shown, "");
+            vec![beside(bare(k1), r1), beside(bare(k2), r2)]
+        }
+        [kh, sites, n] => vec![beside(first(kh), n), first(sites)],
+        all => all.iter().map(first).collect(),
+    }
+}
+
+/// The column of a second parameter on a line.
+const SECOND: usize = 36;
 /// The column where the answer with suspects begins.
 const BESIDE: usize = 42;
 
-/// The same with no reading left out, beside the estimates; units stand on the left. Where there is no room, Kd alone
-/// takes the line of the nonspecific binding: half a number would be read as a whole one.
+/// The same with no reading left out, beside the estimates; units stand on the left. Where there is no room, the constants alone
+/// take the line of the nonspecific binding: half a number would be read as a whole one.
 fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>, width: usize) {
-    let bare = |s: Shown, unit: &str| {
-        let value = s.value.replace(&format!(" {unit}"), "");
-        // An open end is said by the value itself: `above 3.1`.
+    let bare = |n: &Named| {
+        // The unit stands on the left; an open end is said by the value itself: `above 3.1`.
+        let unit = if n.name.starts_with("sites") {
+            sites_shown(protocol).unit
+        } else {
+            protocol.display.concentration.word()
+        };
+        let value = n.shown.value.replace(&format!(" {unit}"), "");
         if value.starts_with("above") {
             value
         } else {
-            format!("{value}  {}", s.interval)
+            format!("{value}  {}", n.shown.interval)
         }
     };
-    let texts = match all {
-        None => ["no fit".to_string(), String::new()],
-        Some(fit) => [
-            bare(
-                values::kd(protocol, fit),
-                protocol.display.concentration.word(),
-            ),
-            bare(values::sites(protocol, fit), sites_shown(protocol).unit),
-        ],
+    let named = all.map(|fit| values::isotherm(protocol, fit));
+    let texts: Vec<String> = match &named {
+        None => vec!["no fit".into()],
+        Some(named) => named.iter().map(bare).collect(),
     };
     let wanted = texts
         .iter()
         .map(|t| BESIDE + "| with suspects ".len() + t.len());
-    if wanted.max() > Some(width) {
-        let [kd, _] = texts;
+    if wanted.max() > Some(width) || texts.len() > 2 {
+        let constants = named.iter().flatten().filter(|n| n.name.starts_with('K'));
+        let said: Vec<String> = constants
+            .map(|n| format!("{} {}", n.name, bare(n)))
+            .collect();
         let unit = protocol.display.concentration.word();
         if let Some(line) = lines.get_mut(2) {
-            *line = Line::styled(format!(" with suspects  Kd {kd}  {unit}"), style::quiet());
+            let said = said.join("   ");
+            *line = Line::styled(format!(" with suspects  {said}  {unit}"), style::quiet());
         }
         return;
     }
@@ -158,6 +195,20 @@ fn beside(lines: &mut [Line<'static>], protocol: &Protocol, all: Option<&Fit>, w
             style::quiet(),
         ));
     }
+}
+
+/// What is remarkable about the fit, the worst first; `None` where nothing is.
+fn remark(app: &Desk, width: usize) -> Option<Line<'static>> {
+    let done = app.analysed.as_ref()?;
+    let said = judged::remarks(app.titration(), &done.analysis);
+    let more = match said.len() {
+        0 => return None,
+        1 => String::new(),
+        n => format!("   {} more: PgDn", n - 1),
+    };
+    let room = width.saturating_sub(more.len() + 4);
+    let first = style::shortened(&clean(&said[0]), room).to_string();
+    Some(Line::styled(format!(" ! {first}{more}"), style::strong()))
 }
 
 /// What the tube kept last or chosen shows, before any fit.

@@ -4,6 +4,7 @@ use super::style;
 use crate::app::{Desk, Layer, LineFor, ReasonFor, Step, keys};
 use crate::assay::Reason;
 use crate::notebook::reading_in_words;
+use crate::report::{judged, values};
 use crate::units::clean;
 use ratatui::Frame;
 use ratatui::layout::{Position, Rect};
@@ -33,6 +34,7 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             )];
             ask(frame, area, &title, input, below, fine);
         }
+        Some(Layer::Laws) => laws(frame, area, app),
         Some(Layer::Help { top }) => help(frame, area, app, *top),
         Some(Layer::Close) => {
             let (title, text) = match app.titration().closed {
@@ -155,6 +157,48 @@ fn reasons(frame: &mut Frame, area: Rect, app: &Desk, what: ReasonFor) {
         .collect();
     lines.push(Line::styled("0  leave it", style::quiet()));
     panel(frame, area, &format!("{verb}{name}"), lines, app.look.fine);
+}
+
+/// The laws of binding side by side.
+fn laws(frame: &mut Frame, area: Rect, app: &Desk) {
+    let Some(done) = &app.analysed else { return };
+    let protocol = &app.titration().protocol;
+    let width = usize::from(area.width).saturating_sub(6);
+    let mut lines = Vec::new();
+    for (digit, l) in (1..).zip(judged::laws(&done.analysis)) {
+        lines.push(Line::from(format!(
+            "{digit}  {:<12} AICc {:<9} {}",
+            l.model.words(),
+            l.aicc,
+            l.p
+        )));
+        let outcome = done.analysis.compared.outcome(l.model);
+        let short = judged::in_short(outcome, |f| values::isotherm(protocol, f));
+        for text in [short, l.standing] {
+            let wrapped = style::wrapped(&clean(&text), width.saturating_sub(3));
+            lines.extend(
+                wrapped
+                    .into_iter()
+                    .map(|t| Line::styled(format!("   {t}"), style::quiet())),
+            );
+        }
+    }
+    lines.push(Line::from("0  none chosen: one class is shown"));
+    lines.push(Line::styled(
+        "p: the chance of as large a gain over one class, where there is but one",
+        style::quiet(),
+    ));
+    lines.push(Line::styled(
+        "a digit chooses, with an entry; - leaves it",
+        style::quiet(),
+    ));
+    panel(
+        frame,
+        area,
+        "which law of binding is shown",
+        lines,
+        app.look.fine,
+    );
 }
 
 fn help(frame: &mut Frame, area: Rect, app: &Desk, top: u16) {

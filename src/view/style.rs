@@ -92,3 +92,18 @@ pub(super) fn rule(frame: &mut Frame, area: Rect, fine: bool) {
     let line = Line::styled(glyph.repeat(usize::from(area.width)), quiet());
     frame.render_widget(Paragraph::new(line), area);
 }
+
+/// Words broken into lines of at most this width; no line where there are none.
+pub(super) fn wrapped(text: &str, most: usize) -> Vec<String> {
+    let mut lines: Vec<String> = Vec::new();
+    for word in text.split_whitespace() {
+        match lines.last_mut() {
+            Some(line) if line.width() + 1 + word.width() <= most => {
+                line.push(' ');
+                line.push_str(word);
+            }
+            _ => lines.push(word.to_string()),
+        }
+    }
+    lines
+}

@@ -1,12 +1,12 @@
 //! What is typed, read.
 
-use super::super::fields::{BLANKS, READING, SITES, STICKS, UNITS};
+use super::super::fields::{BLANKS, LAWS, READING, SITES, STICKS, UNITS};
 use super::super::form::Form;
 use super::Errors;
 use crate::assay::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Except, Fields, Incubation,
-    Ligand, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, ScaleErrors, Separation,
-    SitesUnit, Sticks, Unlabelled,
+    Ligand, Model, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, ScaleErrors,
+    Separation, SitesUnit, Sticks, Unlabelled,
 };
 use crate::units::{Amount, Dimension, Fraction, Mark, Measure, NanoMolar, Typed, parse_decimal};
 
@@ -196,6 +196,16 @@ pub(super) fn numbers(b: &mut Reader) -> Numbers {
     let cv_prior = prior(b);
     let usual = Numbers::default();
     let dilution_error = b.maybe("dilution error").unwrap_or(usual.dilution_error);
+    let scale_errors = scale_errors(b.form.value("shared errors"), b.mark).unwrap_or_else(|e| {
+        b.wrong("shared errors", e);
+        ScaleErrors::default()
+    });
+    let model = [
+        None,
+        Some(Model::OneClass),
+        Some(Model::TwoClasses),
+        Some(Model::Hill),
+    ][b.choice("law shown", &LAWS)];
     let confidence = b
         .maybe("confidence")
         .map_or(usual.confidence, |c: Amount<_>| share(&c));
@@ -203,9 +213,39 @@ pub(super) fn numbers(b: &mut Reader) -> Numbers {
         cv_prior,
         dilution_error,
         confidence,
-        scale_errors: ScaleErrors::default(),
-        model: None,
+        scale_errors,
+        model,
     }
+}
+
+/// `stock 3 %; specific activity 4 %`: a name and a share, with semicolons or a comma and a blank between.
+pub(super) fn scale_errors(text: &str, mark: Mark) -> Result<ScaleErrors, String> {
+    let mut errors = ScaleErrors::default();
+    let parts = text.split(';').flat_map(|p| p.split(", "));
+    for part in parts.map(str::trim).filter(|p| !p.is_empty()) {
+        let at = part
+            .find(|c: char| c.is_ascii_digit())
+            .unwrap_or(part.len());
+        let (name, share) = part.split_at(at);
+        let place = match name.trim() {
+            "stock" => &mut errors.stock,
+            "specific activity" => &mut errors.specific_activity,
+            "efficiency" => &mut errors.efficiency,
+            "volume" => &mut errors.volume,
+            "protein" => &mut errors.protein,
+            _ => {
+                return Err(format!(
+                    "`{part}`: write a name and its error, e.g. stock 3 %; names are stock, specific activity, \
+                     efficiency, volume, protein"
+                ));
+            }
+        };
+        let read = Typed::parse(share, mark).map_err(|e| format!("{}: {e}", name.trim()))?;
+        if place.replace(read).is_some() {
+            return Err(format!("{} is given twice", name.trim()));
+        }
+    }
+    Ok(errors)
 }
 
 pub(super) fn share(a: &Typed<Fraction>) -> f64 {
@@ -335,6 +375,22 @@ mod tests {
         assert_eq!((e[0].level, e[0].total, e[0].nonspecific), (3, 3, 0));
         assert_eq!((e[1].level, e[1].total, e[1].nonspecific), (8, 2, 4));
         assert!(exceptions("3 3 0").is_err());
+    }
+
+    #[test]
+    fn errors_that_all_tubes_share() {
+        let of = |s: &str| scale_errors(s, Mark::Point);
+        let e = of("stock 3 %; specific activity 0.04, volume 1 %").unwrap();
+        let shares: Vec<_> = e.all().iter().map(|(_, e)| e.map(|e| e.base())).collect();
+        assert_eq!(shares, [Some(0.03), Some(0.04), None, Some(0.01), None]);
+        assert!(of("").unwrap().none());
+        assert!(of("stok 3 %").unwrap_err().contains("names are stock"));
+        assert!(
+            of("stock").is_err()
+                && of("stock 3 %; stock 2 %").is_err()
+                && of("stock 3,5 %").is_err()
+        );
+        assert!(scale_errors("stock 3,5 %; volume 1 %", Mark::Comma).is_ok());
     }
 
     #[test]

@@ -1,9 +1,10 @@
 //! A protocol as it is typed.
 
-use super::super::fields::{BLANKS, MARKS, READING, SITES, STICKS};
+use super::super::fields::{BLANKS, LAWS, MARKS, READING, SITES, STICKS};
 use super::super::form::Form;
 use crate::assay::{
-    BlankKind, CvPrior, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled,
+    BlankKind, CvPrior, Fields, Model, Protocol, ReceptorAmount, ScaleErrors, SitesUnit, Sticks,
+    Unlabelled,
 };
 use crate::units::{Fraction, Mark, Typed, short};
 use tui_input::Input;
@@ -34,11 +35,12 @@ pub(super) fn percent(v: f64, mark: Mark) -> String {
 
 /// Numbers of a form in another decimal mark than the one they were written in.
 pub(super) fn follow_mark(form: &mut Form, from: Mark, to: Mark) {
-    const NUMBERS: [&str; 5] = [
+    const NUMBERS: [&str; 6] = [
         "tube CV",
         "its factor",
         "dilution error",
         "confidence",
+        "shared errors",
         "try a printout",
     ];
     if from == to {
@@ -126,9 +128,26 @@ pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
         .into(),
         "decimal mark" => MARKS[usize::from(c.mark == Mark::Comma)].into(),
         "confidence" => percent(p.numbers.confidence, c.mark),
+        "shared errors" => scale_errors_text(&p.numbers.scale_errors),
+        "law shown" => LAWS[match p.numbers.model {
+            None => 0,
+            Some(Model::OneClass) => 1,
+            Some(Model::TwoClasses) => 2,
+            Some(Model::Hill) => 3,
+        }]
+        .into(),
         "try a printout" => "2406".into(),
         name => cv_fields(name, p.numbers.cv_prior, &p.numbers.dilution_error, c.mark),
     }
+}
+
+/// `stock 3 %; volume 1 %`.
+fn scale_errors_text(errors: &ScaleErrors) -> String {
+    let given = errors
+        .all()
+        .into_iter()
+        .filter_map(|(name, e)| e.map(|e| format!("{name} {e}")));
+    given.collect::<Vec<_>>().join("; ")
 }
 
 /// The fields that a lab's settings and a protocol share.
