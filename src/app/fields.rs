@@ -303,6 +303,12 @@ pub const COUNTER: &[Spec] = &[
         "pipetting error of one dilution step, e.g. 2 %; 0 takes levels as exact",
     ),
     field(
+        "confidence",
+        "numbers.confidence",
+        Kind::Text,
+        "of intervals, e.g. 95 %",
+    ),
+    field(
         "shared errors",
         "numbers.scale_errors",
         Kind::Text,
@@ -313,12 +319,6 @@ pub const COUNTER: &[Spec] = &[
         "numbers.model",
         Kind::Choice(&LAWS),
         "one class, unless you choose another here or with m at the tubes",
-    ),
-    field(
-        "confidence",
-        "numbers.confidence",
-        Kind::Text,
-        "of intervals, e.g. 95 %",
     ),
     field(
         "try a printout",

@@ -168,7 +168,7 @@ fn help_names_every_command() {
     result.press(Key::PageDown);
     for size in [(80, 24), (80, 18), (60, 18)] {
         let bench = help(after(Sitting::demo("half-typed"), "?"), size);
-        assert_eq!(bench.len() > 1, size != (80, 24), "{size:?}");
+        assert!(bench.len() > 1, "{size:?}");
         for b in BENCH {
             named(&bench, b.shown, b.help);
         }

@@ -119,7 +119,22 @@ pub const LADDER: [&str; 10] = [
 ];
 
 /// The counter of the example.
-pub const COUNTER: [&str; 12] = ["counter 2", "45 %", "", "", "", "", "", "", "", "", "", ""];
+pub const COUNTER: [&str; 14] = [
+    "counter 2",
+    "45 %",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+    "",
+];
 
 /// Types the fields of a form one by one; Enter goes from each to the next, and from the last to the next step.
 pub fn fill(s: &mut Sitting, fields: &[&str]) {
@@ -179,7 +194,7 @@ pub fn draft() -> Vec<Scene> {
         }),
         made("draft_counter_worked", drafted(), |s| {
             fill(s, &LADDER);
-            fill(s, &COUNTER[..11]);
+            fill(s, &COUNTER[..13]);
             s.types("4812");
         }),
         made("draft_counter_cpm", drafted(), |s| {
