@@ -186,7 +186,9 @@ impl fmt::Display for WhyWithheld {
                 100.0 * share,
                 100.0 * Depletion::LIMIT
             ),
-            WhyWithheld::Other(model) => write!(f, "{} has the lower AICc", model.words()),
+            WhyWithheld::Other(model) => {
+                write!(f, "the fit of {} has the lower AICc", model.words())
+            }
             WhyWithheld::Aicc => f.write_str("its AICc is not lower than that of one class"),
         }
     }

@@ -3,7 +3,7 @@
 use crate::analysis::Analysis;
 use crate::assay::{LevelNo, Model, Role, Titration, TubeNo};
 use crate::fit::{Fit, Outcome};
-use crate::judge::{Disagreement, LevelError, Standing, Suspect};
+use crate::judge::{Disagreement, LevelError, Standing, Suspect, WhyWithheld};
 use crate::units::{fixed, short, significant};
 
 /// The chance below which levels, replicates and lack of fit are remarked on at the bench. The page has all that is below
@@ -225,19 +225,21 @@ pub fn remarks(t: &Titration, analysis: &Analysis) -> Vec<String> {
         ));
     }
     for v in &analysis.choice.verdicts {
-        if analysis.choice.shown == v.model {
-            continue;
-        }
+        // Against another law than one class the gain over one class says nothing.
+        let from_one = analysis.choice.shown == Model::OneClass;
+        let another = analysis.choice.offered() != Some(analysis.choice.shown);
         match &v.standing {
-            Standing::Offered => said.push(format!(
-                "{} fits better, {}: m compares and chooses",
+            Standing::Offered if another => said.push(format!(
+                "the fit of {} is better, {}: m compares and chooses",
                 v.model.words(),
                 v.gain.map_or(String::new(), |g| p_words(g.p))
             )),
-            Standing::Withheld(_) => said.push(format!(
-                "{} fits better and is not offered: m says why",
+            Standing::Withheld(WhyWithheld::Other(_)) => {}
+            Standing::Withheld(_) if from_one => said.push(format!(
+                "the fit of {} is better and not offered: m says why",
                 v.model.words()
             )),
+            Standing::Offered | Standing::Withheld(_) => {}
             Standing::NotSupported | Standing::NoFit(_) => {}
         }
     }

@@ -155,6 +155,16 @@ fn result(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         level.trim_end_matches(".0")
     ));
     outcome(out, t, &analysis.outcome);
+    if let Some(model) = analysis
+        .choice
+        .offered()
+        .filter(|m| *m != analysis.choice.shown)
+    {
+        out.line(format!(
+            "  OFFERED: {}, see the laws of binding below",
+            model.words()
+        ));
+    }
     if let Some(all) = &analysis.all_readings {
         out.blank();
         out.line("with suspects, no reading left out:");

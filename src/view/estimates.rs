@@ -89,7 +89,7 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
         .count();
     let background = values::background(fit);
     let by_hand = if protocol.numbers.model.is_some() {
-        ", by hand"
+        ", chosen"
     } else {
         ""
     };
@@ -104,10 +104,16 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
     } else {
         "refitting ...".into()
     };
-    let model = match format!("{model}   {after}") {
-        whole if whole.len() <= width => whole,
-        _ => model,
+    let short = if app.is_current() {
+        "scale taken as exact".into()
+    } else {
+        after.clone()
     };
+    let fits = [after, short]
+        .into_iter()
+        .map(|after| format!("{model}   {after}"))
+        .find(|whole| whole.len() <= width);
+    let model = fits.unwrap_or(model);
     let mut lines = parameters(values::isotherm(protocol, fit));
     lines.push(line(
         "ns",
