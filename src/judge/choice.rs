@@ -1,8 +1,9 @@
 //! Which law of binding: one class, unless more is clearly there and nothing else would look the same.
 
 use super::depletion::{Depletion, depletion};
-use crate::assay::{LevelNo, Model, Titration};
-use crate::fit::{Compared, Gain, Missing, Outcome, Rival};
+use super::suspects::{Suspect, suspects};
+use crate::assay::{LevelNo, Model, Reason, Titration, TubeNo};
+use crate::fit::{Compared, Gain, Missing, Outcome, Rival, compare};
 use std::fmt;
 
 /// Why a law that fits better is not offered.
@@ -12,6 +13,8 @@ pub enum WhyWithheld {
     OpenEnd(&'static str),
     /// So much label is bound at a level that a small error in what was added would look the same.
     Depletion(Depletion),
+    /// Without this tube, which does not fit with the others, the gain is gone.
+    Suspect(TubeNo),
     /// The other law fits as well with fewer parameters, or better.
     Other(Model),
     /// Its AICc is not lower than that of one class.
@@ -87,10 +90,23 @@ pub fn asked_for(titration: &Titration, model: Model) -> bool {
 /// Which law is shown and which is offered.
 ///
 /// A second class or a Hill coefficient is offered only if its gain is supported, AICc agrees, its parameters all have closed
-/// intervals, and depletion holds (two-class and cooperative fits only after equilibration and depletion are settled: Jarmoskaite
+/// intervals, its gain does not come from a tube that does not fit with the others, and depletion holds (two-class and cooperative fits only after equilibration and depletion are settled: Jarmoskaite
 /// et al. 2020, eLife 9:e57264). Of two the one of lower AICc is offered.
 pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
     let pin = titration.protocol.numbers.model;
+    let any_supported = compared
+        .rivals
+        .iter()
+        .any(|r| r.gain.is_some_and(|g| g.p <= supported_at(r.model)));
+    let without = compared
+        .one
+        .fit()
+        .map(|one| suspects(titration, true, one).tubes)
+        .filter(|tubes| !tubes.is_empty() && any_supported)
+        .map(|tubes| {
+            let rest = compare(&left_out(titration, &tubes), true, |_| false, |_| 0.0);
+            (tubes[0].tube, rest)
+        });
     let depleted = compared
         .one
         .fit()
@@ -102,7 +118,7 @@ pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
         .map(|rival| Verdict {
             model: rival.model,
             gain: rival.gain,
-            standing: standing(rival, depleted),
+            standing: standing(rival, without.as_ref(), depleted),
         })
         .collect();
     let aicc = |m: Model| compared.outcome(m).fit().and_then(|f| f.aicc);
@@ -128,7 +144,22 @@ pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
     }
 }
 
-fn standing(rival: &Rival, depleted: Option<Depletion>) -> Standing {
+/// The titration with some of its tubes left out of the fit.
+fn left_out(titration: &Titration, tubes: &[Suspect]) -> Titration {
+    let mut rest = titration.clone();
+    for s in tubes {
+        for kept in rest.kept.entry(s.tube).or_default() {
+            kept.suspect = Some(Reason::NumbersAlone.into());
+        }
+    }
+    rest
+}
+
+fn standing(
+    rival: &Rival,
+    without: Option<&(TubeNo, Compared)>,
+    depleted: Option<Depletion>,
+) -> Standing {
     let fit = match &rival.outcome {
         Outcome::Fitted(fit) => fit,
         Outcome::TooEarly(missing) => return Standing::NoFit(missing.clone()),
@@ -146,6 +177,13 @@ fn standing(rival: &Rival, depleted: Option<Depletion>) -> Standing {
         .find(|e| e.low.value().is_none() || e.high.value().is_none());
     if let Some(e) = open {
         return Standing::Withheld(WhyWithheld::OpenEnd(e.name));
+    }
+    if let Some((tube, rest)) = without {
+        let still = rest.rivals.iter().find(|r| r.model == rival.model);
+        let gain = still.and_then(|r| r.gain);
+        if gain.is_none_or(|g| g.p > supported_at(rival.model)) {
+            return Standing::Withheld(WhyWithheld::Suspect(*tube));
+        }
     }
     depleted.map_or(Standing::Offered, |d| {
         Standing::Withheld(WhyWithheld::Depletion(d))
@@ -185,6 +223,10 @@ impl fmt::Display for WhyWithheld {
                  looks the same",
                 100.0 * share,
                 100.0 * Depletion::LIMIT
+            ),
+            WhyWithheld::Suspect(TubeNo(no)) => write!(
+                f,
+                "without vial {no}, which does not fit with the others, it does not; look at that first"
             ),
             WhyWithheld::Other(model) => {
                 write!(f, "the fit of {} has the lower AICc", model.words())

@@ -14,6 +14,7 @@ mod form;
 mod hands;
 mod harness;
 mod json;
+mod laws;
 mod mishaps;
 mod rack;
 mod refusals;
