@@ -48,27 +48,37 @@ pub enum RowOf {
 #[derive(Debug, Clone, Default)]
 pub struct Rows {
     dim: usize,
+    /// Rows one after another, and zeros after the last of them.
     a: Vec<f64>,
     y: Vec<f64>,
     of: Vec<RowOf>,
 }
 
+/// For how many rows room is made at once.
+const ROOM: usize = 64;
+
 impl Rows {
     /// Forgets all rows and sets the number of columns; the memory is kept.
     pub fn clear(&mut self, dim: usize) {
+        let used = self.y.len() * self.dim;
+        self.a[..used].fill(0.0);
         self.dim = dim;
-        self.a.clear();
         self.y.clear();
         self.of.clear();
     }
 
     /// Adds a row of zeros with its right-hand side and gives it out to be filled.
     pub fn push(&mut self, of: RowOf, y: f64) -> &mut [f64] {
-        let start = self.a.len();
-        self.a.resize(start + self.dim, 0.0);
+        let start = self.y.len() * self.dim;
+        let end = start + self.dim;
+        if end > self.a.len() {
+            self.a.resize(end + ROOM * self.dim, 0.0);
+            self.y.reserve(ROOM);
+            self.of.reserve(ROOM);
+        }
         self.y.push(y);
         self.of.push(of);
-        &mut self.a[start..]
+        &mut self.a[start..end]
     }
 
     /// How many rows there are.
@@ -89,6 +99,11 @@ impl Rows {
     /// One row of the matrix.
     pub fn row(&self, i: usize) -> &[f64] {
         &self.a[i * self.dim..(i + 1) * self.dim]
+    }
+
+    /// All rows, one after another.
+    pub(super) fn matrix(&self) -> &[f64] {
+        &self.a[..self.y.len() * self.dim]
     }
 
     /// The right-hand side.
@@ -121,7 +136,7 @@ impl Rows {
 
     /// Whether every number is finite.
     pub fn finite(&self) -> bool {
-        self.a.iter().chain(&self.y).all(|v| v.is_finite())
+        self.matrix().iter().chain(&self.y).all(|v| v.is_finite())
     }
 }
 
@@ -136,6 +151,16 @@ pub trait Evidence {
 
     /// The rows at `theta`.
     fn rows(&self, theta: &[f64], rows: &mut Rows);
+
+    /// The cost and, where it is finite, the rows at `theta`: the numbers that [`Evidence::cost`] and [`Evidence::rows`] give. The
+    /// solver asks at every point that it looks at; an implementation may share between the two what is expensive.
+    fn cost_and_rows(&self, theta: &[f64], rows: &mut Rows) -> f64 {
+        let cost = self.cost(theta);
+        if cost.is_finite() {
+            self.rows(theta, rows);
+        }
+        cost
+    }
 
     /// Whether the variance of the rows is known.
     fn scale(&self) -> Scale;

@@ -5,14 +5,16 @@
 //! column-pivoted QR, the damping from the stacked system. With expected information in place of `J'J`
 //! the steps are Fisher scoring. Runs as a solver of the `argmin` executor.
 
+mod normal;
+mod orthogonal;
 mod step;
 
 use super::evidence::{Evidence, Rows, Scale};
 use argmin::core::{
-    CostFunction, Error, Executor, IterState, KV, Problem, Solver, TerminationReason,
-    TerminationStatus,
+    Error, Executor, IterState, KV, Problem, Solver, TerminationReason, TerminationStatus,
 };
 use nalgebra::DMatrix;
+use orthogonal::Orthogonal;
 use step::Step;
 
 /// How a solution ended.
@@ -41,19 +43,8 @@ pub struct Solution {
     pub at_limit: Vec<bool>,
 }
 
-type State = IterState<Vec<f64>, (), (), (), (), f64>;
-
-/// Evidence as a problem of the executor.
-struct Posed<'e, E>(&'e E);
-
-impl<E: Evidence> CostFunction for Posed<'_, E> {
-    type Param = Vec<f64>;
-    type Output = f64;
-
-    fn cost(&self, theta: &Vec<f64>) -> Result<f64, Error> {
-        Ok(self.0.cost(theta))
-    }
-}
+/// The executor counts steps; the point is the solver's, which keeps its memory.
+type State = IterState<(), (), (), (), (), f64>;
 
 /// Curved valleys take hundreds of steps (NIST's MGH17 from its first start: 799).
 const MOST_STEPS: u64 = 2000;
@@ -68,7 +59,8 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
         let l = evidence.limits(j);
         *t = t.clamp(l.low, l.high);
     }
-    let cost = evidence.cost(&theta);
+    let mut step = Step::default();
+    let cost = step.look(evidence, &theta);
     if !cost.is_finite() {
         let at_limit = vec![false; theta.len()];
         return Solution {
@@ -78,77 +70,33 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
             at_limit,
         };
     }
-    let fallback = Solution {
-        theta: theta.clone(),
+    step.advance();
+    let mut at = Scoring {
+        evidence,
+        pinned,
+        next: Vec::with_capacity(theta.len()),
+        theta,
         cost,
-        ended: Ended::Stalled,
-        at_limit: vec![false; theta.len()],
+        step,
+        ready: false,
+        radius: 0.0,
+        ended: None,
     };
-    let solver = Scoring::new(pinned);
-    let run = Executor::new(Posed(evidence), solver)
-        .configure(|s: State| s.param(theta).cost(cost).max_iters(MOST_STEPS))
-        .timer(false)
-        .ctrlc(false)
-        .run();
-    let Ok(done) = run else { return fallback };
-    // The state's best parameters are replaced only by strictly lower costs, which would lose the polishing.
-    let Some(theta) = done.state.param.clone() else {
-        return fallback;
-    };
-    let ended = done.solver.ended.unwrap_or(Ended::OutOfSteps);
+    at.run();
     // A refit with a parameter pinned is wanted for its cost, which more digits of the others no longer change.
-    let steps = if pinned.is_some() && ended == Ended::Converged {
-        0
-    } else {
-        MOST_POLISH
-    };
-    polished(evidence, theta, done.state.cost, ended, pinned, steps)
-}
-
-/// Undamped steps while the scaled step shrinks: the last digits, which the cost can no longer tell.
-fn polished<E: Evidence>(
-    evidence: &E,
-    mut theta: Vec<f64>,
-    mut cost: f64,
-    mut ended: Ended,
-    pinned: Option<usize>,
-    steps: usize,
-) -> Solution {
-    let mut step = Step::default();
-    let mut last = f64::INFINITY;
-    for _ in 0..steps {
-        if !step.prepare(evidence, &theta, pinned) {
-            break;
-        }
-        let Some(d) = step.undamped() else { break };
-        let norm = d.norm();
-        if norm == 0.0 || norm >= 0.9 * last {
-            break;
-        }
-        let next = step.moved(evidence, &theta, &d);
-        let noise = step.noise(evidence.scale(), &theta);
-        if step.promised(&theta, &next) <= still(evidence.scale(), cost).max(noise) {
-            ended = Ended::Converged;
-        }
-        let next_cost = evidence.cost(&next);
-        let rise = next_cost - cost;
-        if rise.is_nan() || rise > rounding(evidence.scale(), cost).max(noise) {
-            break;
-        }
-        theta = next;
-        cost = next_cost;
-        last = norm;
+    if pinned.is_none() || at.ended != Some(Ended::Converged) {
+        at.polish();
     }
-    let at_limit = (0..theta.len())
+    let at_limit = (0..at.theta.len())
         .map(|j| {
             let l = evidence.limits(j);
-            Some(j) != pinned && (theta[j] <= l.low || theta[j] >= l.high)
+            Some(j) != pinned && (at.theta[j] <= l.low || at.theta[j] >= l.high)
         })
         .collect();
     Solution {
-        theta,
-        cost,
-        ended,
+        theta: at.theta,
+        cost: at.cost,
+        ended: at.ended.unwrap_or(Ended::OutOfSteps),
         at_limit,
     }
 }
@@ -171,89 +119,76 @@ fn still(scale: Scale, cost: f64) -> f64 {
 }
 
 /// The solver's own state between steps.
-struct Scoring {
+struct Scoring<'e, E> {
+    evidence: &'e E,
     pinned: Option<usize>,
+    theta: Vec<f64>,
+    cost: f64,
+    next: Vec<f64>,
+    /// Holds the rows at `theta`.
     step: Step,
+    /// Whether they are factored.
     ready: bool,
     radius: f64,
     ended: Option<Ended>,
 }
 
-impl Scoring {
-    fn new(pinned: Option<usize>) -> Self {
-        let step = Step::default();
-        Scoring {
-            pinned,
-            step,
-            ready: false,
-            radius: 0.0,
-            ended: None,
-        }
-    }
-
-    fn scaled_norm(&self, theta: &[f64]) -> f64 {
-        theta
-            .iter()
-            .zip(&self.step.norms)
-            .map(|(t, n)| (t * n).powi(2))
-            .sum::<f64>()
-            .sqrt()
-    }
-}
-
-impl<E: Evidence> Solver<Posed<'_, E>, State> for Scoring {
-    fn name(&self) -> &str {
-        "damped scoring"
-    }
-
-    fn next_iter(
-        &mut self,
-        problem: &mut Problem<Posed<'_, E>>,
-        mut state: State,
-    ) -> Result<(State, Option<KV>), Error> {
-        let Some(theta) = state.take_param() else {
+impl<E: Evidence> Scoring<'_, E> {
+    /// Damped steps until they end.
+    fn run(&mut self) {
+        let run = Executor::new((), Running(self))
+            .configure(|s: State| s.max_iters(MOST_STEPS))
+            .timer(false)
+            .ctrlc(false)
+            .run();
+        if run.is_err() {
             self.ended = Some(Ended::Stalled);
-            return Ok((state, None));
-        };
-        let cost = state.cost;
-        let mut fresh = false;
-        if !self.ready {
-            let (step, pinned) = (&mut self.step, self.pinned);
-            let moving =
-                problem.problem("rows_count", |p| Ok(step.prepare(p.0, &theta, pinned)))?;
-            if !moving {
-                self.ended = Some(if self.step.rows.finite() {
-                    Ended::Converged
-                } else {
-                    Ended::Stalled
-                });
-                return Ok((state.param(theta).cost(cost), None));
-            }
-            self.ready = true;
-            fresh = true;
         }
-        if self.radius == 0.0 {
-            let norm = self.scaled_norm(&theta);
-            self.radius = if norm > 0.0 { 10.0 * norm } else { 10.0 };
-        }
-        let Some(d) = self.step.within(self.radius) else {
-            // Without a gradient there is nowhere to go; with one, the factor failed.
-            let flat = self.step.r.tr_mul(&self.step.qty).norm() == 0.0;
-            self.ended = Some(if flat {
+    }
+
+    /// One damped step.
+    fn damped_step(&mut self) {
+        let fresh = !self.ready;
+        if fresh && !self.step.prepare(self.evidence, &self.theta, self.pinned) {
+            self.ended = Some(if self.step.finite() {
                 Ended::Converged
             } else {
                 Ended::Stalled
             });
-            return Ok((state.param(theta).cost(cost), None));
+            return;
+        }
+        self.ready = true;
+        if self.radius == 0.0 {
+            let norm = self.step.scaled_norm(&self.theta);
+            self.radius = if norm > 0.0 { 10.0 * norm } else { 10.0 };
+        }
+        if !self.step.within(self.radius) {
+            // Without a gradient there is nowhere to go; with one, the factor failed.
+            self.ended = Some(if self.step.gradient() == 0.0 {
+                Ended::Converged
+            } else {
+                Ended::Stalled
+            });
+            return;
+        }
+        self.step.moved(self.evidence, &self.theta, &mut self.next);
+        let scale = self.evidence.scale();
+        let promised = self.step.promised(&self.theta, &self.next);
+        // A drop below what rounding shows is the end of what the cost can tell; polishing follows.
+        // A refit with a parameter pinned is wanted for its cost alone.
+        let wanted = if self.pinned.is_some() { 100.0 } else { 1.0 };
+        let tiny = match scale {
+            Scale::Known => 1e-13 * wanted * (1.0 + self.cost.abs()),
+            Scale::Estimated => 1e-14 * wanted * self.cost,
         };
-        let (next, scale) = problem.problem("move_count", |p| {
-            Ok((self.step.moved(p.0, &theta, &d), p.0.scale()))
-        })?;
-        let promised = self.step.promised(&theta, &next);
-        let next_cost = problem.problem("cost_count", |p| p.cost(&next))?;
-        let real = cost - next_cost;
-        let slack = rounding(scale, cost);
-        let size = d.norm();
+        if fresh && promised.abs() <= tiny {
+            self.ended = Some(Ended::Converged);
+            return;
+        }
+        let next_cost = self.step.look(self.evidence, &self.next);
+        let real = self.cost - next_cost;
+        let slack = rounding(scale, self.cost);
+        let size = self.step.size();
         let gain = if next_cost.is_finite() && promised > 0.0 {
             real / promised
         } else {
@@ -265,30 +200,76 @@ impl<E: Evidence> Solver<Posed<'_, E>, State> for Scoring {
         } else if gain > 0.75 {
             self.radius = self.radius.max(2.0 * size);
         }
-        // A drop below what rounding shows is the end of what the cost can tell; polishing follows.
-        // A refit with a parameter pinned is wanted for its cost alone.
-        let wanted = if self.pinned.is_some() { 100.0 } else { 1.0 };
-        let tiny = match scale {
-            Scale::Known => 1e-13 * wanted * (1.0 + cost.abs()),
-            Scale::Estimated => 1e-14 * wanted * cost,
-        };
-        let small_step = size <= 1e-13 * self.scaled_norm(&theta);
+        let small_step = size <= 1e-13 * self.step.scaled_norm(&self.theta);
         let accepted = next_cost.is_finite() && real >= -slack && (promised > 0.0 || real > 0.0);
-        if promised.abs() <= tiny && (fresh || real.abs() <= slack) {
+        if promised.abs() <= tiny && real.abs() <= slack {
             self.ended = Some(Ended::Converged);
         } else if !accepted && (small_step || self.radius <= 1e-300) {
             self.ended = Some(Ended::Stalled);
         }
         if accepted {
-            self.ready = false;
-            Ok((state.param(next).cost(next_cost), None))
-        } else {
-            Ok((state.param(theta).cost(cost), None))
+            self.advance(next_cost);
         }
     }
 
+    /// Moves to the point last looked at.
+    fn advance(&mut self, cost: f64) {
+        std::mem::swap(&mut self.theta, &mut self.next);
+        self.step.advance();
+        self.cost = cost;
+        self.ready = false;
+    }
+
+    /// Undamped steps while the scaled step shrinks: the last digits, which the cost can no longer tell.
+    fn polish(&mut self) {
+        let scale = self.evidence.scale();
+        let mut last = f64::INFINITY;
+        self.step.forget();
+        for _ in 0..MOST_POLISH {
+            if !self.step.prepare(self.evidence, &self.theta, self.pinned) || !self.step.undamped()
+            {
+                break;
+            }
+            let size = self.step.size();
+            if size == 0.0 || size >= 0.9 * last {
+                break;
+            }
+            self.step.moved(self.evidence, &self.theta, &mut self.next);
+            let noise = self.step.noise(scale, &self.theta);
+            let promised = self.step.promised(&self.theta, &self.next);
+            if promised <= still(scale, self.cost).max(noise) {
+                self.ended = Some(Ended::Converged);
+            }
+            let next_cost = self.step.look(self.evidence, &self.next);
+            let rise = next_cost - self.cost;
+            if rise.is_nan() || rise > rounding(scale, self.cost).max(noise) {
+                break;
+            }
+            self.advance(next_cost);
+            last = size;
+        }
+    }
+}
+
+/// Damped steps as a solver of the executor.
+struct Running<'s, 'e, E>(&'s mut Scoring<'e, E>);
+
+impl<E: Evidence> Solver<(), State> for Running<'_, '_, E> {
+    fn name(&self) -> &str {
+        "damped scoring"
+    }
+
+    fn next_iter(
+        &mut self,
+        _problem: &mut Problem<()>,
+        state: State,
+    ) -> Result<(State, Option<KV>), Error> {
+        self.0.damped_step();
+        Ok((state, None))
+    }
+
     fn terminate(&mut self, _state: &State) -> TerminationStatus {
-        match self.ended {
+        match self.0.ended {
             Some(_) => TerminationStatus::Terminated(TerminationReason::SolverConverged),
             None => TerminationStatus::NotTerminated,
         }
@@ -306,35 +287,22 @@ pub fn covariance<E: Evidence>(evidence: &E, solution: &Solution) -> Option<DMat
     if !rows.finite() {
         return None;
     }
-    let mut step = Step::default();
-    step.rows = rows;
-    step.norms = vec![0.0; dim];
-    for j in (0..dim).filter(|j| !solution.at_limit[*j]) {
-        step.norms[j] = (0..step.rows.len())
-            .map(|i| step.rows.row(i)[j].powi(2))
-            .sum::<f64>()
-            .sqrt();
-        if step.norms[j] == 0.0 {
-            return None;
-        }
-        step.free.push(j);
-    }
-    if step.free.is_empty() {
-        return Some(DMatrix::zeros(dim, dim));
-    }
-    step.factor();
-    let p = step.free.len();
-    if step.rank(1e-10) < p {
+    let (norms, _) = rows.column_sums();
+    let free: Vec<usize> = (0..dim).filter(|j| !solution.at_limit[*j]).collect();
+    if free.iter().any(|j| norms[*j] == 0.0) {
         return None;
     }
-    let inverse = step.r.solve_upper_triangular(&DMatrix::identity(p, p))?;
-    let c = &inverse * inverse.transpose();
-    let scale = row_variance(evidence, &step.rows, solution)?;
+    if free.is_empty() {
+        return Some(DMatrix::zeros(dim, dim));
+    }
+    let mut factor = Orthogonal::default();
+    factor.factor(&rows, &free, &norms);
+    let inverse = factor.inverse(1e-10)?;
+    let scale = row_variance(evidence, &rows, solution)?;
     let mut out = DMatrix::zeros(dim, dim);
-    for (k, a) in step.order.iter().enumerate() {
-        for (l, b) in step.order.iter().enumerate() {
-            let (i, j) = (step.free[*a], step.free[*b]);
-            out[(i, j)] = scale * c[(k, l)] / (step.norms[i] * step.norms[j]);
+    for (k, i) in free.iter().enumerate() {
+        for (l, j) in free.iter().enumerate() {
+            out[(*i, *j)] = scale * inverse[(k, l)] / (norms[*i] * norms[*j]);
         }
     }
     out.iter().all(|v| v.is_finite()).then_some(out)
