@@ -139,7 +139,10 @@ mod tests {
             Block::Full,
         ];
         for stuck in [Stuck::DuringIncubation, Stuck::AfterSeparation] {
-            for (block, p) in blocks.iter().flat_map(|b| points.iter().map(move |p| (*b, *p))) {
+            for (block, p) in blocks
+                .iter()
+                .flat_map(|b| points.iter().map(move |p| (*b, *p)))
+            {
                 let mut exact = vec![0.0; I::DIM];
                 let (ns, added) = (p[I::DIM].exp(), p[I::DIM + 1].exp());
                 let b = bound(&I::from_ln(p), ns, stuck, added, block, &mut exact);
