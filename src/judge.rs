@@ -3,6 +3,7 @@
 mod choice;
 mod depletion;
 mod groups;
+mod scatter;
 mod soundness;
 mod suspects;
 

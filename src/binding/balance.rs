@@ -120,51 +120,81 @@ fn solved<I: Isotherm>(
 
 #[cfg(test)]
 mod tests {
-    use super::super::OneClass;
+    use super::super::{Hill, OneClass, TwoClasses};
     use super::*;
 
-    fn tube(p: [f64; 4], stuck: Stuck, block: Block) -> f64 {
-        let iso = OneClass::from_ln(&p[..2]);
-        bound(&iso, p[2].exp(), stuck, p[3].exp(), block, &mut [0.0; 2]).value
+    /// Bound label at the logarithms of the isotherm's parameters, of `ns` and of the label added.
+    fn tube<I: Isotherm>(p: &[f64], stuck: Stuck, block: Block) -> f64 {
+        let (ns, added) = (p[I::DIM].exp(), p[I::DIM + 1].exp());
+        let mut by = vec![0.0; I::DIM];
+        bound(&I::from_ln(p), ns, stuck, added, block, &mut by).value
     }
 
     /// Derivatives against five-point differences of the values themselves.
-    #[test]
-    fn derivatives_are_those_of_the_values() {
+    fn derivatives<I: Isotherm>(points: &[&[f64]]) {
         let blocks = [
             Block::None,
             Block::SameLigand(30.0),
             Block::Competitor(40.0),
             Block::Full,
         ];
-        let points = [
-            [-0.7, -3.9, -6.0, 0.3],
-            [-0.7, 1.5, -2.0, 0.3],
-            [2.0, -1.0, 0.7, -3.0],
-            [-4.0, 0.0, -9.0, 2.0],
-        ];
         for stuck in [Stuck::DuringIncubation, Stuck::AfterSeparation] {
-            for block in blocks {
-                for p in points {
-                    let mut by = [0.0; 2];
-                    let iso = OneClass::from_ln(&p[..2]);
-                    let b = bound(&iso, p[2].exp(), stuck, p[3].exp(), block, &mut by);
-                    let exact = [by[0], by[1], b.by_ln_ns, b.by_ln_added];
-                    for (i, want) in exact.iter().enumerate() {
-                        let h = 1e-3;
-                        let at = |s: f64| {
-                            let mut q = p;
-                            q[i] += s * h;
-                            tube(q, stuck, block)
-                        };
-                        let d = (8.0 * (at(1.0) - at(-1.0)) - (at(2.0) - at(-2.0))) / (12.0 * h);
-                        assert!(
-                            (d - want).abs() <= 1e-9 * b.value.abs(),
-                            "{stuck:?} {block:?} {p:?} {i}: {d} {want}"
-                        );
-                    }
+            for (block, p) in blocks
+                .iter()
+                .flat_map(|b| points.iter().map(move |p| (*b, *p)))
+            {
+                let mut exact = vec![0.0; I::DIM];
+                let (ns, added) = (p[I::DIM].exp(), p[I::DIM + 1].exp());
+                let b = bound(&I::from_ln(p), ns, stuck, added, block, &mut exact);
+                exact.extend([b.by_ln_ns, b.by_ln_added]);
+                for (i, want) in exact.iter().enumerate() {
+                    let h = 1e-3;
+                    let at = |s: f64| {
+                        let mut q = p.to_vec();
+                        q[i] += s * h;
+                        tube::<I>(&q, stuck, block)
+                    };
+                    let d = (8.0 * (at(1.0) - at(-1.0)) - (at(2.0) - at(-2.0))) / (12.0 * h);
+                    assert!(
+                        (d - want).abs() <= 1e-9 * b.value.abs(),
+                        "{stuck:?} {block:?} {p:?} {i}: {d} {want}"
+                    );
                 }
             }
         }
+    }
+
+    #[test]
+    fn derivatives_of_one_class() {
+        derivatives::<OneClass>(&[
+            &[-0.7, -3.9, -6.0, 0.3],
+            &[-0.7, 1.5, -2.0, 0.3],
+            &[2.0, -1.0, 0.7, -3.0],
+            &[-4.0, 0.0, -9.0, 2.0],
+        ]);
+    }
+
+    /// Far apart, equal, the looser class first, one almost empty, depleted and saturated.
+    #[test]
+    fn derivatives_of_two_classes() {
+        derivatives::<TwoClasses>(&[
+            &[-1.5, -4.4, 2.2, -2.9, -7.6, 0.3],
+            &[-0.7, -3.9, -0.7, -3.9, -6.0, 0.3],
+            &[3.0, 1.0, -3.0, 0.5, -2.0, 0.7],
+            &[-4.0, 0.0, 1.0, -12.0, -9.0, 2.0],
+            &[-2.0, 3.0, 2.0, 2.0, 0.7, -3.0],
+        ]);
+    }
+
+    /// Steep and flat, below and above half saturation, depleted.
+    #[test]
+    fn derivatives_of_hill() {
+        derivatives::<Hill>(&[
+            &[-0.7, -3.9, 0.0, -6.0, 0.3],
+            &[-0.7, 1.5, 0.7, -2.0, 0.3],
+            &[2.0, -1.0, -0.9, 0.7, -3.0],
+            &[-4.0, 0.0, 1.1, -9.0, 2.0],
+            &[0.0, 2.0, -2.2, -4.0, 1.0],
+        ]);
     }
 }

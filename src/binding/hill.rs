@@ -1,5 +1,6 @@
 //! Hill's isotherm.
 
+use super::exact::two_sum;
 use super::{Isotherm, Kind, Law, OneClass};
 
 /// Hill's isotherm `S = R F^n / (Kh^n + F^n)` (Hill 1910, J Physiol 40: iv; from memory): half of the sites are taken at
@@ -108,8 +109,15 @@ impl Isotherm for Hill {
             let all = a * free + bound;
             let rise = (a * free + self.n * bound * open) / all;
             // Near the root the relative miss keeps digits that a difference of logarithms would lose, and three terms of
-            // ln(1 + miss) lead to the same root.
-            let miss = (total - all) / all;
+            // ln(1 + miss) lead to the same root. More than half taken, the sites are counted less those still open: where label
+            // and sites nearly cancel, free label is what is left of them.
+            let (rest, lost) = if x <= 0.0 {
+                (total, 0.0)
+            } else {
+                two_sum(total, -self.sites)
+            };
+            let held = if x <= 0.0 { bound } else { -self.sites * open };
+            let miss = ((-a).mul_add(free, rest + lost) - held) / all;
             let short = if miss.abs() < 0.2 {
                 miss * (1.0 - miss * (0.5 - miss / 3.0))
             } else {

@@ -29,6 +29,26 @@ impl TwoClasses {
             }
         }
     }
+
+    /// `a F + S(F) - total`.
+    ///
+    /// Where label and sites nearly cancel the free label is what is left of them. So a class that is more than half taken
+    /// is counted by its sites less those still open, and whole sites and label are summed with their rounding
+    /// errors kept: what remains is then no larger than what the slope moves.
+    fn miss(&self, free: f64, total: f64, a: f64) -> f64 {
+        let parts = |c: &OneClass| {
+            if free <= c.kd {
+                (0.0, c.specific(free))
+            } else {
+                (c.sites, -c.sites * (c.kd / (c.kd + free)))
+            }
+        };
+        let (first, second) = (parts(&self.first), parts(&self.second));
+        let (sum, lost) = two_sum(first.0, -total);
+        let (sum, lost_too) = two_sum(second.0, sum);
+        let whole = sum + (lost + lost_too);
+        a.mul_add(free, whole) + (first.1 + second.1)
+    }
 }
 
 impl Isotherm for TwoClasses {
@@ -75,10 +95,7 @@ impl Isotherm for TwoClasses {
             free = total / (a + steep);
         }
         for _ in 0..MOST_STEPS {
-            let (sum, lost) = two_sum(self.first.specific(free), self.second.specific(free));
-            let (rest, lost_too) = two_sum(sum, -total);
-            let miss = a.mul_add(free, rest) + (lost + lost_too);
-            let step = miss / (a + self.slope(free));
+            let step = self.miss(free, total, a) / (a + self.slope(free));
             let next = free - step;
             if !(next > 0.0 && next.is_finite()) {
                 break;

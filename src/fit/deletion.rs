@@ -3,6 +3,7 @@
 use super::evidence::{Evidence, RowOf, Rows};
 use super::solver::{Ended, Solution, covariance, row_variance, solve};
 use super::statistics::t_two_sided;
+use nalgebra::DMatrix;
 
 /// Evidence that observations can be taken out of.
 pub trait Parts: Evidence + Sized {
@@ -20,6 +21,8 @@ pub struct Deleted {
     pub residual: f64,
     /// The fit without it.
     pub solution: Solution,
+    /// The covariance of that fit.
+    pub cov: DMatrix<f64>,
 }
 
 /// Observation `part` against a refit without it, started from the `full` solution.
@@ -55,9 +58,11 @@ pub fn deleted<E: Parts>(evidence: &E, full: &Solution, part: usize) -> Option<D
         })
         .sum();
     let residual = y / (variance + expectation).sqrt();
-    residual
-        .is_finite()
-        .then_some(Deleted { residual, solution })
+    residual.is_finite().then_some(Deleted {
+        residual,
+        solution,
+        cov,
+    })
 }
 
 /// The probability that the farthest of `tubes` residuals is as far out as `t` by chance: that of Student's t, either side, on

@@ -23,6 +23,11 @@ impl Group {
         let mean = self.mean();
         self.residuals.iter().map(|r| (r - mean).powi(2)).sum()
     }
+
+    /// The variance about the mean.
+    pub(super) fn variance(&self) -> f64 {
+        self.about_mean() / (self.residuals.len() as f64 - 1.0)
+    }
 }
 
 /// The groups of a fit, by level and role.

@@ -16,10 +16,11 @@ const OFF_BELOW: f64 = 0.05;
 /// How far from the lab's usual CV, in standard deviations of its logarithm, one is remarkable.
 const CV_FAR: f64 = 1.96;
 
-/// The order of the signs of the levels' residuals.
+/// The order of the signs of residuals.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct RunsFound {
-    /// Stretches of one sign among the mean residuals of the levels' total tubes, from the lowest level up.
+    /// Stretches of one sign among the residuals of the total tubes, from the lowest level up and replicates in the order they are counted. The
+    /// levels' means would be too few: of eight not even three runs are unlikely.
     pub runs: Runs,
     /// The chance of so few.
     pub p: f64,
@@ -101,15 +102,17 @@ pub fn soundness(titration: &Titration, flags: bool, fit: &Fit) -> Soundness {
 
 fn runs(titration: &Titration, fit: &Fit) -> Option<RunsFound> {
     let all = groups(fit);
-    let means: BTreeMap<LevelNo, f64> = all
+    let totals: BTreeMap<LevelNo, &[f64]> = all
         .iter()
         .filter(|g| g.role == Role::Total)
-        .map(|g| (g.level, g.mean()))
+        .map(|g| (g.level, g.residuals.as_slice()))
         .collect();
     let in_order: Vec<f64> = titration
         .levels_by_concentration()
         .iter()
-        .filter_map(|l| means.get(&l.no).copied())
+        .filter_map(|l| totals.get(&l.no).copied())
+        .flatten()
+        .copied()
         .collect();
     let runs = Runs::of(&in_order);
     (runs.plus > 0 && runs.minus > 0).then(|| RunsFound {

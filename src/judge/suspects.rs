@@ -1,17 +1,18 @@
 //! Tubes that do not fit with the others. The program proposes, a person decides.
 
 use super::groups::{Group, groups};
+use super::scatter::{Scatter, share_of_cv};
 use crate::assay::{LevelNo, Model, Role, Titration, TubeNo};
 use crate::binding::{Hill, OneClass, TwoClasses};
 use crate::fit::{
-    Cold, Ended, Evidence, Fit, Parts, RackEvidence, RowOf, Rows, Solution, deleted, f_upper_tail,
-    grubbs_critical, outlier_p,
+    Cold, Ended, Evidence, Fit, Parts, RackEvidence, RowOf, Rows, Solution, covariance, deleted,
+    f_upper_tail, grubbs_critical, outlier_p, solve,
 };
 
 /// The chance, all tubes taken together, below which a tube or a group is named.
 const NAMED_BELOW: f64 = 0.05;
-/// Tubes whose studentised residual in the fit with them is smaller are not refitted: without them they
-/// would be about as far, and none is named below three.
+/// Tubes whose studentised residual in the fit with them is smaller are not refitted, nor groups whose standard deviation is:
+/// without them they would be about as far, and none is named below three.
 const WORTH_A_REFIT: f64 = 1.5;
 /// The least replicates for Grubbs' test: below five it has hardly any power.
 const GRUBBS_FROM: usize = 5;
@@ -21,7 +22,7 @@ const GRUBBS_FROM: usize = 5;
 pub struct Suspect {
     /// Which.
     pub tube: TubeNo,
-    /// Its distance from what a fit without it expects, in standard deviations of the difference.
+    /// Its distance from what a fit without it expects, in standard deviations of the difference as the other tubes have it.
     pub residual: f64,
     /// The chance that the farthest of all tubes is as far, where nothing is wrong.
     pub p: f64,
@@ -36,7 +37,7 @@ pub struct Disagreement {
     pub role: Role,
     /// Which.
     pub tubes: Vec<TubeNo>,
-    /// Their variance over that of all other tubes, as the model has it.
+    /// Their variance over what it would be as the other tubes scatter.
     pub f: f64,
     /// The chance of as large a ratio in any group.
     pub p: f64,
@@ -55,42 +56,49 @@ pub struct Suspects {
 
 /// Tubes and groups that do not fit with the others, by a fit of the law that `fit` is of.
 ///
-/// Every tube is held against a refit without it, since an outlier inflates the CV that it is judged by: Student's t on `n - 1 - p`
-/// degrees of freedom, times the number of tubes. Replicates are held against the variance of the other tubes (F test, times
-/// the number of groups), and from five on among themselves (Grubbs 1969, Technometrics 11:1; from memory).
+/// Every tube, and every group of replicates, is held against a refit without it, since an outlier inflates the CV that it is judged by,
+/// and against the scatter of the others there where that is more than the model has it. A tube by its residual, as Student's
+/// t, times the number of tubes (externally studentised residuals: R. D. Cook & S. Weisberg 1982, *Residuals and
+/// Influence in Regression*, 2.2; from memory); a group by its variance (F test), and from five replicates on also by the farthest
+/// of them (Grubbs 1969, Technometrics 11:1; from memory), times the number of these tests.
 pub fn suspects(titration: &Titration, flags: bool, fit: &Fit) -> Suspects {
-    let tubes = match fit.model {
-        Model::OneClass => tubes::<OneClass>(titration, flags, fit),
-        Model::TwoClasses => tubes::<TwoClasses>(titration, flags, fit),
-        Model::Hill => tubes::<Hill>(titration, flags, fit),
-    };
-    Suspects {
-        tubes,
-        groups: disagreements(fit),
+    match fit.model {
+        Model::OneClass => named::<OneClass>(titration, flags, fit),
+        Model::TwoClasses => named::<TwoClasses>(titration, flags, fit),
+        Model::Hill => named::<Hill>(titration, flags, fit),
     }
 }
 
-fn tubes<I: Cold>(titration: &Titration, flags: bool, fit: &Fit) -> Vec<Suspect> {
-    let Some(evidence) = RackEvidence::<I>::new(titration, flags) else {
-        return Vec::new();
-    };
-    let n = evidence.parts();
-    let df = n as f64 - 1.0 - fit.mean_parameters as f64;
+fn named<I: Cold>(titration: &Titration, flags: bool, fit: &Fit) -> Suspects {
+    RackEvidence::<I>::new(titration, flags).map_or_else(Suspects::default, |evidence| Suspects {
+        tubes: tubes(&evidence, fit),
+        groups: disagreements(&evidence, fit),
+    })
+}
+
+fn tubes<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Suspect> {
     let full = Solution {
         theta: fit.theta.clone(),
         cost: fit.cost(),
         ended: Ended::Converged,
         at_limit: vec![false; fit.theta.len()],
     };
-    let mut found: Vec<Suspect> = studentised(&evidence, fit)
-        .into_iter()
-        .filter(|(_, r)| r.abs() >= WORTH_A_REFIT)
-        .filter_map(|(i, _)| {
-            let residual = deleted(&evidence, &full, i)?.residual;
+    let within = Scatter::of(evidence, &fit.theta, &fit.cov).studentised;
+    let mut found: Vec<Suspect> = evidence
+        .samples()
+        .iter()
+        .enumerate()
+        .filter(|(i, _)| within[*i].abs() >= WORTH_A_REFIT)
+        .filter_map(|(i, sample)| {
+            let alone = deleted(evidence, &full, i)?;
+            let theta = &alone.solution.theta;
+            let others = Scatter::of(&evidence.without(i), theta, &alone.cov);
+            let w = share_of_cv(evidence.expected(sample, theta));
+            let residual = alone.residual / others.beyond_model(w).sqrt();
             Some(Suspect {
-                tube: evidence.samples()[i].tube,
+                tube: sample.tube,
                 residual,
-                p: outlier_p(residual, df, n),
+                p: outlier_p(residual, others.df(w), evidence.parts()),
             })
         })
         .filter(|s| s.p < NAMED_BELOW)
@@ -99,52 +107,25 @@ fn tubes<I: Cold>(titration: &Titration, flags: bool, fit: &Fit) -> Vec<Suspect>
     found
 }
 
-/// The residual of every tube over its standard deviation in a fit that it is part of, `sqrt(1 - h)` with its leverage `h`.
-fn studentised<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<(usize, f64)> {
-    let mut rows = Rows::default();
-    evidence.rows(&fit.theta, &mut rows);
-    let mut found = Vec::with_capacity(evidence.parts());
-    for (at, of) in rows.of().iter().enumerate() {
-        let RowOf::Mean(i) = of else { continue };
-        let row = rows.row(at);
-        let held: Vec<(usize, f64)> = row
-            .iter()
-            .copied()
-            .enumerate()
-            .filter(|(_, v)| *v != 0.0)
-            .collect();
-        let leverage: f64 = held
-            .iter()
-            .flat_map(|(j, v)| held.iter().map(move |(k, w)| v * w * fit.cov[(*j, *k)]))
-            .sum();
-        let left = (1.0 - leverage).max(1e-6);
-        found.push((*i, rows.y()[at] / left.sqrt()));
-    }
-    found
-}
-
 /// Groups of replicates that scatter more than the others.
-fn disagreements(fit: &Fit) -> Vec<Disagreement> {
+fn disagreements<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Disagreement> {
     let all = groups(fit);
     let several: Vec<&Group> = all.iter().filter(|g| g.residuals.len() > 1).collect();
-    let used = fit.tubes.iter().filter(|t| t.used);
-    let total: f64 = used.clone().map(|t| t.residual().powi(2)).sum();
-    let rest = used.count() as f64 - fit.mean_parameters as f64;
+    let many = |g: &Group| g.residuals.len() >= GRUBBS_FROM;
+    let tests = (several.len() + several.iter().filter(|g| many(g)).count()) as f64;
     let mut found: Vec<Disagreement> = several
         .iter()
+        .filter(|g| many(g) || g.variance() >= WORTH_A_REFIT * WORTH_A_REFIT)
         .filter_map(|g| {
-            let df = g.residuals.len() as f64 - 1.0;
-            let within = g.about_mean();
-            let others = (total - within) / (rest - df);
-            let f = within / df / others;
-            let p = f_upper_tail(f, [df, rest - df])? * several.len() as f64;
+            let (f, df) = against_others(evidence, fit, g)?;
+            let p = f_upper_tail(f, [g.residuals.len() as f64 - 1.0, df])? * tests;
             Some(Disagreement {
                 level: g.level,
                 role: g.role,
                 tubes: g.tubes.clone(),
                 f,
                 p: p.min(1.0),
-                one: outlier(g),
+                one: many(g).then(|| outlier(g, NAMED_BELOW / tests)).flatten(),
             })
         })
         .filter(|d| d.p < NAMED_BELOW || d.one.is_some())
@@ -153,18 +134,43 @@ fn disagreements(fit: &Fit) -> Vec<Disagreement> {
     found
 }
 
-/// The replicate that Grubbs' test sets apart.
-fn outlier(g: &Group) -> Option<TubeNo> {
-    let n = g.residuals.len();
-    if n < GRUBBS_FROM {
+/// The variance of a group over what it would be as the tubes of a fit without it scatter, and the degrees of freedom that this is known with.
+fn against_others<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit, g: &Group) -> Option<(f64, f64)> {
+    let parts: Vec<usize> = (0..evidence.parts())
+        .filter(|i| g.tubes.contains(&evidence.samples()[*i].tube))
+        .collect();
+    // From the last one on, so that the places of those before stay.
+    let others = parts
+        .iter()
+        .rev()
+        .fold(evidence.clone(), |rest, i| rest.without(*i));
+    let solution = solve(&others, &fit.theta, None);
+    if solution.ended != Ended::Converged {
         return None;
     }
+    let theta = &solution.theta;
+    let scatter = Scatter::of(&others, theta, &covariance(&others, &solution)?);
+    let mut rows = Rows::default();
+    evidence.rows(theta, &mut rows);
+    let mut alone = g.clone();
+    alone.residuals = (0..rows.len())
+        .filter(|at| matches!(rows.of()[*at], RowOf::Mean(i) if parts.contains(&i)))
+        .map(|at| rows.y()[at])
+        .collect();
+    let share = |i: &usize| share_of_cv(evidence.expected(&evidence.samples()[*i], theta));
+    let w = parts.iter().map(share).sum::<f64>() / parts.len() as f64;
+    Some((alone.variance() / scatter.beyond_model(w), scatter.df(w)))
+}
+
+/// The replicate that Grubbs' test at level `alpha` sets apart.
+fn outlier(g: &Group, alpha: f64) -> Option<TubeNo> {
+    let n = g.residuals.len();
     let mean = g.mean();
-    let sd = (g.about_mean() / (n as f64 - 1.0)).sqrt();
+    let sd = g.variance().sqrt();
     let (tube, far) = g
         .tubes
         .iter()
         .zip(g.residuals.iter().map(|r| (r - mean).abs() / sd))
         .max_by(|a, b| a.1.total_cmp(&b.1))?;
-    (far > grubbs_critical(n, NAMED_BELOW)?).then_some(*tube)
+    (far > grubbs_critical(n, alpha)?).then_some(*tube)
 }
