@@ -22,7 +22,7 @@ pub use missing::Missing;
 pub use outcome::{Estimate, Fit, FittedTube, Outcome, ProfilePlace};
 pub use profile::{End, ProfileCut, ProfileEnd, Profiles};
 pub use rack::{Columns, DilutionColumn, RackEvidence, Sample};
-pub use solver::{Ended, Solution, covariance, solve};
+pub use solver::{Ended, Solution, covariance, settle, solve};
 pub use start::Cold;
 pub use statistics::{
     LackOfFit, Runs, chi_square_upper_tail, f_upper_tail, grubbs_critical, lack_of_fit,

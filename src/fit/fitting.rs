@@ -5,14 +5,14 @@ use super::missing::{Missing, missing, nothing_yet};
 use super::outcome::{Estimate, Fit, FittedTube, Outcome, ProfilePlace};
 use super::profile::{End, ProfileCut, Profiles};
 use super::rack::{Columns, RackEvidence, Sample};
-use super::solver::{Ended, Solution, covariance, solve};
+use super::solver::{Ended, Solution, covariance, settle, solve};
 use super::start::{Cold, cold};
 use crate::assay::{Model, Titration};
 use crate::binding::{Hill, Kind, OneClass, TwoClasses};
 use nalgebra::DMatrix;
 
-/// How many starts are followed to the end.
-const POLISHED: usize = 3;
+/// How many starts are followed; the best of them to the last digits.
+const FOLLOWED: usize = 3;
 /// How often a fit is taken up again from a better place met in a profile.
 const MOST_RESTARTS: usize = 3;
 /// The farthest an upper end is looked for, on the ln scale: a factor of 1e13, from any floor to any use.
@@ -275,18 +275,21 @@ fn global<I: Cold>(evidence: &RackEvidence<I>, warm: &[Vec<f64>]) -> Vec<Solutio
         .filter(|(cost, _)| cost.is_finite())
         .collect();
     starts.sort_by(|a, b| a.0.total_cmp(&b.0));
-    let mut polished: Vec<Solution> = starts
+    let mut settled: Vec<Solution> = starts
         .iter()
-        .take(POLISHED)
+        .take(FOLLOWED)
         .map(|(_, theta)| theta)
         .chain(warm)
-        .map(|theta| in_order::<I>(solve(evidence, theta, None)))
+        .map(|theta| in_order::<I>(settle(evidence, theta)))
         .collect();
-    polished.sort_by(|a, b| {
+    settled.sort_by(|a, b| {
         let failed = |s: &Solution| s.ended != Ended::Converged;
         failed(a).cmp(&failed(b)).then(a.cost.total_cmp(&b.cost))
     });
-    polished
+    if let Some(best) = settled.first_mut() {
+        *best = in_order::<I>(solve(evidence, &best.theta, None));
+    }
+    settled
 }
 
 /// A solution with its parameters in the order they are shown in.

@@ -310,6 +310,12 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
     }
 
     fn rows(&self, theta: &[f64], rows: &mut Rows) {
+        self.cost_and_rows(theta, rows);
+    }
+
+    /// One pass over the tubes for both: every balance is solved once.
+    fn cost_and_rows(&self, theta: &[f64], rows: &mut Rows) -> f64 {
+        let mut minus2lnl = 0.0;
         rows.clear(self.dim());
         let at = Columns::of::<I>();
         let c = self.common(theta);
@@ -335,6 +341,7 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
             };
             // mu' = signal' (and blank' = t b in the column of ln b); V' = mu' + 2 cv^2 signal signal'.
             let miss = s.counts - mu;
+            minus2lnl += miss * miss / v + (TAU * v).ln();
             let weight = 1.0 / v.sqrt();
             let mean = rows.push(RowOf::Mean(i), miss * weight);
             fill(mean, weight);
@@ -362,6 +369,7 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
         for s in &self.scales {
             rows.push(RowOf::Scale(s.column), -theta[s.column] / s.sd)[s.column] = 1.0 / s.sd;
         }
+        minus2lnl + self.minus2lnl_background(b) + self.prior_term(theta)
     }
 
     fn scale(&self) -> Scale {

@@ -54,6 +54,44 @@ const MOST_POLISH: usize = 60;
 ///
 /// `start` is taken inside the limits first. The same evidence and start give the same bits.
 pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) -> Solution {
+    // A refit with a parameter pinned is wanted for its cost alone, which more digits of the others no longer change.
+    let care = if pinned.is_some() {
+        Care::Cost
+    } else {
+        Care::Digits
+    };
+    solved(evidence, start, pinned, care)
+}
+
+/// The same to where the drop still promised is next to nothing (1e-10 of the cost): enough to tell solutions apart, and to hold
+/// an observation against the others.
+pub fn settle<E: Evidence>(evidence: &E, start: &[f64]) -> Solution {
+    solved(evidence, start, None, Care::Roughly)
+}
+
+/// How far a solution is followed.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Care {
+    /// To the last digits of the parameters.
+    Digits,
+    /// To the last digits of the cost.
+    Cost,
+    /// To where the drop still promised is next to nothing.
+    Roughly,
+}
+
+impl Care {
+    /// How many times larger a drop of the cost may be ignored than rounding would have it.
+    fn ignored(self) -> f64 {
+        match self {
+            Care::Digits => 1.0,
+            Care::Cost => 100.0,
+            Care::Roughly => 1000.0,
+        }
+    }
+}
+
+fn solved<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>, care: Care) -> Solution {
     let mut theta = start.to_vec();
     for (j, t) in theta.iter_mut().enumerate() {
         let l = evidence.limits(j);
@@ -74,6 +112,7 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
     let mut at = Scoring {
         evidence,
         pinned,
+        care,
         next: Vec::with_capacity(theta.len()),
         theta,
         cost,
@@ -83,8 +122,7 @@ pub fn solve<E: Evidence>(evidence: &E, start: &[f64], pinned: Option<usize>) ->
         ended: None,
     };
     at.run();
-    // A refit with a parameter pinned is wanted for its cost, which more digits of the others no longer change.
-    if pinned.is_none() || at.ended != Some(Ended::Converged) {
+    if care == Care::Digits || at.ended != Some(Ended::Converged) {
         at.polish();
     }
     let at_limit = (0..at.theta.len())
@@ -122,6 +160,7 @@ fn still(scale: Scale, cost: f64) -> f64 {
 struct Scoring<'e, E> {
     evidence: &'e E,
     pinned: Option<usize>,
+    care: Care,
     theta: Vec<f64>,
     cost: f64,
     next: Vec<f64>,
@@ -175,8 +214,7 @@ impl<E: Evidence> Scoring<'_, E> {
         let scale = self.evidence.scale();
         let promised = self.step.promised(&self.theta, &self.next);
         // A drop below what rounding shows is the end of what the cost can tell; polishing follows.
-        // A refit with a parameter pinned is wanted for its cost alone.
-        let wanted = if self.pinned.is_some() { 100.0 } else { 1.0 };
+        let wanted = self.care.ignored();
         let tiny = match scale {
             Scale::Known => 1e-13 * wanted * (1.0 + self.cost.abs()),
             Scale::Estimated => 1e-14 * wanted * self.cost,
