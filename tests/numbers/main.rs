@@ -9,6 +9,7 @@
 
 mod balance;
 mod conversions;
+mod coverage;
 mod dilution;
 mod hard_racks;
 mod nist;
@@ -16,3 +17,6 @@ mod racks;
 mod recounts;
 mod reference_fits;
 mod reference_racks;
+#[path = "../simulate/mod.rs"]
+mod simulate;
+mod simulated;
