@@ -33,7 +33,8 @@ fn answer(fit: &Fit, name: &str) -> Option<Answer> {
     let end = |end: End, open: f64| match end {
         End::At(v) => v,
         End::Open => open,
-        End::Failed => f64::NAN,
+        // A refit that failed, or anything else that is no end.
+        _ => f64::NAN,
     };
     Some(Answer {
         value: e.value,
