@@ -1,83 +1,29 @@
 //! Dilution errors as rows: tubes of one level share a solution, and in a serial dilution levels share steps.
 
-use crate::racks::{LEVELS, find, keep, levels, sheet};
-use rackside::assay::{LevelNo, Role, Titration};
-use rackside::binding::{Block, OneClass, Stuck, bound};
-use rackside::fit::{Columns, Evidence, Fit, RackEvidence, RowOf, Rows, fit_rack};
-use rand::SeedableRng;
-use rand_chacha::ChaCha8Rng;
-use rand_distr::{Distribution, Normal, Poisson};
+use crate::racks::{find, keep};
+use crate::simulate::cells::{H, H_TOLD_NONE, KD};
+use crate::simulate::rack::Cell;
+use crate::simulate::tally::{Tally, fitted};
+use rackside::assay::{Dilution, Role, Titration};
+use rackside::binding::OneClass;
+use rackside::fit::{Columns, Evidence, RackEvidence, RowOf, Rows, fit_rack};
 use statrs::distribution::{Binomial, DiscreteCDF};
 
-/// The rack the racks are simulated from.
-const KD: f64 = 0.5;
-const SITES: f64 = 0.02;
-const NS: f64 = 0.002;
-const BACKGROUND: f64 = 25.0;
-const TUBE_CV: f64 = 0.04;
-const STEP: f64 = 0.03;
-
-/// Eight levels over 0.1 to 10 Kd, two total and two nonspecific tubes each, 80 Ci/mmol, 0.45, 0.5 mL, 1 uM unlabelled.
-fn empty(dilution_error: &str, serial: bool) -> Titration {
-    let ratio = 100f64.powf(1.0 / 7.0);
-    let nm: Vec<f64> = (0..8).map(|i| 0.1 * KD * ratio.powi(i)).collect();
-    let ladder = levels(&nm);
-    let error = format!("dilution_error: \"{dilution_error}\"");
-    let made = if serial {
-        "dilution: Serial"
-    } else {
-        "dilution: EachFromStock"
-    };
-    sheet(&[
-        (LEVELS, &ladder),
-        ("dilution_error: \"2 %\"", &error),
-        ("dilution: EachFromStock", made),
-    ])
+/// Eight levels over 0.1 to 10 Kd, two total and two nonspecific tubes each, whose analysis is told of this error.
+fn told(step: f64, serial: bool) -> Cell {
+    Cell {
+        told_step: step,
+        dilution: if serial {
+            Dilution::Serial
+        } else {
+            Dilution::EachFromStock
+        },
+        ..H
+    }
 }
 
-/// Counts for an empty rack: an error for every serial step, a normal error of every tube's bound label, Poisson counts.
-fn simulate(t: &mut Titration, rng: &mut ChaCha8Rng) {
-    let step = Normal::new(0.0, STEP).unwrap();
-    let scatter = Normal::new(1.0, TUBE_CV).unwrap();
-    let counts = |mean: f64, rng: &mut ChaCha8Rng| {
-        if mean > 0.0 {
-            Poisson::new(mean).unwrap().sample(rng)
-        } else {
-            0.0
-        }
-    };
-    let blank = find(t, Role::Background, None, 1);
-    let n = counts(10.0 * BACKGROUND, rng);
-    keep(t, &blank, n, 10.0, None);
-    let per_nm = rackside::assay::counts_per_nm(&t.protocol);
-    let law = OneClass {
-        kd: KD,
-        sites: SITES,
-    };
-    let mut off = 0.0;
-    for level in (1..=8).rev() {
-        off += step.sample(rng);
-        let added = t.level(LevelNo(level)).unwrap().added.base() * f64::exp(off);
-        for (role, block) in [
-            (Role::Total, Block::None),
-            (Role::Nonspecific, Block::SameLigand(1000.0)),
-        ] {
-            for replicate in 1..=2 {
-                let b = bound(
-                    &law,
-                    NS,
-                    Stuck::DuringIncubation,
-                    added,
-                    block,
-                    &mut [0.0; 2],
-                );
-                let mean = 2.0 * (BACKGROUND + per_nm * b.value * scatter.sample(rng));
-                let n = counts(mean, rng);
-                let tube = find(t, role, Some(level), replicate);
-                keep(t, &tube, n, 2.0, None);
-            }
-        }
-    }
+fn filled(cell: &Cell, number: u64) -> Titration {
+    cell.rack(&cell.empty(), number)
 }
 
 fn evidence(t: &Titration) -> RackEvidence<OneClass> {
@@ -86,17 +32,15 @@ fn evidence(t: &Titration) -> RackEvidence<OneClass> {
 
 #[test]
 fn without_an_error_there_are_no_columns() {
-    let mut rng = ChaCha8Rng::seed_from_u64(1);
     let first = Columns::of::<OneClass>().dilutions();
     assert_eq!(first, 5);
     for (error, serial, columns) in [
-        ("0", true, 0),
-        ("0", false, 0),
-        ("3 %", true, 8),
-        ("3 %", false, 8),
+        (0.0, true, 0),
+        (0.0, false, 0),
+        (0.03, true, 8),
+        (0.03, false, 8),
     ] {
-        let mut t = empty(error, serial);
-        simulate(&mut t, &mut rng);
+        let t = filled(&told(error, serial), 1);
         let e = evidence(&t);
         assert_eq!(e.dim(), first + columns, "{error} {serial}");
         let mut rows = Rows::default();
@@ -112,7 +56,7 @@ fn without_an_error_there_are_no_columns() {
 #[test]
 fn a_column_for_every_level_that_bears_on_a_reading() {
     for (serial, columns) in [(true, 6), (false, 1)] {
-        let mut t = empty("3 %", serial);
+        let mut t = told(0.03, serial).empty();
         for (role, level) in [(Role::Background, None), (Role::Total, Some(3))] {
             let tube = find(&t, role, level, 1);
             keep(&mut t, &tube, 500.0, 2.0, None);
@@ -124,12 +68,11 @@ fn a_column_for_every_level_that_bears_on_a_reading() {
 /// The rows' product with the right-hand side is minus half the gradient of the cost, for every column.
 #[test]
 fn rows_are_the_gradient_of_the_cost() {
-    let mut rng = ChaCha8Rng::seed_from_u64(2);
-    for (error, serial) in [("0", false), ("3 %", true), ("3 %", false)] {
-        let mut t = empty(error, serial);
-        simulate(&mut t, &mut rng);
+    for (error, serial) in [(0.0, false), (0.03, true), (0.03, false)] {
+        let t = filled(&told(error, serial), 2);
         let e = evidence(&t);
-        let mut theta = vec![KD.ln() + 0.3, SITES.ln() - 0.2, NS.ln() + 0.1, 3.3, -2.5];
+        let [_, sites] = H.law.pair();
+        let mut theta = vec![KD.ln() + 0.3, sites.ln() - 0.2, H.ns.ln() + 0.1, 3.3, -2.5];
         theta.extend((0..e.dim() - 5).map(|i| 0.01 * (i as f64 - 3.0)));
         let mut rows = Rows::default();
         e.rows(&theta, &mut rows);
@@ -150,11 +93,6 @@ fn rows_are_the_gradient_of_the_cost() {
     }
 }
 
-fn covers(fit: &Fit, name: &str, truth: f64) -> bool {
-    let e = fit.estimate(name).unwrap();
-    e.low.value().is_none_or(|low| low <= truth) && e.high.value().is_none_or(|high| truth <= high)
-}
-
 /// Racks with 3 % error per serial step, analysed with and without the dilution rows.
 ///
 /// Bounds: the number of intervals that cover is binomial. With the rows it has to lie within the central 99.9 % for
@@ -163,21 +101,10 @@ fn covers(fit: &Fit, name: &str, truth: f64) -> bool {
 #[test]
 fn coverage_with_a_serial_dilution_error() {
     const RACKS: u64 = 300;
-    let mut rng = ChaCha8Rng::seed_from_u64(20);
-    let mut hits = [[0u64; 2]; 2];
-    for _ in 0..RACKS {
-        let mut with = empty("3 %", true);
-        simulate(&mut with, &mut rng);
-        let mut without = with.clone();
-        without.protocol.numbers.dilution_error = empty("0", true).protocol.numbers.dilution_error;
-        for (t, hits) in [with, without].iter().zip(&mut hits) {
-            let outcome = fit_rack(t, true);
-            let fit = outcome.fit().unwrap();
-            hits[0] += u64::from(covers(fit, "kd_nm", KD));
-            hits[1] += u64::from(covers(fit, "sites_nm", SITES));
-        }
-    }
-    let [with, without] = hits;
+    let [with, without] = [H, H_TOLD_NONE].map(|cell| {
+        let tally = Tally::of(&cell, RACKS, fitted);
+        [0, 1].map(|k| tally.covered(k))
+    });
     let percent = |n: u64| 100.0 * n as f64 / RACKS as f64;
     println!(
         "coverage of nominal 95 %: with dilution rows Kd {:.1}, sites {:.1}; without Kd {:.1}, sites {:.1}",

@@ -9,6 +9,7 @@
 
 mod balance;
 mod conversions;
+mod coverage;
 mod deletion;
 mod dilution;
 mod hard_racks;
@@ -21,4 +22,7 @@ mod recounts;
 mod reference_fits;
 mod reference_racks;
 mod rows;
+#[path = "../simulate/mod.rs"]
+mod simulate;
+mod simulated;
 mod statistics;
