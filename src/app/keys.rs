@@ -104,6 +104,8 @@ pub enum Command {
     Note,
     /// Linear or log axis.
     Axis,
+    /// Another plot.
+    Plot,
     /// Rack and plot, plot alone, table of tubes.
     View,
     /// Braille or plain characters.
@@ -256,7 +258,15 @@ pub const BENCH: &[Binding<Command>] = &[
         "a",
         Command::Axis,
         "",
-        "free on a linear or a log axis",
+        "isotherm with free on a linear or a log axis",
+        false,
+    ),
+    row(
+        &[Key::Char('d')],
+        "d",
+        Command::Plot,
+        "",
+        "plot: isotherm, bound/free, Hill coordinates, residuals, profile",
         false,
     ),
     row(
@@ -324,19 +334,19 @@ pub const BENCH: &[Binding<Command>] = &[
         false,
     ),
     row(
-        &[Key::Char('?'), Key::Char('h')],
-        "?",
-        Command::Help,
-        "keys",
-        "this page",
-        false,
-    ),
-    row(
         &[Key::Char('q'), Key::Ctrl('c')],
         "q",
         Command::Quit,
         "",
         "leave; everything is kept and resumes where it stopped",
+        false,
+    ),
+    row(
+        &[Key::Char('?'), Key::Char('h')],
+        "?",
+        Command::Help,
+        "keys",
+        "this page",
         false,
     ),
 ];
