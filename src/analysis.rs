@@ -72,7 +72,7 @@ impl Analysis {
 /// Label that sticks after separation was free in the tube: `LT = F + S` and `bound = S + ns F`, so that
 /// `F = (LT - bound) / (1 - ns)`. Label that sticks during incubation is not free: `F = LT - bound`. Before
 /// there is a fit, and where `ns` is not below one, the latter is all that can be said.
-fn free(measured: Measured, sticks: Sticks, ns: Option<f64>) -> f64 {
+pub(crate) fn free(measured: Measured, sticks: Sticks, ns: Option<f64>) -> f64 {
     match (sticks, ns) {
         (Sticks::ToFilter, Some(ns)) if ns < 1.0 => measured.free_nm / (1.0 - ns),
         _ => measured.free_nm,

@@ -22,6 +22,7 @@ pub use start::{Ask, Recent, Start};
 
 use crate::analysis::Analysis;
 use crate::assay::{Lab, Stamp, Titration};
+use crate::figure::Plot;
 use crate::notebook::Entry;
 use keys::Key;
 use std::collections::BTreeMap;
@@ -131,7 +132,9 @@ pub enum Wide {
 pub struct Look {
     /// Braille rather than plain characters.
     pub fine: bool,
-    /// Free on a log axis.
+    /// What the plot shows.
+    pub plot: Plot,
+    /// Free on a log axis in the isotherm.
     pub log_axis: bool,
     /// What the wide part shows.
     pub wide: Wide,

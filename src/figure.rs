@@ -8,6 +8,9 @@
 //! A figure does not flatter the data: a point that lies outside its axes stands at the edge as an
 //! arrow, a suspect stays in sight as `x`, and a curve is drawn only between the points it was given.
 //!
+//! [`plot`] makes the five figures of a titration. All of them show the fitted counts model: transformed
+//! coordinates are for looking, nothing is fitted in them.
+//!
 //! ```
 //! use rackside::figure::{Axis, Curve, Figure, Glyphs, Room, Style, render};
 //!
@@ -21,20 +24,28 @@
 //!     y_label: "occupancy".into(),
 //!     series: vec![],
 //!     curves: vec![Curve { points, style: Style::Solid }],
+//!     words: vec![],
 //! };
 //! let frame = render(&figure, 36, 12, Glyphs::Ascii);
 //! assert!(frame.text().is_ascii());
 //! ```
 
 mod axis;
+mod bound_over_free;
 mod frame;
+mod hill;
 mod isotherm;
+mod plot;
+mod profile;
 mod raster;
 mod render;
+mod residuals;
+mod seen;
 
 pub use axis::{Axis, Room, Scale, Tick};
 pub use frame::{Cell, Class, Frame};
 pub use isotherm::isotherm;
+pub use plot::{Plot, plot};
 pub use render::{MOST_COLUMNS, MOST_ROWS, plot_columns, plot_rows, render};
 
 /// What is to be shown, in the units of its axes.
@@ -52,6 +63,8 @@ pub struct Figure {
     pub series: Vec<Series>,
     /// The curves. Where two meet in one cell, the one named first gives the cell its class.
     pub curves: Vec<Curve>,
+    /// Words on level lines.
+    pub words: Vec<Word>,
 }
 
 impl Figure {
@@ -114,6 +127,9 @@ pub enum PointGlyph {
 }
 
 impl PointGlyph {
+    /// All of them.
+    pub const ALL: [PointGlyph; 4] = [Self::Filled, Self::Hollow, Self::Cross, Self::Diamond];
+
     /// The character that stands for it, as for a key beside the figure.
     pub fn symbol(self, glyphs: Glyphs) -> char {
         match (self, glyphs) {
@@ -146,6 +162,26 @@ pub enum Style {
     Solid,
     /// In dashes.
     Dashed,
+}
+
+/// A word that stands on a level line.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Word {
+    /// The height of the line, in the unit of the vertical axis.
+    pub y: f64,
+    /// The word.
+    pub text: String,
+    /// The end of the line where a place for it is looked for first.
+    pub side: Side,
+}
+
+/// An end of a level line.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Side {
+    /// The left one.
+    Left,
+    /// The right one.
+    Right,
 }
 
 /// The characters that may be used.

@@ -6,6 +6,7 @@ use super::keys::{self, Command, Key};
 use super::layers::{Layer, LineFor};
 use super::{Desk, Effect, Message, Wide};
 use crate::assay::{Reading, ReadingId, Role, Scale, Stamp, Titration, Tube, TubeNo};
+use crate::figure::Plot;
 use crate::notebook::{Count, What};
 use crate::units::{Mark, NumberError, fixed, parse_counts, parse_decimal};
 use tui_input::{Input, InputRequest};
@@ -163,7 +164,23 @@ impl Desk {
                 Vec::new()
             }
             Command::Axis => {
-                self.look.log_axis = !self.look.log_axis;
+                if self.look.plot == Plot::Isotherm {
+                    self.look.log_axis = !self.look.log_axis;
+                } else {
+                    self.refuse("only the isotherm has a choice of axis; d goes round to it");
+                }
+                Vec::new()
+            }
+            Command::Plot => {
+                self.look.plot = self.look.plot.next();
+                let hidden = match self.look.wide {
+                    Wide::Tubes => "; v brings it into sight",
+                    Wide::RackAndPlot | Wide::Plot => "",
+                };
+                self.say(format!(
+                    "the plot shows: {}{hidden}",
+                    self.look.plot.words()
+                ));
                 Vec::new()
             }
             Command::View => {

@@ -33,6 +33,8 @@ pub enum Command {
     Note,
     /// Linear or log axis.
     Axis,
+    /// Another plot.
+    Plot,
     /// Rack and plot, plot alone, table of tubes.
     View,
     /// Braille or plain characters.
@@ -187,7 +189,15 @@ pub const BENCH: &[Binding<Command>] = &[
         "a",
         Command::Axis,
         "",
-        "free on a linear or a log axis",
+        "isotherm with free on a linear or a log axis",
+        false,
+    ),
+    row(
+        &[Key::Char('d')],
+        "d",
+        Command::Plot,
+        "",
+        "plot: isotherm, bound/free, Hill coordinates, residuals, profile",
         false,
     ),
     row(
@@ -263,19 +273,19 @@ pub const BENCH: &[Binding<Command>] = &[
         false,
     ),
     row(
-        &[Key::Char('?'), Key::Char('h')],
-        "?",
-        Command::Help,
-        "keys",
-        "this page",
-        false,
-    ),
-    row(
         &[Key::Char('q'), Key::Ctrl('c')],
         "q",
         Command::Quit,
         "",
         "leave; everything is kept and resumes where it stopped",
+        false,
+    ),
+    row(
+        &[Key::Char('?'), Key::Char('h')],
+        "?",
+        Command::Help,
+        "keys",
+        "this page",
         false,
     ),
 ];
@@ -488,47 +498,4 @@ fn find<C: Copy>(table: &[Binding<C>], key: Key) -> Option<C> {
 }
 
 #[cfg(test)]
-mod tests {
-    use super::*;
-    use std::collections::HashSet;
-
-    fn sound<C>(table: &[Binding<C>]) {
-        let mut seen = HashSet::new();
-        for b in table {
-            for k in b.keys {
-                assert!(seen.insert(*k), "{k:?}");
-            }
-            assert!(!b.help.is_empty() && !b.shown.is_empty());
-            assert!(b.help.len() <= 67, "{} is too long beside its key", b.help);
-        }
-    }
-
-    #[test]
-    fn no_key_is_there_twice_and_help_fits() {
-        sound(BENCH);
-        sound(RESULT);
-        sound(START);
-    }
-
-    #[test]
-    fn the_reading_loop_needs_the_keypad_alone() {
-        let loops = [
-            Command::Keep,
-            Command::Suspect,
-            Command::Minus,
-            Command::Recount,
-            Command::GoTo,
-        ];
-        for c in loops {
-            assert!(BENCH.iter().any(|b| b.command == c && b.keypad), "{c:?}");
-        }
-        for b in BENCH.iter().filter(|b| b.keypad) {
-            for k in b.keys {
-                assert!(
-                    matches!(k, Key::Enter | Key::Char('*' | '-' | '+' | '/')),
-                    "{k:?}"
-                );
-            }
-        }
-    }
-}
+mod tests;

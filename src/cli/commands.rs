@@ -6,7 +6,7 @@ use super::{out, table};
 use crate::analysis::analyse_with;
 use crate::app::{Look, Wide};
 use crate::assay::{Lab, PlotGlyphs, Sheet};
-use crate::figure::Glyphs;
+use crate::figure::{Glyphs, Plot};
 use crate::notebook::{Notebook, What};
 use crate::report::{self, Page};
 use crate::shell::{self, First, demos};
@@ -223,6 +223,7 @@ fn look(ascii: bool, lab: &Lab) -> Look {
     let (columns, rows) = shell::size();
     Look {
         fine,
+        plot: Plot::default(),
         log_axis: true,
         wide: Wide::RackAndPlot,
         columns,

@@ -3,7 +3,7 @@
 use super::axis::Room;
 use super::frame::{Class, Frame};
 use super::raster::{Mark as Trail, Trace};
-use super::{Axis, Figure, Glyphs, Mark, Point};
+use super::{Axis, Figure, Glyphs, Mark, Point, PointGlyph, Side, Style};
 use crate::units::clean;
 use unicode_width::UnicodeWidthChar;
 
@@ -44,7 +44,8 @@ pub fn plot_rows(rows: usize) -> usize {
 
 /// Draws a figure into a frame of exactly this size (up to [`MOST_COLUMNS`] by [`MOST_ROWS`]).
 ///
-/// From the bottom up: axes, curves, error bars, points, suspects, and the arrows of points outside.
+/// From the bottom up: axes, curves, error bars, points, suspects, and the arrows of points outside. A word
+/// takes the first place along its line where it covers nothing but dashes; where there is none it is left out.
 /// What has no room is left out in this order: the label of the horizontal axis, that of the vertical
 /// one, the tick labels, the axes. A tick label that would touch another is left out too; its mark stays.
 pub fn render(figure: &Figure, columns: usize, rows: usize, glyphs: Glyphs) -> Frame {
@@ -53,6 +54,7 @@ pub fn render(figure: &Figure, columns: usize, rows: usize, glyphs: Glyphs) -> F
     draw_axes(&mut frame, figure, &layout, glyphs);
     draw_curves(&mut frame, figure, &layout, glyphs);
     draw_points(&mut frame, figure, &layout, glyphs);
+    draw_words(&mut frame, figure, &layout, glyphs);
     frame
 }
 
@@ -182,7 +184,11 @@ fn shown(text: &str, glyphs: Glyphs) -> Vec<char> {
         .filter(|c| c.width() != Some(0))
         .map(|c| match c {
             'µ' | 'μ' if glyphs == Glyphs::Ascii => 'u',
-            c if glyphs == Glyphs::Ascii && !c.is_ascii() => '?',
+            // The points of a key look as they do in the plot.
+            c if glyphs == Glyphs::Ascii && !c.is_ascii() => PointGlyph::ALL
+                .into_iter()
+                .find(|p| p.symbol(Glyphs::Braille) == c)
+                .map_or('?', |p| p.symbol(glyphs)),
             c if c.width() != Some(1) => '?',
             c => c,
         })
@@ -344,6 +350,45 @@ fn draw_points(frame: &mut Frame, figure: &Figure, layout: &Layout, glyphs: Glyp
             };
             let (column, row) = (layout.left + spot.column, layout.top + spot.row);
             frame.put(column, row, spot.arrow.unwrap_or(symbol), class);
+        }
+    }
+}
+
+fn draw_words(frame: &mut Frame, figure: &Figure, layout: &Layout, glyphs: Glyphs) {
+    let dashed = |n: usize| {
+        figure
+            .curves
+            .get(n)
+            .is_some_and(|c| c.style == Style::Dashed)
+    };
+    for word in &figure.words {
+        let text = shown(&word.text, glyphs);
+        let Some(place) = figure.y.fraction(word.y).filter(|y| within(*y)) else {
+            continue;
+        };
+        if text.is_empty() || text.len() > layout.columns || layout.rows == 0 {
+            continue;
+        }
+        let row = layout.top + layout.upward().cell(place);
+        let clear = |start: &usize| {
+            // A blank or a dash on both sides too, or it would run into what stands there.
+            let reach = start.saturating_sub(1).max(layout.left)..start + text.len() + 1;
+            let inside = reach.take_while(|column| *column < layout.left + layout.columns);
+            inside
+                .filter_map(|column| frame.cell(column, row))
+                .all(|cell| match cell.class {
+                    Class::Blank => true,
+                    Class::Curve(n) => dashed(n),
+                    _ => false,
+                })
+        };
+        let mut starts = layout.left..=layout.left + layout.columns - text.len();
+        let free = match word.side {
+            Side::Left => starts.find(clear),
+            Side::Right => starts.rfind(clear),
+        };
+        if let Some(start) = free {
+            frame.write(start, row, &text);
         }
     }
 }

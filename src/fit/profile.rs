@@ -208,7 +208,7 @@ impl<'e, E: Evidence> Profiles<'e, E> {
     /// Takes another solution of the same evidence into account, where it is under the cut.
     pub fn meet(&mut self, other: &Solution) {
         let root = self.root(other.cost);
-        if other.ended == Ended::Converged && root < self.target() {
+        if other.ended == Ended::Converged && root < self.target() && self.alike(&other.theta) {
             let theta = other.theta.clone();
             self.met.push(Met { theta, root });
         }
@@ -256,6 +256,13 @@ impl<'e, E: Evidence> Profiles<'e, E> {
     pub fn contradict(&self, j: usize, upward: bool, end: End) -> bool {
         let sign = if upward { 1.0 } else { -1.0 };
         matches!(end, End::At(end) if self.met.iter().any(|m| (m.theta[j] - end) * sign > 1e-6))
+    }
+
+    /// Whether parameters that could change places are in the order that they have in the best solution.
+    fn alike(&self, theta: &[f64]) -> bool {
+        let best = &self.best.theta;
+        let same = |(j, k): &(usize, usize)| (theta[*j] - theta[*k]) * (best[*j] - best[*k]) > 0.0;
+        self.pairs.iter().all(same)
     }
 
     fn target(&self) -> f64 {
@@ -407,10 +414,13 @@ impl<E: Evidence> Walk<'_, '_, E> {
         self.slope = Some(self.rates(&refit));
         self.inner = (refit.distance, refit.root);
         self.warm.clone_from(&refit.theta);
-        self.profiles.met.push(Met {
-            theta: refit.theta,
-            root: refit.root,
-        });
+        // Where two parameters have changed places on the way of another one, what is met is of the other name.
+        if self.profiles.alike(&refit.theta) {
+            self.profiles.met.push(Met {
+                theta: refit.theta,
+                root: refit.root,
+            });
+        }
     }
 
     /// How the parameters move from the last refit under the cut to another one.

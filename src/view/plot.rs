@@ -2,12 +2,12 @@
 
 use super::style;
 use crate::app::Desk;
-use crate::figure::{Class, Glyphs, Scale, isotherm, render};
+use crate::figure::{Class, Glyphs, Scale, plot, render};
 use ratatui::Frame;
 use ratatui::layout::Rect;
 use ratatui::style::Style;
 use ratatui::text::{Line, Span};
-use ratatui::widgets::Paragraph;
+use ratatui::widgets::{Paragraph, Wrap};
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let (columns, rows) = (usize::from(area.width), usize::from(area.height));
@@ -23,7 +23,20 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     } else {
         Scale::Linear
     };
-    let figure = isotherm(app.titration(), &done.analysis, scale, columns, rows);
+    let figure = match plot(
+        app.look.plot,
+        app.titration(),
+        &done.analysis,
+        scale,
+        columns,
+        rows,
+    ) {
+        Ok(figure) => figure,
+        Err(needs) => {
+            frame.render_widget(Paragraph::new(needs).wrap(Wrap { trim: true }), area);
+            return;
+        }
+    };
     let glyphs = if app.look.fine {
         Glyphs::Braille
     } else {

@@ -166,9 +166,15 @@ fn named(texts: &[String], shown: &str, help: &str) {
 fn help_names_every_command() {
     let mut result = Sitting::demo("finished");
     result.press(Key::PageDown);
-    for size in [(80, 24), (80, 18), (60, 18)] {
+    for size in [(80, 26), (80, 24), (80, 18), (60, 18)] {
         let bench = help(after(Sitting::demo("half-typed"), "?"), size);
-        assert!(bench.len() > 1, "{size:?}");
+        // Help is scrolled only where its lines, two of border among them, have no room.
+        let lines = rackside::app::keys::bench_help(size.0).len();
+        assert_eq!(
+            bench.len(),
+            (lines + 3).saturating_sub(size.1.into()).max(1),
+            "{size:?}"
+        );
         for b in BENCH {
             named(&bench, b.shown, b.help);
         }

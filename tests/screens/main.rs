@@ -6,6 +6,8 @@ mod house;
 mod keys;
 mod modes;
 mod page;
+mod plots;
+mod profile;
 mod readme;
 mod scenes;
 mod sitting;

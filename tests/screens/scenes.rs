@@ -463,10 +463,49 @@ pub fn result() -> Vec<Scene> {
     ]
 }
 
+/// The plots beside the isotherm, in the order that `d` goes through them.
+const PLOTS: [&str; 4] = ["plot_bf", "plot_hill", "plot_res", "plot_prof"];
+
+/// The plots beside the rack.
+pub fn plots() -> Vec<Scene> {
+    let turned = |name, n: usize, also: &str, sitting| {
+        made(name, sitting, |s| {
+            s.types(&"d".repeat(n)).types(also);
+        })
+    };
+    let mut all: Vec<Scene> = PLOTS
+        .into_iter()
+        .zip(1..)
+        .map(|(name, n)| turned(name, n, "", Sitting::demo("finished")))
+        .collect();
+    let alone = [
+        "plot_bf_alone",
+        "plot_hill_alone",
+        "plot_res_alone",
+        "plot_prof_alone",
+    ];
+    for (name, n) in alone.into_iter().zip(1..) {
+        all.push(turned(name, n, "v", Sitting::demo("finished")));
+    }
+    let mut early = Sitting::fresh(&[]);
+    early.types("267\n227\n210\n56\n");
+    all.push(turned("plot_early", 2, "", early));
+    all
+}
+
 /// Screens that are looked at in sizes of their own.
 pub fn sized() -> Vec<(Scene, (u16, u16))> {
     let done = |name| made(name, Sitting::demo("finished"), |_| {});
+    let large = |name, keys: &str| {
+        made(name, Sitting::demo("finished"), |s| {
+            s.types(keys);
+        })
+    };
     vec![
+        (large("plot_bf_120x40", "d"), (120, 40)),
+        (large("plot_hill_120x40", "dd"), (120, 40)),
+        (large("plot_res_120x40", "ddd"), (120, 40)),
+        (large("plot_prof_120x40", "dddd"), (120, 40)),
         (done("bench_120x40"), (120, 40)),
         (
             made("bench_12_in_triplicate", triplicate(), |_| {}),
@@ -499,6 +538,7 @@ pub fn all() -> Vec<Scene> {
         start(),
         draft(),
         bench(),
+        plots(),
         popups(),
         bars(),
         forms(),

@@ -4,6 +4,7 @@ use rackside::analysis::{Analysis, analyse};
 use rackside::app::keys::Key;
 use rackside::app::{Access, App, Desk, Draft, Effect, Event, Laid, Look, Recent, Scene, Wide};
 use rackside::assay::{Lab, Sheet, Stamp, Titration};
+use rackside::figure::Plot;
 use rackside::notebook::{Entry, Notebook, What};
 use rackside::store::{self, Text};
 use rackside::view;
@@ -32,6 +33,7 @@ pub const WHO: &str = "A. Sample";
 pub fn look(columns: u16, rows: u16) -> Look {
     Look {
         fine: true,
+        plot: Plot::default(),
         log_axis: false,
         wide: Wide::default(),
         columns,

@@ -24,6 +24,11 @@ fn the_bench() {
 }
 
 #[test]
+fn the_plots() {
+    hold(scenes::plots());
+}
+
+#[test]
 fn what_lies_over_the_bench() {
     hold(scenes::popups());
 }

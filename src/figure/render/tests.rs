@@ -1,5 +1,5 @@
 use super::*;
-use crate::figure::{Curve, PointGlyph, Scale, Series, Style, Tick};
+use crate::figure::{Curve, PointGlyph, Scale, Series, Style, Tick, Word};
 use proptest::prelude::*;
 
 /// An invented saturation experiment in a frame of a size.
@@ -47,6 +47,7 @@ fn saturation(columns: usize, rows: usize, log: bool) -> Figure {
                 style: Style::Dashed,
             },
         ],
+        words: vec![],
         x,
         y,
         x_label: "free, nM".into(),
@@ -112,6 +113,7 @@ fn edges() -> Figure {
             ),
         ],
         curves: vec![],
+        words: vec![],
     }
 }
 
@@ -203,6 +205,43 @@ F  .1 .2  .5 1  2   5 10
 }
 
 #[test]
+fn a_word_stands_on_its_line_where_it_covers_only_dashes() {
+    let level = |y| Curve {
+        points: vec![(0.1, y), (10.0, y)],
+        style: Style::Dashed,
+    };
+    let word = |y, text: &str, side| Word {
+        y,
+        text: text.into(),
+        side,
+    };
+    let mut figure = edges();
+    figure.y_label = "● total ○ other, é".into();
+    figure.curves = vec![level(0.5), level(-0.5)];
+    figure.words = vec![
+        word(0.5, "90 %", Side::Left),
+        word(-0.5, "10 %", Side::Right),
+        // Outside the axis, and where no place is left.
+        word(7.0, "far", Side::Left),
+        word(0.5, "a word without room", Side::Left),
+    ];
+    assert_shows(
+        &render(&figure, 24, 9, Glyphs::Ascii),
+        r"
+@ total o other, ?
+ 1+             ^  ^  |
+  |< - -@- - | 90 %- -|-
+  |          |        |
+ 0+          x  |     |>
+  |- - -10 % | -|- - -#-
+-1+             v     |
+  ++--+---+--+--+---+--+
+F  .1 .2  .5 1  2   5 10
+",
+    );
+}
+
+#[test]
 fn a_small_frame_keeps_the_points() {
     let small = |columns, rows| render(&saturation(36, 12, true), columns, rows, Glyphs::Ascii);
     for (columns, rows) in [(9, 4), (5, 2), (3, 3), (1, 1)] {
@@ -282,20 +321,29 @@ fn any_figure() -> impl Strategy<Value = Figure> {
         style,
     )
         .prop_map(|(points, style)| Curve { points, style });
+    let word = (any_value(), ".{0,6}", any::<bool>()).prop_map(|(y, text, left)| Word {
+        y,
+        text,
+        side: if left { Side::Left } else { Side::Right },
+    });
     (
         (any_axis(), any_axis()),
         (".{0,12}", ".{0,30}"),
         prop::collection::vec(series, 0..4),
         prop::collection::vec(curve, 0..4),
+        prop::collection::vec(word, 0..3),
     )
-        .prop_map(|((x, y), (x_label, y_label), series, curves)| Figure {
-            x,
-            y,
-            x_label,
-            y_label,
-            series,
-            curves,
-        })
+        .prop_map(
+            |((x, y), (x_label, y_label), series, curves, words)| Figure {
+                x,
+                y,
+                x_label,
+                y_label,
+                series,
+                curves,
+                words,
+            },
+        )
 }
 
 proptest! {
@@ -348,6 +396,7 @@ proptest! {
                 points,
                 style: if dashed { Style::Dashed } else { Style::Solid },
             }],
+            words: vec![],
         };
         let glyphs = if braille { Glyphs::Braille } else { Glyphs::Ascii };
         let frame = render(&figure, 45, 12, glyphs);
