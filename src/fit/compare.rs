@@ -76,8 +76,10 @@ impl Compared {
     }
 }
 
-/// Fits one class with its intervals and the other laws; these get intervals where the chance `p` of their gain is at most
-/// `wanted(model)`, or where the law is `asked` for.
+/// Fits one class with its intervals and the other laws.
+///
+/// A law that is `asked` for gets its intervals. Of those whose gain has a chance `p` of at most `wanted(model)`, the one of the
+/// lowest AICc does, and the next one only where an interval of that is not closed: they say whether it can be relied on.
 ///
 /// A pure function: the same titration gives the same bits.
 pub fn compare(
@@ -92,13 +94,90 @@ pub fn compare(
         Err(outcome) => outcome.clone(),
     };
     let base = outcome.fit();
-    let rivals = vec![
-        rival::<TwoClasses>(titration, flags, &[], base, &asked, &wanted),
-        rival::<Hill>(titration, flags, &as_hill(base), base, &asked, &wanted),
+    let mut rivals = [
+        Candidate::of::<TwoClasses>(titration, flags, &[], base),
+        Candidate::of::<Hill>(titration, flags, &as_hill(base), base),
     ];
+    for r in rivals.iter_mut().filter(|r| asked(r.rival.model)) {
+        r.complete(base);
+    }
+    let mut supported: Vec<&mut Candidate> = rivals
+        .iter_mut()
+        .filter(|r| r.rival.gain.is_some_and(|g| g.p <= wanted(r.rival.model)))
+        .collect();
+    let aicc = |c: &Candidate| c.rival.outcome.fit().and_then(|f| f.aicc);
+    supported.sort_by(|a, b| {
+        let of = |c| aicc(c).unwrap_or(f64::INFINITY);
+        of(a).total_cmp(&of(b))
+    });
+    for r in supported {
+        r.complete(base);
+        if r.rival.outcome.fit().is_some_and(Fit::closed) {
+            break;
+        }
+    }
     Compared {
+        rivals: rivals.into_iter().map(|r| r.rival).collect(),
         one: outcome,
-        rivals,
+    }
+}
+
+/// A fitted law whose intervals can still be asked for.
+trait Fitted {
+    fn outcome(&mut self) -> Outcome;
+}
+
+impl<I: Cold> Fitted for Fitting<I> {
+    fn outcome(&mut self) -> Outcome {
+        Fitting::outcome(self)
+    }
+}
+
+/// A law on its way to be compared.
+struct Candidate {
+    rival: Rival,
+    /// Until its intervals are known.
+    fitting: Option<Box<dyn Fitted>>,
+}
+
+impl Candidate {
+    fn of<I: Cold + 'static>(
+        titration: &Titration,
+        flags: bool,
+        warm: &[Vec<f64>],
+        one: Option<&Fit>,
+    ) -> Candidate {
+        let model = I::MODEL;
+        match Fitting::<I>::new(titration, flags, warm) {
+            Ok(fitting) => {
+                let bare = fitting.bare();
+                Candidate {
+                    rival: Rival {
+                        model,
+                        gain: one.and_then(|one| Gain::of(one, &bare)),
+                        outcome: Outcome::Fitted(Box::new(bare)),
+                    },
+                    fitting: Some(Box::new(fitting)),
+                }
+            }
+            Err(outcome) => Candidate {
+                rival: Rival {
+                    model,
+                    outcome,
+                    gain: None,
+                },
+                fitting: None,
+            },
+        }
+    }
+
+    /// Finds its intervals. They may lead to a better optimum.
+    fn complete(&mut self, one: Option<&Fit>) {
+        if let Some(mut fitting) = self.fitting.take() {
+            self.rival.outcome = fitting.outcome();
+            let fit = self.rival.outcome.fit();
+            self.rival.gain = one.zip(fit).and_then(|(one, f)| Gain::of(one, f));
+        }
     }
 }
 
@@ -110,39 +189,4 @@ fn as_hill(one: Option<&Fit>) -> Vec<Vec<f64>> {
         theta
     };
     one.map(start).into_iter().collect()
-}
-
-fn rival<I: Cold>(
-    titration: &Titration,
-    flags: bool,
-    warm: &[Vec<f64>],
-    one: Option<&Fit>,
-    asked: impl Fn(Model) -> bool,
-    wanted: impl Fn(Model) -> f64,
-) -> Rival {
-    let model = I::MODEL;
-    let mut fitting = match Fitting::<I>::new(titration, flags, warm) {
-        Ok(fitting) => fitting,
-        Err(outcome) => {
-            return Rival {
-                model,
-                outcome,
-                gain: None,
-            };
-        }
-    };
-    let bare = fitting.bare();
-    let gain = one.and_then(|one| Gain::of(one, &bare));
-    let outcome = if asked(model) || gain.is_some_and(|g| g.p <= wanted(model)) {
-        fitting.outcome()
-    } else {
-        Outcome::Fitted(Box::new(bare))
-    };
-    // The intervals may have found a better optimum.
-    let gain = one.zip(outcome.fit()).and_then(|(one, f)| Gain::of(one, f));
-    Rival {
-        model,
-        outcome,
-        gain,
-    }
 }

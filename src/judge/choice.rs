@@ -3,7 +3,7 @@
 use super::depletion::{Depletion, depletion};
 use super::suspects::{Suspect, suspects};
 use crate::assay::{LevelNo, Model, Reason, Titration, TubeNo};
-use crate::fit::{Compared, Gain, Missing, Outcome, Rival, compare};
+use crate::fit::{Compared, End, Gain, Missing, Outcome, Rival, compare};
 use std::fmt;
 
 /// Why a law that fits better is not offered.
@@ -118,7 +118,12 @@ pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
         .map(|rival| Verdict {
             model: rival.model,
             gain: rival.gain,
-            standing: standing(rival, without.as_ref(), depleted),
+            standing: standing(
+                rival,
+                other_than(compared, rival),
+                without.as_ref(),
+                depleted,
+            ),
         })
         .collect();
     let aicc = |m: Model| compared.outcome(m).fit().and_then(|f| f.aicc);
@@ -144,6 +149,15 @@ pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
     }
 }
 
+/// The law that a rival competes with for the offer.
+fn other_than(compared: &Compared, rival: &Rival) -> Model {
+    let others = compared.rivals.iter().map(|r| r.model);
+    others
+        .filter(|m| *m != rival.model)
+        .min()
+        .unwrap_or(Model::OneClass)
+}
+
 /// The titration with some of its tubes left out of the fit.
 fn left_out(titration: &Titration, tubes: &[Suspect]) -> Titration {
     let mut rest = titration.clone();
@@ -157,6 +171,7 @@ fn left_out(titration: &Titration, tubes: &[Suspect]) -> Titration {
 
 fn standing(
     rival: &Rival,
+    other: Model,
     without: Option<&(TubeNo, Compared)>,
     depleted: Option<Depletion>,
 ) -> Standing {
@@ -170,6 +185,10 @@ fn standing(
     };
     if gain.delta_aicc.is_none_or(|d| d >= 0.0) {
         return Standing::Withheld(WhyWithheld::Aicc);
+    }
+    // Its intervals were not needed where another law fits better and has all of them.
+    if fit.of_isotherm().iter().any(|e| e.low == End::Unasked) {
+        return Standing::Withheld(WhyWithheld::Other(other));
     }
     let open = fit
         .of_isotherm()

@@ -114,7 +114,7 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
         .map(|after| format!("{model}   {after}"))
         .find(|whole| whole.len() <= width);
     let model = fits.unwrap_or(model);
-    let mut lines = parameters(values::isotherm(protocol, fit));
+    let mut lines = parameters(&values::isotherm(protocol, fit));
     lines.push(line(
         "ns",
         &values::ns(fit),
@@ -125,7 +125,7 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
 }
 
 /// The parameters of the isotherm on two lines: those of a class of sites together, and Hill's coefficient with Kh.
-fn parameters(named: Vec<Named>) -> Vec<Line<'static>> {
+fn parameters(named: &[Named]) -> Vec<Line<'static>> {
     let first = |n: &Named| {
         let after = n
             .p_kd
@@ -142,7 +142,7 @@ fn parameters(named: Vec<Named>) -> Vec<Line<'static>> {
         }
         line
     };
-    match &named[..] {
+    match named {
         [k1, r1, k2, r2] => {
             let bare = |n: &Named| line(&n.name, &n.shown, "");
             vec![beside(bare(k1), r1), beside(bare(k2), r2)]
