@@ -14,7 +14,7 @@ use serde::Deserialize;
 use std::collections::BTreeMap;
 
 #[derive(Deserialize)]
-struct Rack {
+pub struct Rack {
     settings: Settings,
     tubes: Vec<Vial>,
     background: Vec<Blank>,
@@ -95,7 +95,7 @@ fn typed<D: Dimension>(value: f64, unit: &str) -> Typed<Measure<D>> {
 }
 
 /// The titration a rack file describes.
-fn titration(rack: &Rack) -> Titration {
+pub fn titration(rack: &Rack) -> Titration {
     let s = &rack.settings;
     let mut sheet = Sheet::parse(Sheet::EXAMPLE).unwrap();
     let p = &mut sheet.protocol;
