@@ -20,6 +20,7 @@ mod nist_sets;
 mod racks;
 mod recounts;
 mod reference_fits;
+mod reference_laws;
 mod reference_racks;
 mod rows;
 #[path = "../simulate/mod.rs"]

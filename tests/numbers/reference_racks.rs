@@ -14,11 +14,12 @@ use serde::Deserialize;
 use std::collections::BTreeMap;
 
 #[derive(Deserialize)]
-struct Rack {
+pub struct Rack {
     settings: Settings,
     tubes: Vec<Vial>,
     background: Vec<Blank>,
-    expected: Expected,
+    /// What the reference found.
+    pub expected: Expected,
 }
 
 #[derive(Deserialize)]
@@ -32,6 +33,7 @@ struct Settings {
     s_d: f64,
     dilution: String,
     cv_prior: Option<Prior>,
+    scale_errors: Option<BTreeMap<String, f64>>,
 }
 
 #[derive(Deserialize)]
@@ -66,28 +68,31 @@ struct Blank {
 }
 
 #[derive(Deserialize)]
-struct Expected {
+pub struct Expected {
     fit: Found,
     fit_all: Found,
+    /// What it found for each law of binding, where it was asked.
+    pub models: Option<BTreeMap<String, serde_json::Value>>,
 }
 
 #[derive(Deserialize)]
-struct Found {
-    n: usize,
-    minus2lnl: f64,
-    prior_term: f64,
-    aicc: f64,
-    estimates: BTreeMap<String, f64>,
-    se_ln: BTreeMap<String, Option<f64>>,
-    intervals: BTreeMap<String, Ends>,
-    at_floor: Vec<String>,
-    dilution_d: Option<BTreeMap<u16, f64>>,
+pub struct Found {
+    pub n: usize,
+    pub minus2lnl: f64,
+    pub prior_term: f64,
+    pub aicc: f64,
+    pub estimates: BTreeMap<String, f64>,
+    pub se_ln: BTreeMap<String, Option<f64>>,
+    pub intervals: BTreeMap<String, Ends>,
+    pub at_floor: Vec<String>,
+    pub dilution_d: Option<BTreeMap<u16, f64>>,
+    pub scale_e: Option<BTreeMap<String, f64>>,
 }
 
 #[derive(Deserialize)]
-struct Ends {
-    low: Option<f64>,
-    high: Option<f64>,
+pub struct Ends {
+    pub low: Option<f64>,
+    pub high: Option<f64>,
 }
 
 fn typed<D: Dimension>(value: f64, unit: &str) -> Typed<Measure<D>> {
@@ -95,7 +100,7 @@ fn typed<D: Dimension>(value: f64, unit: &str) -> Typed<Measure<D>> {
 }
 
 /// The titration a rack file describes.
-fn titration(rack: &Rack) -> Titration {
+pub fn titration(rack: &Rack) -> Titration {
     let s = &rack.settings;
     let mut sheet = Sheet::parse(Sheet::EXAMPLE).unwrap();
     let p = &mut sheet.protocol;
@@ -122,6 +127,16 @@ fn titration(rack: &Rack) -> Titration {
         centre: c.centre,
         sd_ln: c.sd_ln,
     });
+    for (name, sd) in s.scale_errors.iter().flatten() {
+        let errors = &mut p.numbers.scale_errors;
+        *match name.as_str() {
+            "stock" => &mut errors.stock,
+            "specific_activity" => &mut errors.specific_activity,
+            "efficiency" => &mut errors.efficiency,
+            "volume" => &mut errors.volume,
+            other => panic!("{other}"),
+        } = Some(typed(*sd, ""));
+    }
     let mut levels: BTreeMap<u16, (f64, u16, u16)> = BTreeMap::new();
     for t in &rack.tubes {
         let (nm, totals, nonspecifics) = levels.entry(t.level).or_insert((t.added_nm, 0, 0));

@@ -1,0 +1,76 @@
+//! How long the fit of one class takes on four of the reference racks. `against_scipy.py` beside this file sets the times
+//! against those of scipy on the same data.
+#![allow(missing_docs, clippy::unwrap_used, clippy::panic, clippy::print_stdout)]
+
+#[path = "../numbers/racks.rs"]
+#[allow(dead_code)]
+mod racks;
+#[path = "../numbers/reference_racks.rs"]
+#[allow(dead_code, unused_imports)]
+mod reference_racks;
+
+use criterion::{BenchmarkId, Criterion, criterion_group};
+use rackside::assay::Titration;
+use rackside::fit::{Outcome, fit_rack};
+use std::hint::black_box;
+
+/// What is timed: the whole fit, with the intervals of all four parameters.
+fn timed(t: &Titration) -> Outcome {
+    fit_rack(t, true)
+}
+
+const RACKS: [(&str, &str); 4] = [
+    ("serial", include_str!("../numbers/data/racks/serial.json")),
+    ("stock", include_str!("../numbers/data/racks/stock.json")),
+    (
+        "other_ki",
+        include_str!("../numbers/data/racks/other_ki.json"),
+    ),
+    (
+        "full_block",
+        include_str!("../numbers/data/racks/full_block.json"),
+    ),
+];
+
+fn rack(json: &str) -> Titration {
+    reference_racks::titration(&serde_json::from_str(json).unwrap())
+}
+
+fn fits(c: &mut Criterion) {
+    let mut group = c.benchmark_group("fit");
+    for (name, json) in RACKS {
+        let t = rack(json);
+        assert!(timed(&t).fit().is_some());
+        group.bench_with_input(BenchmarkId::from_parameter(name), &t, |b, t| {
+            b.iter(|| timed(black_box(t)));
+        });
+    }
+    group.finish();
+}
+
+/// Says the interval of Kd of a rack and repeats what is timed.
+fn repeat(name: &str, times: usize) {
+    let (_, json) = RACKS.iter().find(|r| r.0 == name).unwrap();
+    let t = rack(json);
+    let outcome = timed(&t);
+    let kd = outcome.fit().unwrap().estimate("kd_nm").unwrap();
+    let [low, high] = [kd.low, kd.high].map(|end| end.value().unwrap());
+    println!("{low:e} {high:e}");
+    for _ in 0..times {
+        black_box(timed(black_box(&t)));
+    }
+}
+
+criterion_group!(benches, fits);
+
+/// `repeat NAME TIMES` is for one who takes the time from outside; anything else is criterion's.
+fn main() {
+    let args: Vec<String> = std::env::args().collect();
+    if let [_, word, name, times] = args.as_slice()
+        && word == "repeat"
+    {
+        return repeat(name, times.parse().unwrap());
+    }
+    benches();
+    Criterion::default().configure_from_args().final_summary();
+}
