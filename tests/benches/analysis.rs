@@ -5,7 +5,7 @@ use criterion::{BenchmarkId, Criterion, criterion_group, criterion_main};
 use rackside::analysis::analyse;
 use rackside::assay::{Kept, Reading, ReadingId, Role, Sheet, Titration, counts_per_nm};
 use rackside::binding::{Block, OneClass, Stuck, bound};
-use rackside::fit::fit_rack;
+use rackside::fit::{Fitting, fit_rack};
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 use std::hint::black_box;
@@ -55,16 +55,41 @@ fn rack(tubes: usize) -> Titration {
     t
 }
 
+const TUBES: [usize; 5] = [16, 32, 48, 208, 1008];
+
+/// One class alone: the fit, the fit with the interval of Kd, and all that is said of a rack.
 fn analyses(c: &mut Criterion) {
-    let mut group = c.benchmark_group("analysis");
-    for tubes in [16, 32, 48, 208, 1008] {
-        let t = rack(tubes);
-        assert!(fit_rack(&t, true).fit().is_some());
-        group.bench_with_input(BenchmarkId::from_parameter(tubes), &t, |b, t| {
-            b.iter(|| analyse(black_box(t)));
-        });
+    for (name, call) in [
+        ("fit", fit as fn(&Titration)),
+        ("fit and interval of Kd", kd),
+        ("analysis", whole),
+    ] {
+        let mut group = c.benchmark_group(name);
+        for tubes in TUBES {
+            let t = rack(tubes);
+            assert!(fit_rack(&t, true).fit().is_some());
+            group.bench_with_input(BenchmarkId::from_parameter(tubes), &t, |b, t| {
+                b.iter(|| call(black_box(t)));
+            });
+        }
+        group.finish();
     }
-    group.finish();
+}
+
+fn one(t: &Titration) -> Fitting<OneClass> {
+    Fitting::new(t, true, &[]).unwrap()
+}
+
+fn fit(t: &Titration) {
+    black_box(one(t).bare());
+}
+
+fn kd(t: &Titration) {
+    black_box(one(t).first_interval());
+}
+
+fn whole(t: &Titration) {
+    black_box(analyse(t));
 }
 
 criterion_group!(benches, analyses);

@@ -3,9 +3,9 @@
 
 use crate::racks::{LEVELS, find, keep, levels, sheet};
 use proptest::prelude::*;
-use rackside::analysis::{Analysis, analyse};
+use rackside::analysis::{Analysis, analyse, analyse_with};
 use rackside::assay::{Loss, Reason, Role, Titration, Tube};
-use rackside::fit::{End, Fit, Missing, Outcome};
+use rackside::fit::{End, Fit, Missing, Model, Outcome};
 
 /// A rack with its counts from a rule: role, label added in nM (zero for background), replicate.
 fn rack(t: Titration, counts: impl Fn(&Tube, f64) -> f64) -> Titration {
@@ -65,6 +65,50 @@ fn honest_outcome(outcome: &Outcome) {
     }
 }
 
+/// What is said of the fit is made of numbers, of tubes that are there, and flags nothing.
+#[track_caller]
+fn honest_judgement(t: &Titration, a: &Analysis) {
+    for s in &a.suspects.tubes {
+        assert!(
+            s.residual.is_finite() && (0.0..=1.0).contains(&s.p),
+            "{s:?}"
+        );
+        assert!(!t.is_suspect(s.tube) && t.tube(s.tube).is_some(), "{s:?}");
+    }
+    for g in &a.suspects.groups {
+        assert!(!g.f.is_nan() && (0.0..=1.0).contains(&g.p), "{g:?}");
+    }
+    for v in &a.choice.verdicts {
+        let gain = v.gain.map_or([0.0; 3], |g| [g.drop, g.f, g.p]);
+        assert!(gain.iter().all(|g| g.is_finite()), "{v:?}");
+        let closed = a.fit_of(v.model).is_some_and(Fit::closed);
+        assert!(!v.offered() || closed, "{v:?}");
+    }
+    assert_eq!(a.soundness.is_some(), a.fit().is_some());
+    let Some(s) = &a.soundness else { return };
+    let p = s.lack_of_fit.iter().map(|l| l.p);
+    let p = p.chain(s.runs.iter().map(|r| r.p));
+    let p = p.chain(s.levels.iter().map(|l| l.p));
+    assert!(p.into_iter().all(|p| (0.0..=1.0).contains(&p)), "{s:?}");
+    assert!(
+        s.levels
+            .iter()
+            .all(|l| l.error.is_finite() && l.distance.is_finite())
+    );
+}
+
+/// The law chosen is the one shown, and has a fit or says what it lacks.
+#[track_caller]
+fn honest_pins(t: &Titration) {
+    for model in Model::ALL {
+        let mut pinned = t.clone();
+        pinned.protocol.numbers.model = Some(model);
+        let a = honest(&pinned);
+        assert_eq!((a.choice.shown, a.choice.pinned), (model, true));
+        assert!(a.fit().is_none_or(|f| f.model == model));
+    }
+}
+
 /// Every number of an analysis, as bits.
 fn bits(a: &Analysis) -> Vec<u64> {
     let mut all = Vec::new();
@@ -99,9 +143,14 @@ fn bits(a: &Analysis) -> Vec<u64> {
 /// The analysis of a rack, looked through.
 #[track_caller]
 fn honest(t: &Titration) -> Analysis {
-    let a = analyse(t);
+    // Intervals of every law, but on racks that are hard by their size alone.
+    let a = analyse_with(t, t.tubes.len() < 200);
     honest_outcome(&a.outcome);
     honest_outcome(a.without_flags());
+    Model::ALL
+        .iter()
+        .for_each(|m| honest_outcome(a.compared.outcome(*m)));
+    honest_judgement(t, &a);
     assert!(
         a.tubes
             .iter()
@@ -505,5 +554,16 @@ proptest! {
     #[test]
     fn any_small_rack(t in any_rack()) {
         honest(&t);
+    }
+
+}
+
+proptest! {
+    #![proptest_config(ProptestConfig { cases: 60, failure_persistence: None, ..ProptestConfig::default() })]
+
+    /// The same with each law chosen to be shown.
+    #[test]
+    fn any_small_rack_with_a_law_chosen(t in any_rack()) {
+        honest_pins(&t);
     }
 }

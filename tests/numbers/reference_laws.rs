@@ -77,6 +77,15 @@ fn two_classes() {
     held(include_str!("data/racks/two_classes.json"), &ALL);
 }
 
+/// Two classes with an error that all tubes share.
+#[test]
+fn two_classes_with_a_scale_error() {
+    held(
+        include_str!("data/racks/two_classes_scale.json"),
+        &[Model::OneClass, Model::TwoClasses],
+    );
+}
+
 /// Hill with n = 1.6, each level from stock. The reference finds no second class there either.
 #[test]
 fn hill_steep() {
