@@ -8,6 +8,7 @@
 )]
 
 mod balance;
+mod choosing;
 mod conversions;
 mod coverage;
 mod deletion;
