@@ -79,7 +79,8 @@ impl Compared {
 /// Fits one class with its intervals and the other laws.
 ///
 /// A law that is `asked` for gets its intervals. Of those whose gain has a chance `p` of at most `wanted(model)`, the one of the
-/// lowest AICc does, and the next one only where an interval of that is not closed: they say whether it can be relied on.
+/// lowest AICc does, and the next one only where an interval of that is not closed: they say whether it can be relied on. A law with a
+/// parameter that the readings hardly determine gets none: its profiles would be long ways along a ridge.
 ///
 /// A pure function: the same titration gives the same bits.
 pub fn compare(
@@ -99,11 +100,12 @@ pub fn compare(
         Candidate::of::<Hill>(titration, flags, &as_hill(base), base),
     ];
     for r in rivals.iter_mut().filter(|r| asked(r.rival.model)) {
-        r.complete(base);
+        r.complete(base, |f| f.outcome());
     }
     let mut supported: Vec<&mut Candidate> = rivals
         .iter_mut()
         .filter(|r| r.rival.gain.is_some_and(|g| g.p <= wanted(r.rival.model)))
+        .filter(|r| r.rival.outcome.fit().is_some_and(|f| f.vague().is_none()))
         .collect();
     let aicc = |c: &Candidate| c.rival.outcome.fit().and_then(|f| f.aicc);
     supported.sort_by(|a, b| {
@@ -111,7 +113,7 @@ pub fn compare(
         of(a).total_cmp(&of(b))
     });
     for r in supported {
-        r.complete(base);
+        r.complete(base, |f| f.outcome_if_closed());
         if r.rival.outcome.fit().is_some_and(Fit::closed) {
             break;
         }
@@ -125,11 +127,16 @@ pub fn compare(
 /// A fitted law whose intervals can still be asked for.
 trait Fitted {
     fn outcome(&mut self) -> Outcome;
+    fn outcome_if_closed(&mut self) -> Outcome;
 }
 
 impl<I: Cold> Fitted for Fitting<I> {
     fn outcome(&mut self) -> Outcome {
         Fitting::outcome(self)
+    }
+
+    fn outcome_if_closed(&mut self) -> Outcome {
+        Fitting::outcome_if_closed(self)
     }
 }
 
@@ -172,9 +179,9 @@ impl Candidate {
     }
 
     /// Finds its intervals. They may lead to a better optimum.
-    fn complete(&mut self, one: Option<&Fit>) {
+    fn complete(&mut self, one: Option<&Fit>, by: fn(&mut dyn Fitted) -> Outcome) {
         if let Some(mut fitting) = self.fitting.take() {
-            self.rival.outcome = fitting.outcome();
+            self.rival.outcome = by(&mut *fitting);
             let fit = self.rival.outcome.fit();
             self.rival.gain = one.zip(fit).and_then(|(one, f)| Gain::of(one, f));
         }

@@ -102,8 +102,18 @@ impl<I: Cold> Fitting<I> {
 
     /// The fit with the intervals of all its parameters.
     pub fn outcome(&mut self) -> Outcome {
+        self.with_intervals(false)
+    }
+
+    /// The fit with the intervals of its parameters as far as each has both ends: after the first that lacks one the others
+    /// are not asked for.
+    pub fn outcome_if_closed(&mut self) -> Outcome {
+        self.with_intervals(true)
+    }
+
+    fn with_intervals(&mut self, only_closed: bool) -> Outcome {
         for _ in 0..=MOST_RESTARTS {
-            match self.intervals() {
+            match self.intervals(only_closed) {
                 Ok((ends, profile)) => {
                     return Outcome::Fitted(Box::new(self.described(&ends, profile)));
                 }
@@ -161,14 +171,22 @@ impl<I: Cold> Fitting<I> {
 
     /// The ends of all intervals (logarithms) and the profile of the first parameter, or a better place to fit from.
     #[allow(clippy::type_complexity)]
-    fn intervals(&self) -> Result<(Vec<[End; 2]>, Vec<ProfilePlace>), Vec<f64>> {
+    fn intervals(&self, only_closed: bool) -> Result<(Vec<[End; 2]>, Vec<ProfilePlace>), Vec<f64>> {
         let mut profiles = self.profiles();
         let mut ends = Vec::new();
         for j in 0..Columns::of::<I>().cv() {
-            ends.push([
-                self.end(j, false, &mut profiles)?,
-                self.end(j, true, &mut profiles)?,
-            ]);
+            let low = self.end(j, false, &mut profiles)?;
+            let enough = |end: End| only_closed && end.value().is_none();
+            let high = if enough(low) {
+                End::Unasked
+            } else {
+                self.end(j, true, &mut profiles)?
+            };
+            ends.push([low, high]);
+            if enough(low) || enough(high) {
+                ends.resize(Columns::of::<I>().cv(), [End::Unasked; 2]);
+                return Ok((ends, Vec::new()));
+            }
         }
         // What later profiles met may lie beyond the ends of earlier ones.
         for (j, pair) in ends.iter_mut().enumerate() {
@@ -286,7 +304,12 @@ fn global<I: Cold>(evidence: &RackEvidence<I>, warm: &[Vec<f64>]) -> Vec<Solutio
         let failed = |s: &Solution| s.ended != Ended::Converged;
         failed(a).cmp(&failed(b)).then(a.cost.total_cmp(&b.cost))
     });
-    if let Some(best) = settled.first_mut() {
+    // One class is what a rack is asked about first, and gets all the steps there are.
+    let one = I::MODEL == Model::OneClass;
+    if let Some(best) = settled
+        .first_mut()
+        .filter(|s| one || s.ended == Ended::Converged)
+    {
         *best = in_order::<I>(solve(evidence, &best.theta, None));
     }
     settled

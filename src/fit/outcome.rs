@@ -135,6 +135,13 @@ impl Fit {
         &self.estimates[..n]
     }
 
+    /// A parameter of the isotherm that the readings hardly determine: it rests on a limit, or its standard error is more than 1.5 on
+    /// the ln scale, a factor of twenty either way at 95 %.
+    pub fn vague(&self) -> Option<&Estimate> {
+        let hardly = |e: &&Estimate| e.se_ln.is_none_or(|se| se > 1.5);
+        self.of_isotherm().iter().find(hardly)
+    }
+
     /// Whether every parameter of the isotherm has an interval with both ends.
     pub fn closed(&self) -> bool {
         self.of_isotherm()

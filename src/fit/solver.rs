@@ -81,6 +81,16 @@ enum Care {
 }
 
 impl Care {
+    /// The steps allowed. A start that has not settled in a hundred crawls along a ridge that the readings do not tell the
+    /// ends of.
+    fn steps(self) -> u64 {
+        match self {
+            Care::Digits => MOST_STEPS,
+            Care::Cost => 500,
+            Care::Roughly => 120,
+        }
+    }
+
     /// How many times larger a drop of the cost may be ignored than rounding would have it.
     fn ignored(self) -> f64 {
         match self {
@@ -175,8 +185,9 @@ struct Scoring<'e, E> {
 impl<E: Evidence> Scoring<'_, E> {
     /// Damped steps until they end.
     fn run(&mut self) {
+        let most = self.care.steps();
         let run = Executor::new((), Running(self))
-            .configure(|s: State| s.max_iters(MOST_STEPS))
+            .configure(|s: State| s.max_iters(most))
             .timer(false)
             .ctrlc(false)
             .run();

@@ -11,6 +11,8 @@ use std::fmt;
 pub enum WhyWithheld {
     /// An interval of one of its parameters has an open end.
     OpenEnd(&'static str),
+    /// The readings hardly determine one of its parameters.
+    Vague(&'static str),
     /// So much label is bound at a level that a small error in what was added would look the same.
     Depletion(Depletion),
     /// Without this tube, which does not fit with the others, the gain is gone.
@@ -186,16 +188,20 @@ fn standing(
     if gain.delta_aicc.is_none_or(|d| d >= 0.0) {
         return Standing::Withheld(WhyWithheld::Aicc);
     }
-    // Its intervals were not needed where another law fits better and has all of them.
-    if fit.of_isotherm().iter().any(|e| e.low == End::Unasked) {
-        return Standing::Withheld(WhyWithheld::Other(other));
-    }
+    let lacks = |end: End| matches!(end, End::Open | End::Failed);
     let open = fit
         .of_isotherm()
         .iter()
-        .find(|e| e.low.value().is_none() || e.high.value().is_none());
+        .find(|e| lacks(e.low) || lacks(e.high));
     if let Some(e) = open {
         return Standing::Withheld(WhyWithheld::OpenEnd(e.name));
+    }
+    if let Some(e) = fit.vague() {
+        return Standing::Withheld(WhyWithheld::Vague(e.name));
+    }
+    // Its intervals were not needed where another law fits better and has all of them.
+    if fit.of_isotherm().iter().any(|e| e.low == End::Unasked) {
+        return Standing::Withheld(WhyWithheld::Other(other));
     }
     if let Some((tube, rest)) = without {
         let still = rest.rivals.iter().find(|r| r.model == rival.model);
@@ -243,6 +249,10 @@ impl fmt::Display for WhyWithheld {
                 100.0 * share,
                 100.0 * Depletion::LIMIT
             ),
+            WhyWithheld::Vague(name) => {
+                let name = name.trim_end_matches("_nm");
+                write!(f, "the readings hardly determine {name}")
+            }
             WhyWithheld::Suspect(TubeNo(no)) => write!(
                 f,
                 "without vial {no}, which does not fit with the others, it does not; look at that first"
