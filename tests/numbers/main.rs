@@ -12,6 +12,7 @@ mod conversions;
 mod deletion;
 mod dilution;
 mod hard_racks;
+mod judging;
 mod models;
 mod nist;
 mod nist_models;
