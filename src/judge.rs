@@ -5,6 +5,7 @@ mod depletion;
 mod groups;
 mod scatter;
 mod soundness;
+mod steps;
 mod suspects;
 
 pub use choice::{Choice, Standing, Verdict, WhyWithheld, asked_for, choose, supported_at};

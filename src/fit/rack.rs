@@ -80,6 +80,8 @@ struct Link {
     level: LevelNo,
     column: usize,
     from: Option<usize>,
+    /// The standard deviation of the step.
+    sd: f64,
 }
 
 /// An error that all tubes share: a relative one of the label added, of the counts for 1 nM, or of both.
@@ -125,6 +127,8 @@ pub struct RackEvidence<I> {
     isotherm: PhantomData<I>,
 }
 
+/// The standard deviation of a step that may be anything.
+const FREE_STEP: f64 = 10.0;
 /// The smallest nonspecific binding told from none.
 pub(super) const NS_FLOOR: f64 = 1e-9;
 /// The fewest counts told from none, in background and in what sites bring.
@@ -146,7 +150,7 @@ impl<I: Isotherm> RackEvidence<I> {
         let first = Columns::of::<I>().dilutions();
         let s_d = p.numbers.dilution_error.base();
         let links = if s_d > 0.0 {
-            lay::links(titration, &mut samples, &mut left_out, first)
+            lay::links(titration, &mut samples, &mut left_out, first, s_d)
         } else {
             Vec::new()
         };
@@ -198,6 +202,35 @@ impl<I: Isotherm> RackEvidence<I> {
             from: l.from,
         });
         (self.s_d, columns.collect())
+    }
+
+    /// The same with the step that made a level free to be anything, and its column: one that is there already, or one more at
+    /// the end.
+    pub fn freed(&self, level: LevelNo) -> (Self, DilutionColumn) {
+        let mut free = self.clone();
+        let place = free.links.iter().position(|l| l.level == level);
+        let place = place.unwrap_or_else(|| {
+            let column = self.dim();
+            free.links.push(Link {
+                level,
+                column,
+                from: None,
+                sd: FREE_STEP,
+            });
+            let all = free.samples.iter_mut().chain(&mut free.left_out);
+            all.filter(|s| s.level == level)
+                .for_each(|s| s.column = Some(column));
+            free.links.len() - 1
+        });
+        let link = &mut free.links[place];
+        link.sd = FREE_STEP;
+        let (column, from) = (link.column, link.from);
+        let of = DilutionColumn {
+            level,
+            column,
+            from,
+        };
+        (free, of)
     }
 
     /// The lowest and the highest label added, in nM.
@@ -278,7 +311,7 @@ impl<I: Isotherm> RackEvidence<I> {
         let cv = self.cv_prior.map_or(0.0, |(centre, sd)| {
             ((theta[Columns::of::<I>().cv()] - centre) / sd).powi(2)
         });
-        let steps = self.links.iter().map(|l| step(l, theta) / self.s_d);
+        let steps = self.links.iter().map(|l| step(l, theta) / l.sd);
         let scales = self.scales.iter().map(|s| theta[s.column] / s.sd);
         cv + steps.chain(scales).map(|z| z * z).sum::<f64>()
     }
@@ -360,10 +393,10 @@ impl<I: Isotherm> Evidence for RackEvidence<I> {
             rows.push(RowOf::CvPrior, -(theta[at.cv()] - centre) / sd)[at.cv()] = 1.0 / sd;
         }
         for l in &self.links {
-            let row = rows.push(RowOf::Dilution(l.column), -step(l, theta) / self.s_d);
-            row[l.column] = 1.0 / self.s_d;
+            let row = rows.push(RowOf::Dilution(l.column), -step(l, theta) / l.sd);
+            row[l.column] = 1.0 / l.sd;
             if let Some(from) = l.from {
-                row[from] = -1.0 / self.s_d;
+                row[from] = -1.0 / l.sd;
             }
         }
         for s in &self.scales {

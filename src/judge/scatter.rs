@@ -1,20 +1,21 @@
 //! How tubes scatter about a fit, whatever was known of their CV beforehand.
 
 use crate::binding::Isotherm;
-use crate::fit::{Evidence, RackEvidence, RowOf, Rows};
+use crate::fit::{Evidence, RackEvidence, RowOf, Rows, f_upper_tail};
 use nalgebra::DMatrix;
 
 /// The scatter of tubes about a fit that they are part of.
 ///
-/// The likelihood counts no degree of freedom for what it fits, so that the CV it finds is too small by about `sqrt((n - p) / n)`, and
-/// by more with a column for every dilution; and what is known beforehand pulls it away from what these tubes show. So the square
-/// of the CV is found again from `sum w (r^2 - (1 - h)) = 0`, with `r` a tube's residual in standard deviations, `h` its leverage, and
-/// `w` the share of its variance that the CV makes: the score of `ln cv` with what fitting takes from every residual put back,
-/// that of restricted likelihood (Patterson & Thompson 1971, Biometrika 58:545; from memory), in one step from the fit.
+/// The likelihood counts no degree of freedom for what it fits, so that the CV it finds is too small by about `sqrt((n - p) / n)`,
+/// and by more with a column for every dilution; and what is known beforehand pulls it away from what these tubes show. So the
+/// square of the CV is found again from `sum w (r^2 - (1 - h)) = 0`, with `r` a tube's residual in standard deviations, `h` its
+/// leverage, and `w` the share of its variance that the CV makes: the score of `ln cv` with what fitting takes from every
+/// residual put back, that of restricted likelihood (Patterson & Thompson 1971, Biometrika 58:545; from memory), in one step
+/// from the fit.
 ///
-/// A tube whose variance is all counting error needs no estimate of it, and tubes like that bring none. The variance of a tube with the share
-/// `w` is known as well as with `sum w_j^2 (1 - h_j) / w^2` degrees of freedom (Satterthwaite 1946, Biometrics Bull 2:110; from
-/// memory).
+/// A tube whose variance is all counting error needs no estimate of it, and tubes like that bring none. The variance of a tube with
+/// the share `w` is known as well as with `sum w_j^2 (1 - h_j) / w^2` degrees of freedom (Satterthwaite 1946, Biometrics Bull
+/// 2:110; from memory).
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Scatter {
     /// The residual of every tube over its standard deviation in a fit that it is part of, `sqrt(1 - h)`.
@@ -66,6 +67,19 @@ impl Scatter {
     /// has to be so by the model too.
     pub(super) fn beyond_model(&self, w: f64) -> f64 {
         1.0 + w * (self.ratio.max(1.0) - 1.0)
+    }
+
+    /// The chance of a sum of `squares` on `of` degrees of freedom, all in standard deviations of tubes with the share `w`, against a
+    /// fit without them: that of `(squares / of) / ((df - squares) / (df - of))` as an F ratio. Exact for a linear model
+    /// (R. D. Cook & S. Weisberg 1982, *Residuals and Influence in Regression*, 2.2; from memory), and here a guess that says
+    /// whether to find out.
+    pub(super) fn chance_alone(&self, squares: f64, of: f64, w: f64) -> f64 {
+        let df = self.df(w);
+        if df <= of || df <= squares {
+            return 0.0;
+        }
+        let f = squares / of * (df - of) / (df - squares);
+        f_upper_tail(f, [of, df - of]).unwrap_or(0.0)
     }
 
     /// The degrees of freedom that it is known with; no more than the tubes have, should counts scatter more than counting

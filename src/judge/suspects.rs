@@ -11,9 +11,9 @@ use crate::fit::{
 
 /// The chance, all tubes taken together, below which a tube or a group is named.
 const NAMED_BELOW: f64 = 0.05;
-/// Tubes whose studentised residual in the fit with them is smaller are not refitted, nor groups whose standard deviation is:
-/// without them they would be about as far, and none is named below three.
-const WORTH_A_REFIT: f64 = 1.5;
+/// Tubes and groups whose chance, as guessed from the fit that they are part of, is not below this are not refitted: one that
+/// is named would have to be twenty times less likely without them.
+const WORTH_A_REFIT: f64 = 1.0;
 /// The least replicates for Grubbs' test: below five it has hardly any power.
 const GRUBBS_FROM: usize = 5;
 
@@ -41,7 +41,7 @@ pub struct Disagreement {
     pub f: f64,
     /// The chance of as large a ratio in any group.
     pub p: f64,
-    /// The one that stands out by Grubbs' test, from five replicates on.
+    /// The one that stands out among them by Grubbs' test, from five replicates on.
     pub one: Option<TubeNo>,
 }
 
@@ -56,11 +56,12 @@ pub struct Suspects {
 
 /// Tubes and groups that do not fit with the others, by a fit of the law that `fit` is of.
 ///
-/// Every tube, and every group of replicates, is held against a refit without it, since an outlier inflates the CV that it is judged by,
-/// and against the scatter of the others there where that is more than the model has it. A tube by its residual, as Student's
-/// t, times the number of tubes (externally studentised residuals: R. D. Cook & S. Weisberg 1982, *Residuals and
-/// Influence in Regression*, 2.2; from memory); a group by its variance (F test), and from five replicates on also by the farthest
-/// of them (Grubbs 1969, Technometrics 11:1; from memory), times the number of these tests.
+/// Every tube, and every group of replicates, is held against a refit without it, since an outlier inflates the CV that it is
+/// judged by, and against the scatter of the others there where that is more than the model has it. A tube by its residual, as
+/// Student's t, times the number of tubes (externally studentised residuals: R. D. Cook & S. Weisberg 1982, *Residuals and
+/// Influence in Regression*, 2.2; from memory); a group by its variance (F test), times the number of groups. In a group of five or
+/// more that is named, Grubbs' test (Grubbs 1969, Technometrics 11:1; from memory) says whether one of them stands out; by
+/// itself it names none: with many groups it would name one too often, and with an allowance for that hardly ever.
 pub fn suspects(titration: &Titration, flags: bool, fit: &Fit) -> Suspects {
     match fit.model {
         Model::OneClass => named::<OneClass>(titration, flags, fit),
@@ -70,25 +71,32 @@ pub fn suspects(titration: &Titration, flags: bool, fit: &Fit) -> Suspects {
 }
 
 fn named<I: Cold>(titration: &Titration, flags: bool, fit: &Fit) -> Suspects {
-    RackEvidence::<I>::new(titration, flags).map_or_else(Suspects::default, |evidence| Suspects {
-        tubes: tubes(&evidence, fit),
-        groups: disagreements(&evidence, fit),
-    })
+    let Some(evidence) = RackEvidence::<I>::new(titration, flags) else {
+        return Suspects::default();
+    };
+    let scatter = Scatter::of(&evidence, &fit.theta, &fit.cov);
+    Suspects {
+        tubes: tubes(&evidence, fit, &scatter),
+        groups: disagreements(&evidence, fit, &scatter),
+    }
 }
 
-fn tubes<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Suspect> {
+fn tubes<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit, scatter: &Scatter) -> Vec<Suspect> {
     let full = Solution {
         theta: fit.theta.clone(),
         cost: fit.cost(),
         ended: Ended::Converged,
         at_limit: vec![false; fit.theta.len()],
     };
-    let within = Scatter::of(evidence, &fit.theta, &fit.cov).studentised;
     let mut found: Vec<Suspect> = evidence
         .samples()
         .iter()
         .enumerate()
-        .filter(|(i, _)| within[*i].abs() >= WORTH_A_REFIT)
+        .filter(|(i, sample)| {
+            let w = share_of_cv(evidence.expected(sample, &fit.theta));
+            let chance = scatter.chance_alone(scatter.studentised[*i].powi(2), 1.0, w);
+            chance * (evidence.parts() as f64) < WORTH_A_REFIT
+        })
         .filter_map(|(i, sample)| {
             let alone = deleted(evidence, &full, i)?;
             let theta = &alone.solution.theta;
@@ -108,14 +116,22 @@ fn tubes<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Suspect> {
 }
 
 /// Groups of replicates that scatter more than the others.
-fn disagreements<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Disagreement> {
+fn disagreements<I: Cold>(
+    evidence: &RackEvidence<I>,
+    fit: &Fit,
+    scatter: &Scatter,
+) -> Vec<Disagreement> {
     let all = groups(fit);
     let several: Vec<&Group> = all.iter().filter(|g| g.residuals.len() > 1).collect();
-    let many = |g: &Group| g.residuals.len() >= GRUBBS_FROM;
-    let tests = (several.len() + several.iter().filter(|g| many(g)).count()) as f64;
+    let tests = several.len() as f64;
     let mut found: Vec<Disagreement> = several
         .iter()
-        .filter(|g| many(g) || g.variance() >= WORTH_A_REFIT * WORTH_A_REFIT)
+        .filter(|g| {
+            let w = share_of_group(evidence, g, &fit.theta);
+            let of = g.residuals.len() as f64 - 1.0;
+            let chance = scatter.chance_alone(g.about_mean(), of, w);
+            chance * tests < WORTH_A_REFIT
+        })
         .filter_map(|g| {
             let (f, df) = against_others(evidence, fit, g)?;
             let p = f_upper_tail(f, [g.residuals.len() as f64 - 1.0, df])? * tests;
@@ -125,10 +141,10 @@ fn disagreements<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Disagree
                 tubes: g.tubes.clone(),
                 f,
                 p: p.min(1.0),
-                one: many(g).then(|| outlier(g, NAMED_BELOW / tests)).flatten(),
+                one: outlier(g),
             })
         })
-        .filter(|d| d.p < NAMED_BELOW || d.one.is_some())
+        .filter(|d| d.p < NAMED_BELOW)
         .collect();
     found.sort_by(|a, b| a.p.total_cmp(&b.p).then(a.level.cmp(&b.level)));
     found
@@ -157,14 +173,25 @@ fn against_others<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit, g: &Group) -> 
         .filter(|at| matches!(rows.of()[*at], RowOf::Mean(i) if parts.contains(&i)))
         .map(|at| rows.y()[at])
         .collect();
-    let share = |i: &usize| share_of_cv(evidence.expected(&evidence.samples()[*i], theta));
-    let w = parts.iter().map(share).sum::<f64>() / parts.len() as f64;
+    let w = share_of_group(evidence, g, theta);
     Some((alone.variance() / scatter.beyond_model(w), scatter.df(w)))
 }
 
-/// The replicate that Grubbs' test at level `alpha` sets apart.
-fn outlier(g: &Group, alpha: f64) -> Option<TubeNo> {
+/// The share of the variance of a group's tubes that is not that of counting, on average.
+fn share_of_group<I: Cold>(evidence: &RackEvidence<I>, g: &Group, theta: &[f64]) -> f64 {
+    let tubes = evidence.samples().iter();
+    let shares = tubes
+        .filter(|s| g.tubes.contains(&s.tube))
+        .map(|s| share_of_cv(evidence.expected(s, theta)));
+    shares.sum::<f64>() / g.tubes.len() as f64
+}
+
+/// The replicate of a group that Grubbs' test sets apart.
+fn outlier(g: &Group) -> Option<TubeNo> {
     let n = g.residuals.len();
+    if n < GRUBBS_FROM {
+        return None;
+    }
     let mean = g.mean();
     let sd = g.variance().sqrt();
     let (tube, far) = g
@@ -172,5 +199,5 @@ fn outlier(g: &Group, alpha: f64) -> Option<TubeNo> {
         .iter()
         .zip(g.residuals.iter().map(|r| (r - mean).abs() / sd))
         .max_by(|a, b| a.1.total_cmp(&b.1))?;
-    (far > grubbs_critical(n, alpha)?).then_some(*tube)
+    (far > grubbs_critical(n, NAMED_BELOW)?).then_some(*tube)
 }

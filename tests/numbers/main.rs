@@ -14,6 +14,7 @@ mod coverage;
 mod deletion;
 mod dilution;
 mod hard_racks;
+mod judging;
 mod models;
 mod nist;
 mod nist_models;

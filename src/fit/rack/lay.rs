@@ -69,6 +69,7 @@ pub(super) fn links(
     samples: &mut [Sample],
     left_out: &mut [Sample],
     first: usize,
+    sd: f64,
 ) -> Vec<Link> {
     let levels = levels(titration);
     let from = |no: LevelNo| match levels.get(&no).map(|l| l.made) {
@@ -96,6 +97,7 @@ pub(super) fn links(
             level: *no,
             column: *column,
             from: from(*no).and_then(|f| wanted.get(&f).copied()),
+            sd,
         })
         .collect()
 }
