@@ -1,7 +1,7 @@
 //! Each observation held against the fit without it: an outlier inflates the variance that it is judged by, and hides.
 
 use super::evidence::{Evidence, RowOf, Rows};
-use super::solver::{Ended, Solution, covariance, row_variance, settle};
+use super::solver::{Ended, Solution, covariance, row_variance, solve};
 use super::statistics::t_two_sided;
 use nalgebra::DMatrix;
 
@@ -37,7 +37,7 @@ pub fn deleted<E: Parts>(evidence: &E, full: &Solution, part: usize) -> Option<D
         return None;
     }
     let others = evidence.without(part);
-    let solution = settle(&others, &full.theta);
+    let solution = solve(&others, &full.theta, None);
     if solution.ended != Ended::Converged {
         return None;
     }
