@@ -264,7 +264,7 @@ fn summary_of_files_good_and_bad() {
             &["summary", "newer.ron"],
             65,
             &[],
-            &["newer.ron", "format 2", "newer rackside"],
+            &["newer.ron", "format 3", "newer rackside"],
         ),
         case(&["summary", "other.ron"], 65, &[], &["not a notebook"]),
         case(&["summary", "empty.ron"], 65, &[], &["empty"]),
