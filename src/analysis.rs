@@ -1,9 +1,10 @@
 //! One call from a titration to all that is said of it.
 
 use crate::assay::{
-    Background, Measured, Observed, Sticks, Suspicion, Titration, Tube, background, measured,
-    observed,
+    Background, Counting, Label, Measured, Observed, Role, Silent, Step, Suspicion, Titration,
+    Tube, Value, Work, background, label, measured, observed_in,
 };
+use crate::binding::Sticking;
 use crate::fit::{Compared, Fit, Model, Outcome, compare, fit_model};
 use crate::judge::{
     Choice, Soundness, Suspects, asked_for, choose, soundness, supported_at, suspects,
@@ -14,10 +15,12 @@ use crate::judge::{
 pub struct TubeResult {
     /// Which tube.
     pub tube: Tube,
-    /// Label added in nM; none for background.
+    /// Label added in nM at the time of the assay, or what a standard holds; none for background.
     pub added_nm: Option<f64>,
     /// Its counts: those in use, or where every reading is flagged, all of them.
     pub observed: Option<Observed>,
+    /// The label in the vial as counted, once a background is counted.
+    pub label: Option<Label>,
     /// Bound and free, once a background is counted.
     pub measured: Option<Measured>,
     /// Free label in nM: as measured, and once there is a fit, with what the fit knows of where nonspecific label
@@ -72,11 +75,69 @@ impl Analysis {
 /// Label that sticks after separation was free in the tube: `LT = F + S` and `bound = S + ns F`, so that
 /// `F = (LT - bound) / (1 - ns)`. Label that sticks during incubation is not free: `F = LT - bound`. Before
 /// there is a fit, and where `ns` is not below one, the latter is all that can be said.
-pub(crate) fn free(measured: Measured, sticks: Sticks, ns: Option<f64>) -> f64 {
-    match (sticks, ns) {
-        (Sticks::ToFilter, Some(ns)) if ns < 1.0 => measured.free_nm / (1.0 - ns),
-        _ => measured.free_nm,
+pub(crate) fn free(measured: Measured, sticking: Option<Sticking>) -> f64 {
+    free_with(measured, sticking, &mut Silent)
+}
+
+fn free_with<W: Work>(measured: Measured, sticking: Option<Sticking>, work: &mut W) -> f64 {
+    let counted = measured.free_nm;
+    match sticking {
+        Some(s) if s.after > 0.0 && s.after < 1.0 => {
+            let free = counted / (1.0 - s.after);
+            work.step(|| {
+                Step::new(
+                    "free in the tube: what sticks after separation was free",
+                    Value::new("F'", free, "nM"),
+                    "F / (1 - m)",
+                    [
+                        Value::new("F", counted, "nM"),
+                        Value::new("m", s.after, "nonspecific after separation"),
+                    ],
+                )
+            });
+            free
+        }
+        _ => counted,
     }
+}
+
+/// Specific binding of a tube in nM: `bound - ns x free`; a tube without receptor has only what sticks after separation to take off.
+pub(crate) fn specific(measured: Measured, role: Role, sticking: Sticking) -> f64 {
+    specific_with(measured, role, sticking, &mut Silent)
+}
+
+fn specific_with<W: Work>(measured: Measured, role: Role, sticking: Sticking, work: &mut W) -> f64 {
+    let free = free_with(measured, Some(sticking), work);
+    let ns = match role {
+        Role::NoReceptor => sticking.after,
+        _ => sticking.during + sticking.after,
+    };
+    let specific = measured.bound_nm - ns * free;
+    work.step(|| {
+        Step::new(
+            "specific binding",
+            Value::new("S", specific, "nM"),
+            "B - n * F'",
+            [
+                Value::new("B", measured.bound_nm, "nM"),
+                Value::new("n", ns, "nonspecific for one of free, as fitted"),
+                Value::new("F'", free, "nM"),
+            ],
+        )
+    });
+    specific
+}
+
+/// Every step from the readings of a tube to bound, free and, with a fit, specific.
+pub fn working(titration: &Titration, analysis: &Analysis, tube: &Tube) -> Vec<Step> {
+    let mut steps = crate::assay::working(titration, tube, analysis.background);
+    let of = analysis.tubes.iter().find(|t| t.tube.no == tube.no);
+    let measured = of.and_then(|t| t.measured);
+    if let (Some(measured), Some(fit)) = (measured, analysis.fit()) {
+        let sticking = fit.sticking(titration.protocol.nonspecific.sticks);
+        specific_with(measured, tube.role, sticking, &mut steps);
+    }
+    steps
 }
 
 /// Everything that can be said of a titration: a pure function, so that a notebook gives the same
@@ -98,26 +159,32 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
     let suspects = fit.map_or_else(Suspects::default, |f| suspects(titration, true, f));
     let soundness = fit.map(|f| soundness(titration, true, f));
     let blank = background(titration, true);
-    let ns = outcome.fit().map(|f| f.value("ns"));
     let sticks = titration.protocol.nonspecific.sticks;
+    let sticking = outcome.fit().map(|f| f.sticking(sticks));
+    let counting = Counting::of(&titration.protocol);
+    let in_use = |tube: &Tube| {
+        let of = |flags| observed_in(&counting, titration, tube, flags);
+        of(true).or_else(|| of(false))
+    };
     let tubes = titration
         .tubes
         .iter()
         .map(|tube| {
-            let counts =
-                observed(titration, tube.no, true).or_else(|| observed(titration, tube.no, false));
-            let amounts = counts
-                .zip(blank)
-                .and_then(|(counts, blank)| measured(titration, tube, counts, blank));
+            let counts = in_use(tube);
+            let both = counts.zip(blank);
+            let amounts = both.and_then(|(counts, blank)| measured(titration, tube, counts, blank));
             TubeResult {
                 tube: *tube,
-                added_nm: titration.added_nm(tube),
+                added_nm: titration
+                    .added_nm(tube)
+                    .or_else(|| titration.standard_nm(tube)),
                 observed: counts,
+                label: both.and_then(|(counts, blank)| label(titration, tube, counts, blank)),
                 measured: amounts,
-                free_nm: amounts.map(|m| free(m, sticks, ns)),
+                free_nm: amounts.map(|m| free(m, sticking)),
                 specific_nm: amounts
-                    .zip(ns)
-                    .map(|(m, ns)| m.bound_nm - ns * free(m, sticks, Some(ns))),
+                    .zip(sticking)
+                    .map(|(m, sticking)| specific(m, tube.role, sticking)),
                 suspect: titration
                     .is_suspect(tube.no)
                     .then(|| {

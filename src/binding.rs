@@ -10,7 +10,7 @@ mod law;
 mod one_class;
 mod two_classes;
 
-pub use balance::{Block, Bound, Stuck, bound};
+pub use balance::{Block, Bound, Sticking, Stuck, bound, bound_at, nothing_specific};
 pub use hill::Hill;
 pub use law::Law;
 pub use one_class::OneClass;
@@ -53,6 +53,10 @@ pub trait Isotherm: Copy {
         self.by_ln(free, by_ln);
         (self.specific(free), self.slope(free))
     }
+
+    /// The curvature `d2S/dF2` in 1/nM, and the derivatives `dS' / d ln p` of the slope for each parameter at a fixed free
+    /// concentration.
+    fn bend(&self, free: f64, slope_by_ln: &mut [f64]) -> f64;
 
     /// The free concentration that solves `a F + S(F) = total`, in nM.
     fn free(&self, total: f64, a: f64) -> f64;

@@ -21,7 +21,7 @@ pub use fitting::{Fitting, fit_model, fit_rack};
 pub use missing::Missing;
 pub use outcome::{Estimate, Fit, FittedTube, Outcome, ProfilePlace};
 pub use profile::{End, ProfileCut, ProfileEnd, Profiles};
-pub use rack::{Columns, DilutionColumn, RackEvidence, Sample};
+pub use rack::{Columns, DilutionColumn, Expectation, RackEvidence, Sample};
 pub use solver::{Ended, Solution, covariance, settle, solve};
 pub use start::Cold;
 pub use statistics::{

@@ -4,14 +4,16 @@
 //! person typed beside it, so that a record shows `3.1 TBq/mmol` for ever and not what we made of it.
 
 mod measure;
+mod nuclide;
 mod number;
 mod show;
 
 pub use measure::{
-    Amount, Cell, CellCount, Celsius, Concentration, DegreeCelsius, Dimension, DpmPerFmol,
-    Fraction, Mass, Measure, MilliGram, MilliLitre, Minute, Minutes, NanoMolar, Share,
+    Amount, Cell, CellCount, Celsius, Concentration, Cpm, DegreeCelsius, Dimension, DpmPerFmol,
+    Fraction, Mass, Measure, MilliGram, MilliLitre, Minute, Minutes, NanoMolar, Rate, Share,
     SpecificActivity, Typed, UnitError, Volume,
 };
+pub use nuclide::{Nuclide, carrier_free, during_count, left_after};
 pub use number::{Mark, NumberError, parse_counts, parse_decimal};
 pub use show::{clean, fixed, grouped, short, significant};
 

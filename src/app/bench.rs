@@ -79,8 +79,8 @@ fn far(minutes: f64, offered: f64) -> bool {
 fn parse_value(text: &str, scale: Scale, mark: Mark) -> Result<f64, NumberError> {
     match scale {
         Scale::Counts => parse_counts(text, mark),
-        Scale::Cpm => parse_decimal(text, mark).and_then(|v| {
-            if v < 0.0 {
+        _ => parse_decimal(text, mark).and_then(|v| {
+            if v < 0.0 && !scale.may_be_negative() {
                 Err(NumberError::Negative {
                     text: text.trim().into(),
                 })

@@ -257,8 +257,8 @@ pub const COUNTER: &[Spec] = &[
     field(
         "typed per vial",
         "counter.fields",
-        Kind::Choice(&READING),
-        "what you type from the printout (arrows choose)",
+        Kind::Needed,
+        "from the printout, e.g. counts; cpm, minutes; net cpm; dpm, quench; counts, at",
     ),
     field(
         "minutes per tube",

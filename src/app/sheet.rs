@@ -240,9 +240,12 @@ impl Forms {
             nonspecific,
             except,
             background,
+            no_receptor: Default::default(),
+            added: Default::default(),
+            standards: 1,
         };
         if r.errors.is_empty() {
-            match ladder.lay(self.mark()) {
+            match ladder.lay(self.mark(), &crate::assay::Counted::Bound) {
                 Ok(_) => return Ok(ladder),
                 Err(LadderError::Ladder { field, what }) => {
                     let at = if field == "levels" {

@@ -1,77 +1,291 @@
 //! Counts turned into amounts: rates, femtomoles, concentrations, each with its counting error.
 
-use super::protocol::{Protocol, ReceptorAmount, SitesUnit};
-use super::rack::{Kept, Role, Titration, Tube, TubeNo};
-use crate::units::{AVOGADRO, FMOL_PER_NM_ML};
+use super::blanks::{Background, calibration};
+use super::counts::{Counting, Observed, Turn};
+use super::protocol::{Counted, Protocol};
+use super::rack::{Kept, Role, Side, Titration, Tube, TubeNo};
+use super::reading::{Reading, ReadingError};
+use super::working::{Silent, Step, Value, Work};
+use crate::units::FMOL_PER_NM_ML;
 
-/// The counts of one tube, recounts added up.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Observed {
-    /// Gross counts.
-    pub counts: f64,
-    /// Minutes counted.
-    pub minutes: f64,
+/// What a vial's counts are of.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Seen {
+    /// What is bound in a tube.
+    Bound,
+    /// What is free in a tube, an aliquot of it.
+    Unbound,
+    /// What a tube gets, an aliquot of it.
+    Added,
+    /// A side of a dialysis cell, an aliquot of it.
+    Side(Side),
+    /// A standard of a reader.
+    Standard,
 }
 
-/// The background vials taken together.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Background {
-    /// Gross counts of all of them.
-    pub counts: f64,
-    /// Minutes counted, all together.
-    pub minutes: f64,
-}
-
-impl Background {
-    /// Counts per minute.
-    pub fn cpm(&self) -> f64 {
-        self.counts / self.minutes
+/// What a tube's counts are of; none for background.
+pub fn seen_as(protocol: &Protocol, tube: &Tube) -> Option<Seen> {
+    match (tube.role, tube.side) {
+        (Role::Background, _) => None,
+        (Role::Added, _) => Some(Seen::Added),
+        (Role::Standard, _) => Some(Seen::Standard),
+        (_, Some(side)) => Some(Seen::Side(side)),
+        _ => Some(match protocol.separation.counted {
+            Counted::Free { .. } => Seen::Unbound,
+            _ => Seen::Bound,
+        }),
     }
 }
 
-/// Whether flagged readings are left out.
-fn counted(kept: &[Kept], flags: bool) -> Option<Observed> {
-    let mut sum = Observed {
-        counts: 0.0,
-        minutes: 0.0,
+/// The volume whose label is counted, in mL: where one nM in the tube stands for `1000 x volume` fmol on the counter.
+fn counted_volume(protocol: &Protocol, seen: Seen) -> f64 {
+    let s = &protocol.separation;
+    let v = protocol.incubation.volume.base();
+    match (seen, &s.counted) {
+        (Seen::Added, _) => v * s.added_counted.as_ref().map_or(1.0, |a| a.base()),
+        (Seen::Unbound, Counted::Free { aliquot }) => aliquot.base(),
+        (
+            Seen::Side(Side::Protein),
+            Counted::BothSides {
+                protein_aliquot: a, ..
+            },
+        )
+        | (
+            Seen::Side(Side::Ligand),
+            Counted::BothSides {
+                ligand_aliquot: a, ..
+            },
+        ) => a.base(),
+        _ => v * s.fraction.base(),
+    }
+}
+
+/// What one nM of label shows in a minute: counts at the nominal efficiency and at the time of the assay,
+/// `efficiency x specific activity x 1000 x volume counted` (1 nM in 1 mL is 1000 fmol). Of a reader, how many nM in the volume that is
+/// read one nM in the tube makes; the gain of the standards comes on top.
+pub fn per_nm(protocol: &Protocol, seen: Seen) -> f64 {
+    per_nm_with(protocol, seen, &mut Silent)
+}
+
+fn per_nm_with<W: Work>(protocol: &Protocol, seen: Seen, work: &mut W) -> f64 {
+    let volume = counted_volume(protocol, seen);
+    if let Counted::Signal { read_volume, .. } = &protocol.separation.counted {
+        if seen == Seen::Standard {
+            return 1.0;
+        }
+        let read = read_volume.as_ref().unwrap_or(&protocol.incubation.volume);
+        let q = volume / read.base();
+        work.step(|| {
+            Step::new(
+                "nM in the volume read for one nM in the tube",
+                Value::new("q", q, ""),
+                "v / u",
+                [
+                    Value::new("v", volume, "mL separated"),
+                    Value::new("u", read.base(), "mL read"),
+                ],
+            )
+        });
+        return q;
+    }
+    let (e, a) = (protocol.counter.nominal_efficiency(), protocol.activity());
+    let k = e * a * FMOL_PER_NM_ML * volume;
+    work.step(|| {
+        Step::new(
+            "counts a minute for one nM",
+            Value::new("k", k, "cpm/nM"),
+            "E * A * 1000 * v",
+            [
+                Value::new("E", e, ""),
+                Value::new("A", a, "dpm/fmol"),
+                Value::new("v", volume, "mL counted"),
+            ],
+        )
+    });
+    k
+}
+
+/// Counts per minute for 1 nM bound in the tube; of a reader, before its gain.
+pub fn counts_per_nm(protocol: &Protocol) -> f64 {
+    per_nm(protocol, Seen::Bound)
+}
+
+/// The label's own story, for the working of a tube: decay from the activity date to the assay.
+fn label_with<W: Work>(titration: &Titration, tube: &Tube, work: &mut W) -> Option<f64> {
+    let p = &titration.protocol;
+    let written = titration.level(tube.level?)?.added.base();
+    let added = titration.added_nm(tube)?;
+    if let (Some(d), Some(half_life), Some(aged)) = (
+        p.label_decayed(),
+        p.ligand.half_life_minutes(),
+        p.aged_minutes(),
+    ) {
+        work.step(|| {
+            Step::new(
+                "label left since the activity date",
+                Value::new("D", d.left, ""),
+                "2 ^ (-dt / T)",
+                [
+                    Value::new("dt", aged, "min"),
+                    Value::new("T", half_life, "min half-life"),
+                ],
+            )
+        });
+        decayed_steps(p, &d, work);
+        work.step(|| {
+            Step::new(
+                "label added, at the time of the assay",
+                Value::new("LT", added, "nM"),
+                "L0 * c",
+                [
+                    Value::new("L0", written, "nM as written"),
+                    Value::new("c", d.concentration, ""),
+                ],
+            )
+        });
+    } else {
+        work.step(|| {
+            let of = [Value::new("LT", added, "nM")];
+            Step::new("label added", Value::new("LT", added, "nM"), "LT", of)
+        });
+    }
+    Some(added)
+}
+
+/// Specific activity and concentration at the time of the assay, by what the label becomes.
+fn decayed_steps<W: Work>(p: &Protocol, d: &super::decayed::Decayed, work: &mut W) {
+    use super::decayed::Carrier;
+    let atoms = f64::from(p.ligand.atoms());
+    let then = Value::new("A0", p.ligand.specific_activity.base(), "dpm/fmol");
+    let left = || Value::new("D", d.left, "");
+    let n = || Value::new("n", atoms, "atoms of label");
+    let f = || Value::new("f", d.labelled, "labelled");
+    let (activity, of_activity, factor, of_factor) = match p.ligand.decay {
+        None => return,
+        Some(Carrier::CarrierFree) => ("A0", vec![then], "D ^ n", vec![left(), n()]),
+        Some(Carrier::ProductInert) => (
+            "A0 * D ^ n / (1 - f + f * D ^ n)",
+            vec![then, left(), n(), f()],
+            "1 - f + f * D ^ n",
+            vec![f(), left(), n()],
+        ),
+        Some(Carrier::ProductBinds) => ("A0 * D", vec![then, left()], "1", vec![]),
     };
-    for k in kept.iter().filter(|k| !(flags && k.suspect.is_some())) {
-        sum.counts += k.reading.gross_counts();
-        sum.minutes += k.reading.minutes;
+    work.step(|| {
+        Step::new(
+            "specific activity at the time of the assay",
+            Value::new("A", d.activity, "dpm/fmol"),
+            activity,
+            of_activity,
+        )
+    });
+    work.step(|| {
+        Step::new(
+            "ligand left of every level",
+            Value::new("c", d.concentration, ""),
+            factor,
+            of_factor,
+        )
+    });
+}
+
+/// When a vial's turn comes in the run, in minutes from its start; none where the protocol has no run.
+fn turn(titration: &Titration, tube: &Tube) -> Turn {
+    let p = &titration.protocol;
+    let since_start = p.counter.run.as_ref().map(|run| {
+        let before = titration.tubes.iter().take_while(|t| t.no != tube.no);
+        before
+            .map(|t| p.minutes_for(t.role) + run.changer.base())
+            .sum()
+    });
+    Turn {
+        since_start,
+        labelled: tube.role.labelled(),
+    }
+}
+
+/// Whether the counts behind a reading of a tube can be known; `again` for a further one, whose time no run tells.
+///
+/// # Errors
+/// What is missing, or what cannot be.
+pub fn check_reading(
+    titration: &Titration,
+    tube: &Tube,
+    reading: &Reading,
+    again: bool,
+) -> Result<(), ReadingError> {
+    let turn = turn(titration, tube);
+    let counting = Counting::of(&titration.protocol);
+    let known = again && titration.protocol.short_lived();
+    let turn = Turn {
+        since_start: turn.since_start.filter(|_| !known),
+        ..turn
+    };
+    counting.observed(reading, turn, &mut Silent).map(|_| ())
+}
+
+/// The counts of a tube by a [`Counting`] that serves for many; with `flags`, readings that are flagged are left out.
+pub fn observed_in(
+    counting: &Counting,
+    titration: &Titration,
+    tube: &Tube,
+    flags: bool,
+) -> Option<Observed> {
+    summed(counting, titration, tube, flags, &mut Silent)
+}
+
+fn summed<W: Work>(
+    counting: &Counting,
+    titration: &Titration,
+    tube: &Tube,
+    flags: bool,
+    work: &mut W,
+) -> Option<Observed> {
+    let used = |k: &&Kept| !(flags && k.suspect.is_some());
+    let kept = titration.kept(tube.no);
+    if kept.is_empty() {
+        return None;
+    }
+    let turn = turn(titration, tube);
+    let (mut sum, mut n) = (Observed::default(), 0);
+    for k in kept.iter().filter(used) {
+        if let Ok(one) = counting.observed(&k.reading, turn, work) {
+            sum = sum.plus(one);
+            n += 1;
+        }
+    }
+    if n > 1 {
+        work.step(|| {
+            let of = [Value::new("N", sum.counts, "counts")];
+            let what = format!("{n} counts added up, and their minutes");
+            Step::new(what, Value::new("N", sum.counts, "counts"), "N", of)
+        });
     }
     (sum.minutes > 0.0).then_some(sum)
 }
 
 /// The counts of a tube; with `flags`, readings that are flagged are left out.
 pub fn observed(titration: &Titration, tube: TubeNo, flags: bool) -> Option<Observed> {
-    counted(titration.kept(tube), flags)
-}
-
-/// The background vials taken together; with `flags`, readings that are flagged are left out.
-///
-/// Poisson counts of the same rate add up, so the sum carries all that the vials say of it.
-pub fn background(titration: &Titration, flags: bool) -> Option<Background> {
-    let mut sum = Background {
-        counts: 0.0,
-        minutes: 0.0,
-    };
-    for t in titration
-        .tubes
-        .iter()
-        .filter(|t| t.role == Role::Background)
-    {
-        if let Some(o) = observed(titration, t.no, flags) {
-            sum.counts += o.counts;
-            sum.minutes += o.minutes;
-        }
+    // Most tubes have no reading yet, or one that is simply counts.
+    if titration.kept(tube).is_empty() {
+        return None;
     }
-    (sum.minutes > 0.0).then_some(sum)
+    let counting = Counting::of(&titration.protocol);
+    observed_in(&counting, titration, titration.tube(tube)?, flags)
 }
 
-/// Counts per minute for 1 nM bound in the tube: `efficiency x specific activity x fraction counted
-/// x 1000 x volume` (1 nM in 1 mL is 1000 fmol).
-pub fn counts_per_nm(protocol: &Protocol) -> f64 {
-    protocol.counts_per_fmol() * FMOL_PER_NM_ML * protocol.incubation.volume.base()
+/// The counts of a tube: those in use, or where every reading is flagged, all of them.
+pub fn in_use(titration: &Titration, tube: TubeNo) -> Option<Observed> {
+    observed(titration, tube, true).or_else(|| observed(titration, tube, false))
+}
+
+/// A concentration of label as counted.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Label {
+    /// In nM.
+    pub nm: f64,
+    /// Its counting error (one standard deviation), background included, in nM.
+    pub sd_nm: f64,
 }
 
 /// What a tube shows before any fit.
@@ -81,75 +295,223 @@ pub struct Measured {
     pub bound_nm: f64,
     /// Its counting error (one standard deviation) in nM.
     pub bound_sd_nm: f64,
-    /// Label added less label bound, in nM.
+    /// Free label in nM: label that can bind less label bound; where free is counted, as counted.
     pub free_nm: f64,
 }
 
-/// Bound and free of a tube: `(gross rate - background rate) / (k 1000 v)` and `added - bound`.
+/// The label that a vial holds, as a concentration: in the tube for what is bound, what is added; in its own liquid for an aliquot.
 ///
 /// The error is that of counting, sample and background: `sqrt(N/t^2 + N_b/t_b^2)` (Currie 1968,
-/// Anal Chem 40:586; formula from memory). A tube of zero counts is given the error of one count,
-/// since an error bar of no length would claim to know the rate.
+/// Anal Chem 40:586; formula from memory). A vial of zero counts is given the error of one count,
+/// since an error bar of no length would claim to know the rate. Of a reader, the error is that of the blank on both.
+pub fn label(
+    titration: &Titration,
+    tube: &Tube,
+    observed: Observed,
+    background: Background,
+) -> Option<Label> {
+    label_of(titration, tube, observed, background, &mut Silent)
+}
+
+fn label_of<W: Work>(
+    titration: &Titration,
+    tube: &Tube,
+    o: Observed,
+    background: Background,
+    work: &mut W,
+) -> Option<Label> {
+    let p = &titration.protocol;
+    let seen = seen_as(p, tube)?;
+    let signal = p.separation.counted.is_signal();
+    let (b, w) = (background.cpm(), o.signal_minutes);
+    let gain = if signal {
+        calibration(titration, true)?.gain
+    } else {
+        1.0
+    };
+    let k = per_nm_with(p, seen, work) * gain;
+    let net = (o.counts - b * o.minutes) / w;
+    let unit = if signal { "signal" } else { "cpm" };
+    let tau = p.counter.dead_minutes();
+    let own = if signal {
+        background.between * o.minutes
+    } else {
+        // Of counts corrected for dead time the variance is that much larger.
+        o.counts.max(1.0) * (1.0 + tau * o.counts / o.minutes)
+            + background.between * o.minutes.powi(2)
+    };
+    let sd = (own + background.variance * o.minutes.powi(2)).sqrt() / w;
+    work.step(|| {
+        Step::new(
+            if signal {
+                "signal less blank"
+            } else {
+                "net rate"
+            },
+            Value::new("R", net, unit).give_or_take(sd),
+            "(N - b * t) / w",
+            [
+                Value::new("N", o.counts, if signal { "signal" } else { "counts" }),
+                Value::new("b", b, unit).give_or_take(background.variance.sqrt()),
+                Value::new("t", o.minutes, if signal { "readings" } else { "min" }),
+                Value::new("w", w, if signal { "readings" } else { "min" }),
+            ],
+        )
+    });
+    let nm = net / k;
+    let found = Label { nm, sd_nm: sd / k };
+    work.step(|| {
+        let x = Value::new("x", nm, "nM").give_or_take(found.sd_nm);
+        let what = match seen {
+            Seen::Bound => "label bound, in the tube",
+            Seen::Unbound => "label not bound, in the aliquot",
+            Seen::Added => "label added, as counted",
+            Seen::Side(Side::Protein) => "label on the protein side",
+            Seen::Side(Side::Ligand) => "label on the ligand side",
+            Seen::Standard => "label in the standard, as read",
+        };
+        if signal {
+            let of = [
+                Value::new("R", net, unit),
+                Value::new("g", gain, "signal/nM"),
+                Value::new("q", k / gain, ""),
+            ];
+            Step::new(what, x, "R / (g * q)", of)
+        } else {
+            let of = [Value::new("R", net, unit), Value::new("k", k, "cpm/nM")];
+            Step::new(what, x, "R / k", of)
+        }
+    });
+    Some(found)
+}
+
+/// The volume of a dialysis cell's protein side as filled over that at the end; one where no shift was measured.
+pub fn volume_shift(protocol: &Protocol) -> f64 {
+    match &protocol.separation.counted {
+        Counted::BothSides {
+            protein_after: Some(after),
+            ..
+        } => protocol.incubation.volume.base() / after.base(),
+        _ => 1.0,
+    }
+}
+
+/// Bound and free of a tube; none for vials that show neither.
+///
+/// Bound counted: bound is what was counted, free is the label that can bind less that. Free counted: the other way round. Both
+/// sides counted: free is the ligand side, bound what the protein side has more, brought back to the volume it was filled with; it
+/// stands with the protein side's vial.
 pub fn measured(
     titration: &Titration,
     tube: &Tube,
     observed: Observed,
     background: Background,
 ) -> Option<Measured> {
-    let added = titration.added_nm(tube)?;
-    let per_nm = counts_per_nm(&titration.protocol);
-    let net = observed.counts / observed.minutes - background.cpm();
-    let variance = observed.counts.max(1.0) / observed.minutes.powi(2)
-        + background.counts / background.minutes.powi(2);
-    let bound_nm = net / per_nm;
-    Some(Measured {
-        bound_nm,
-        bound_sd_nm: variance.sqrt() / per_nm,
-        free_nm: added - bound_nm,
-    })
+    measured_with(titration, tube, observed, background, &mut Silent)
 }
 
-/// A unit for sites and how many of it one nM of sites in the tube is.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct SitesScale {
-    /// The unit as written.
-    pub unit: &'static str,
-    /// How many of it are one nM in the tube.
-    pub per_nm: f64,
-}
-
-impl SitesScale {
-    /// Sites as a concentration in the tube.
-    pub const IN_TUBE: SitesScale = SitesScale {
-        unit: "nM in the tube",
-        per_nm: 1.0,
+fn measured_with<W: Work>(
+    titration: &Titration,
+    tube: &Tube,
+    observed: Observed,
+    background: Background,
+    work: &mut W,
+) -> Option<Measured> {
+    let p = &titration.protocol;
+    let seen = seen_as(p, tube)?;
+    if matches!(seen, Seen::Standard) {
+        label_of(titration, tube, observed, background, work)?;
+        return None;
+    }
+    let added = label_with(titration, tube, work)?;
+    let x = label_of(titration, tube, observed, background, work)?;
+    let (share, can_bind) = (p.ligand.bindable(), p.ligand.bindable() * added);
+    let inputs = |rest: &[Value]| {
+        let mut of = vec![
+            Value::new("LT", added, "nM"),
+            Value::new("p", share, "bindable"),
+        ];
+        of.extend_from_slice(rest);
+        of
     };
-}
-
-/// Sites by the amount of receptor preparation in a tube, where it is known: 1 nM in `v` mL is `1000 v` fmol.
-pub fn sites_by_amount(protocol: &Protocol) -> Option<SitesScale> {
-    let fmol = FMOL_PER_NM_ML * protocol.incubation.volume.base();
-    match &protocol.receptor.amount {
-        ReceptorAmount::Unknown => None,
-        ReceptorAmount::Protein(mg) => Some(SitesScale {
-            unit: "fmol/mg",
-            per_nm: fmol / mg.base(),
-        }),
-        ReceptorAmount::Cells(n) => Some(SitesScale {
-            unit: "sites/cell",
-            per_nm: fmol * AVOGADRO * 1e-15 / n.base(),
-        }),
-        ReceptorAmount::Tissue(mg) => Some(SitesScale {
-            unit: "pmol/g",
-            per_nm: fmol / mg.base(),
-        }),
+    match seen {
+        Seen::Standard | Seen::Added | Seen::Side(Side::Ligand) => None,
+        Seen::Bound => {
+            let free_nm = can_bind - x.nm;
+            work.step(|| {
+                let of = inputs(&[Value::new("x", x.nm, "nM bound")]);
+                Step::new("free", Value::new("F", free_nm, "nM"), "LT * p - x", of)
+            });
+            Some(Measured {
+                bound_nm: x.nm,
+                bound_sd_nm: x.sd_nm,
+                free_nm,
+            })
+        }
+        Seen::Unbound => {
+            let free_nm = x.nm - (added - can_bind);
+            work.step(|| {
+                let of = inputs(&[Value::new("x", x.nm, "nM")]);
+                let what = "free, less the label that never binds";
+                Step::new(what, Value::new("F", free_nm, "nM"), "x - LT * (1 - p)", of)
+            });
+            let bound_nm = can_bind - free_nm;
+            work.step(|| {
+                let of = inputs(&[Value::new("F", free_nm, "nM")]);
+                let gives = Value::new("B", bound_nm, "nM").give_or_take(x.sd_nm);
+                Step::new("bound", gives, "LT * p - F", of)
+            });
+            Some(Measured {
+                bound_nm,
+                bound_sd_nm: x.sd_nm,
+                free_nm,
+            })
+        }
+        Seen::Side(Side::Protein) => {
+            let other = titration.other_side(tube)?;
+            let free = label_of(
+                titration,
+                other,
+                in_use(titration, other.no)?,
+                background,
+                work,
+            )?;
+            let shift = volume_shift(p);
+            let bound_nm = (x.nm - free.nm) / shift;
+            let bound_sd_nm = x.sd_nm.hypot(free.sd_nm) / shift;
+            work.step(|| {
+                Step::new(
+                    "bound, in the protein side as filled",
+                    Value::new("B", bound_nm, "nM").give_or_take(bound_sd_nm),
+                    "(P - F) / s",
+                    [
+                        Value::new("P", x.nm, "nM").give_or_take(x.sd_nm),
+                        Value::new("F", free.nm, "nM").give_or_take(free.sd_nm),
+                        Value::new("s", shift, "filled/end"),
+                    ],
+                )
+            });
+            Some(Measured {
+                bound_nm,
+                bound_sd_nm,
+                free_nm: free.nm,
+            })
+        }
     }
 }
 
-/// The unit the protocol asks sites to be shown in.
-pub fn sites_shown(protocol: &Protocol) -> SitesScale {
-    match protocol.display.sites {
-        SitesUnit::InTube => SitesScale::IN_TUBE,
-        SitesUnit::PerAmount => sites_by_amount(protocol).unwrap_or(SitesScale::IN_TUBE),
+/// Every step from the readings of a tube to bound and free, as [`observed`] and [`measured`] take them; readings that are flagged are
+/// taken only where there is no other.
+pub fn working(titration: &Titration, tube: &Tube, background: Option<Background>) -> Vec<Step> {
+    let mut steps = Vec::new();
+    let counting = Counting::of(&titration.protocol);
+    let flags = observed(titration, tube.no, true).is_some();
+    let Some(o) = summed(&counting, titration, tube, flags, &mut steps) else {
+        return steps;
+    };
+    if let Some(background) = background {
+        steps.push(background.step(titration.protocol.separation.counted.is_signal()));
+        measured_with(titration, tube, o, background, &mut steps);
     }
+    steps
 }

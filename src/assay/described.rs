@@ -1,6 +1,9 @@
 //! A protocol in lines: one for every field, for a page to show and for two protocols to be compared.
 
-use super::protocol::{BlankKind, Fields, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled};
+use super::decayed::Carrier;
+use super::protocol::{
+    BlankKind, Counted, Protocol, ReceptorAmount, SitesUnit, Sticks, Unlabelled,
+};
 use super::rack::{Level, Made};
 use crate::units::short;
 
@@ -37,12 +40,6 @@ impl Protocol {
             Sticks::ToPreparation => "to the preparation, during incubation",
             Sticks::ToFilter => "to the filter or as trapped liquid, after separation",
         };
-        let fields = match self.counter.fields {
-            Fields::Counts => "counts",
-            Fields::CountsMinutes => "counts, minutes",
-            Fields::Cpm => "cpm",
-            Fields::CpmMinutes => "cpm, minutes",
-        };
         let blank = match self.counter.background.blank {
             BlankKind::EmptyCounter => "empty counter",
             BlankKind::Scintillant => "scintillant",
@@ -66,9 +63,59 @@ impl Protocol {
         let scale = scale.join(", ");
         let sites = match self.display.sites {
             SitesUnit::PerAmount => "by the amount of receptor preparation",
+            SitesUnit::PerMillionCells => "by a million cells",
             SitesUnit::InTube => "in the tube",
         };
-        [
+        let decay = match self.ligand.decay {
+            None => String::new(),
+            Some(Carrier::CarrierFree) => "computed, carrier-free".into(),
+            Some(Carrier::ProductInert) => "computed, what remains no longer binds".into(),
+            Some(Carrier::ProductBinds) => "computed, what remains still binds".into(),
+        };
+        let quench: Vec<String> = self
+            .counter
+            .quench
+            .iter()
+            .map(|s| format!("{} {}", short(s.indicator, 9), s.efficiency))
+            .collect();
+        let off = self.counter.subtracted.as_ref().map(|s| match &s.minutes {
+            Some(minutes) => format!("{} counted {minutes}", s.rate),
+            None => s.rate.to_string(),
+        });
+        let run = self.counter.run.as_ref();
+        let run = run.map(|r| format!("from {}, changer {}", r.start, r.changer));
+        let mut counted = vec![("counted", self.separation.counted.words().to_string())];
+        match &self.separation.counted {
+            Counted::Bound => {}
+            Counted::Free { aliquot } => counted.push(("aliquot", aliquot.to_string())),
+            Counted::BothSides {
+                protein_aliquot,
+                ligand_aliquot,
+                protein_after,
+                ligand_volume,
+            } => counted.extend([
+                ("protein aliquot", protein_aliquot.to_string()),
+                ("ligand aliquot", ligand_aliquot.to_string()),
+                ("protein side at end", text(protein_after.as_ref())),
+                ("ligand side volume", text(ligand_volume.as_ref())),
+            ]),
+            Counted::Signal {
+                read_volume,
+                standards,
+                noise,
+            } => {
+                let all: Vec<&str> = standards.iter().map(|s| s.text.as_str()).collect();
+                counted.extend([
+                    ("volume read", text(read_volume.as_ref())),
+                    ("standards", all.join(", ")),
+                    (
+                        "noise of a blank",
+                        noise.map_or(String::new(), |n| short(n, 9)),
+                    ),
+                ]);
+            }
+        }
+        let whole = [
             ("title", self.title.clone()),
             ("operator", self.operator.clone()),
             ("ligand", self.ligand.name.clone()),
@@ -78,6 +125,10 @@ impl Protocol {
                 self.ligand.specific_activity.to_string(),
             ),
             ("activity date", text(self.ligand.activity_date.as_ref())),
+            ("decay", decay),
+            ("half-life", text(self.ligand.half_life.as_ref())),
+            ("atoms of label", text(self.ligand.atoms.as_ref())),
+            ("bindable", text(self.ligand.bindable.as_ref())),
             ("lot", self.ligand.lot.clone()),
             ("preparation", self.receptor.preparation.clone()),
             ("batch", self.receptor.batch.clone()),
@@ -86,11 +137,16 @@ impl Protocol {
             ("incubation volume", self.incubation.volume.to_string()),
             ("temperature", text(self.incubation.temperature.as_ref())),
             ("incubation time", text(self.incubation.time.as_ref())),
+            ("assayed", text(self.incubation.assayed.as_ref())),
             ("buffer", self.incubation.buffer.clone()),
             ("vehicle", text(self.incubation.vehicle.as_ref())),
             ("nonspecific sticks", sticks.into()),
             ("blocked with", blocked),
             ("unlabelled", self.nonspecific.concentration.to_string()),
+            (
+                "aliquot of added",
+                text(self.separation.added_counted.as_ref()),
+            ),
             ("fraction counted", self.separation.fraction.to_string()),
             ("separation", self.separation.method.clone()),
             ("filter", self.separation.filter.clone()),
@@ -98,7 +154,11 @@ impl Protocol {
             ("wash time", text(self.separation.wash_time.as_ref())),
             ("counter", self.counter.name.clone()),
             ("efficiency", self.counter.efficiency.to_string()),
-            ("typed per vial", fields.into()),
+            ("quench curve", quench.join(", ")),
+            ("dead time", text(self.counter.dead_time.as_ref())),
+            ("taken off", text(off.as_ref())),
+            ("run", text(run.as_ref())),
+            ("typed per vial", self.counter.fields.to_string()),
             ("counting time", self.counter.minutes.to_string()),
             (
                 "background time",
@@ -127,13 +187,15 @@ impl Protocol {
                 self.display.concentration.word().into(),
             ),
             ("sites shown", sites.into()),
-        ]
-        .into_iter()
-        .map(|(name, value)| FieldLine {
-            name: name.into(),
-            value,
-        })
-        .collect()
+        ];
+        whole
+            .into_iter()
+            .chain(counted)
+            .map(|(name, value)| FieldLine {
+                name: name.into(),
+                value,
+            })
+            .collect()
     }
 }
 

@@ -1,7 +1,7 @@
 //! The ladder: how levels and tubes are laid out before the first reading.
 
-use super::protocol::{Protocol, ProtocolError};
-use super::rack::{Level, LevelNo, Made, Role, Titration, Tube, TubeNo};
+use super::protocol::{Counted, Protocol, ProtocolError};
+use super::rack::{Level, LevelNo, Made, Role, Side, Titration, Tube, TubeNo};
 use crate::units::{Amount, Mark, Measure, NanoMolar, Typed, significant};
 use serde::{Deserialize, Serialize};
 
@@ -67,7 +67,9 @@ impl Sheet {
     /// The field of the protocol or of the ladder at fault.
     pub fn titration(&self) -> Result<Titration, LadderError> {
         self.protocol.check()?;
-        let (levels, tubes) = self.ladder.lay(self.protocol.counter.mark)?;
+        self.protocol.check_new()?;
+        let counted = &self.protocol.separation.counted;
+        let (levels, tubes) = self.ladder.lay(self.protocol.counter.mark, counted)?;
         Ok(Titration::new(self.protocol.clone(), levels, tubes))
     }
 }
@@ -88,6 +90,15 @@ pub struct Ladder {
     /// Levels with other numbers of tubes.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub except: Vec<Except>,
+    /// Tubes with label and no receptor preparation.
+    #[serde(default, skip_serializing_if = "Few::none")]
+    pub no_receptor: Few,
+    /// Aliquots of the levels' solutions, counted to learn what was really added.
+    #[serde(default, skip_serializing_if = "Few::none")]
+    pub added: Few,
+    /// How often each standard of a reader is there.
+    #[serde(default = "one", skip_serializing_if = "is_one")]
+    pub standards: u16,
     /// Background vials; they are counted first and numbered after the tubes.
     #[serde(default = "one")]
     pub background: u16,
@@ -95,6 +106,44 @@ pub struct Ladder {
 
 fn one() -> u16 {
     1
+}
+
+fn is_one(n: &u16) -> bool {
+    *n == 1
+}
+
+/// Tubes at some levels.
+#[derive(Debug, Clone, PartialEq, Eq, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Few {
+    /// How many at each.
+    pub tubes: u16,
+    /// At which levels, numbered from the lowest up; empty for all of them.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub levels: Vec<u16>,
+}
+
+impl Few {
+    /// Whether there are none.
+    pub fn none(&self) -> bool {
+        self.tubes == 0
+    }
+
+    fn at(&self, level: u16) -> u16 {
+        if self.levels.is_empty() || self.levels.contains(&level) {
+            self.tubes
+        } else {
+            0
+        }
+    }
+}
+
+/// Vials of one kind that are to be laid.
+struct Planned {
+    role: Role,
+    level: Option<LevelNo>,
+    standard: Option<u16>,
+    number: u16,
 }
 
 /// The concentrations of a ladder.
@@ -163,12 +212,17 @@ impl Ladder {
     /// Levels from the lowest up, tubes in counting order.
     ///
     /// Background vials are counted first, so that a fit can begin with the first tubes, and carry the
-    /// numbers after the last tube, so that the rack itself is numbered from 1. The rack runs level by
-    /// level from the lowest, totals before nonspecific tubes.
+    /// numbers after the last tube, so that the rack itself is numbered from 1; a reader's standards follow its blanks. The
+    /// rack runs level by level from the lowest, totals before nonspecific tubes, then those without receptor and aliquots of what
+    /// is added. A dialysis cell is two vials, the protein side first.
     ///
     /// # Errors
     /// The field of the ladder at fault, with what was found and what is allowed.
-    pub fn lay(&self, mark: Mark) -> Result<(Vec<Level>, Vec<Tube>), LadderError> {
+    pub fn lay(
+        &self,
+        mark: Mark,
+        counted: &Counted,
+    ) -> Result<(Vec<Level>, Vec<Tube>), LadderError> {
         let mut added = self.concentrations(mark)?;
         added.sort_by(|a, b| a.base().total_cmp(&b.base()));
         let n = added.len() as u16;
@@ -196,33 +250,62 @@ impl Ladder {
                 }
             }
         }
+        for (field, few) in [("no_receptor", &self.no_receptor), ("added", &self.added)] {
+            if let Some(level) = few.levels.iter().find(|l| !(1..=n).contains(l)) {
+                return Err(wrong(field, format!("level {level}: levels are 1 to {n}")));
+            }
+        }
+        let cell = counted.is_cell();
+        if cell && !(self.no_receptor.none() && self.added.none()) {
+            let field = if self.no_receptor.none() {
+                "added"
+            } else {
+                "no_receptor"
+            };
+            return Err(wrong(
+                field,
+                "a dialysis cell counts what is on both sides; tubes of this kind are not used with it",
+            ));
+        }
+        if counted.is_signal() && !self.added.none() {
+            return Err(wrong(
+                "added",
+                "a reader has standards; aliquots of what is added are not used with it",
+            ));
+        }
+        let plan = self.plan(&levels, &per_level, counted);
+        let vials = if cell { 2 } else { 1 };
+        let wanted: usize = plan.iter().map(|p| usize::from(p.number) * vials).sum();
         let most = Titration::MOST_TUBES;
-        let wanted: usize = per_level
-            .iter()
-            .map(|(t, n)| usize::from(*t) + usize::from(*n))
-            .sum();
         if wanted + usize::from(self.background) > most {
             return Err(wrong(
                 "total",
                 format!("{wanted} tubes in all: at most {most} are allowed"),
             ));
         }
+        let mut numbers = 1..;
+        let mut next = || TubeNo(numbers.next().unwrap_or(u32::MAX));
         let mut tubes = Vec::with_capacity(wanted + usize::from(self.background));
-        let mut no = 0;
-        let mut vials = |role, level, number: u16, tubes: &mut Vec<Tube>| {
-            for replicate in 1..=number {
-                no += 1;
-                tubes.push(Tube {
-                    no: TubeNo(no),
-                    role,
-                    level,
-                    replicate,
-                });
+        let mut standards = Vec::new();
+        for p in &plan {
+            for replicate in 1..=p.number {
+                let tube = |no, side| Tube {
+                    side,
+                    standard: p.standard,
+                    ..Tube::new(no, p.role, p.level, replicate)
+                };
+                let sides = if cell {
+                    &[Some(Side::Protein), Some(Side::Ligand)][..]
+                } else {
+                    &[None][..]
+                };
+                let to = if p.role == Role::Standard {
+                    &mut standards
+                } else {
+                    &mut tubes
+                };
+                to.extend(sides.iter().map(|side| tube(next(), *side)));
             }
-        };
-        for (level, (total, nonspecific)) in levels.iter().zip(&per_level) {
-            vials(Role::Total, Some(level.no), *total, &mut tubes);
-            vials(Role::Nonspecific, Some(level.no), *nonspecific, &mut tubes);
         }
         if !tubes.iter().any(|t| t.role == Role::Total) {
             let n = tubes.len();
@@ -231,11 +314,41 @@ impl Ladder {
                 format!("no total tubes and {n} nonspecific: a rack has total tubes"),
             ));
         }
-        let mut first = Vec::new();
-        vials(Role::Background, None, self.background, &mut first);
+        let mut first: Vec<Tube> = (1..=self.background)
+            .map(|replicate| Tube::new(next(), Role::Background, None, replicate))
+            .collect();
+        first.append(&mut standards);
         first.append(&mut tubes);
         Titration::check_rack(&levels, &first).map_err(|e| wrong("levels", e))?;
         Ok((levels, first))
+    }
+
+    /// How many vials of what, in the order of their numbers.
+    fn plan(&self, levels: &[Level], per_level: &[(u16, u16)], counted: &Counted) -> Vec<Planned> {
+        let mut plan = Vec::new();
+        for (level, (total, nonspecific)) in levels.iter().zip(per_level) {
+            let no = level.no.0;
+            for (role, number) in [
+                (Role::Total, *total),
+                (Role::Nonspecific, *nonspecific),
+                (Role::NoReceptor, self.no_receptor.at(no)),
+                (Role::Added, self.added.at(no)),
+            ] {
+                plan.push(Planned {
+                    role,
+                    level: Some(level.no),
+                    standard: None,
+                    number,
+                });
+            }
+        }
+        plan.extend((1..).zip(counted.standards()).map(|(n, _)| Planned {
+            role: Role::Standard,
+            level: None,
+            standard: Some(n),
+            number: self.standards,
+        }));
+        plan
     }
 
     fn made(&self, no: u16, n: u16) -> Made {

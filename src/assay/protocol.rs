@@ -1,17 +1,24 @@
 //! How a titration was done, as far as a record or a number depends on it.
 
 mod check;
+mod counter;
+mod ligand;
 mod scale;
+mod separation;
 
 use check::Checks;
 pub use check::ProtocolError;
+pub use counter::{
+    BackgroundVials, BlankKind, Counter, Field, Fields, FieldsError, QuenchStandard, Run,
+    Subtracted,
+};
+pub use ligand::{Ligand, SHORT_LIVED};
 pub use scale::ScaleErrors;
+pub use separation::{Counted, Separation};
 
 use super::model::Model;
-use crate::units::{
-    Amount, Cell, DegreeCelsius, DpmPerFmol, Mark, MilliGram, MilliLitre, Minute, NanoMolar, Share,
-};
-use jiff::civil::Date;
+use super::when::When;
+use crate::units::{Amount, Cell, DegreeCelsius, MilliGram, MilliLitre, Minute, NanoMolar, Share};
 use serde::{Deserialize, Serialize};
 
 /// The protocol of one titration. Every setting that a number depends on is in here.
@@ -42,24 +49,6 @@ pub struct Protocol {
     /// The units results are shown in.
     #[serde(default)]
     pub display: Display,
-}
-
-/// The labelled ligand.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct Ligand {
-    /// Its name.
-    pub name: String,
-    /// The label, e.g. `H-3`.
-    pub label: String,
-    /// Its specific activity on the day of the assay.
-    pub specific_activity: Amount<DpmPerFmol>,
-    /// The day the specific activity was stated for.
-    #[serde(default, skip_serializing_if = "Option::is_none")]
-    pub activity_date: Option<Date>,
-    /// The lot.
-    #[serde(default, skip_serializing_if = "String::is_empty")]
-    pub lot: String,
 }
 
 /// The receptor preparation.
@@ -105,6 +94,9 @@ pub struct Incubation {
     /// How long.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub time: Option<Amount<Minute>>,
+    /// When the tubes were separated: label, levels and counts are brought to this time where decay is computed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub assayed: Option<When>,
     /// The buffer.
     #[serde(default, skip_serializing_if = "String::is_empty")]
     pub buffer: String,
@@ -151,122 +143,12 @@ pub enum Unlabelled {
     },
 }
 
-/// How bound is parted from free. What is counted is the bound side.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct Separation {
-    /// The share of the tube that is separated and counted.
-    #[serde(default = "all")]
-    pub fraction: Amount<Share>,
-    /// Filtration, centrifugation or another way, in words.
-    #[serde(default, skip_serializing_if = "String::is_empty")]
-    pub method: String,
-    /// The filter and what it was soaked in.
-    #[serde(default, skip_serializing_if = "String::is_empty")]
-    pub filter: String,
-    /// Washes, in words.
-    #[serde(default, skip_serializing_if = "String::is_empty")]
-    pub washes: String,
-    /// How long the washes take together.
-    #[serde(default, skip_serializing_if = "Option::is_none")]
-    pub wash_time: Option<Amount<Minute>>,
-}
-
-fn all() -> Amount<Share> {
-    share("100 %", 1.0)
-}
-
 /// A share written here rather than typed by anybody.
 fn share(text: &str, value: f64) -> Amount<Share> {
     crate::units::Typed {
         text: text.into(),
         value: crate::units::Measure::of(value),
     }
-}
-
-impl Default for Separation {
-    fn default() -> Self {
-        Separation {
-            fraction: all(),
-            method: String::new(),
-            filter: String::new(),
-            washes: String::new(),
-            wash_time: None,
-        }
-    }
-}
-
-/// The counter and what it prints.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct Counter {
-    /// Its name.
-    #[serde(default, skip_serializing_if = "String::is_empty")]
-    pub name: String,
-    /// Counts per disintegration.
-    pub efficiency: Amount<Share>,
-    /// What is typed for each vial.
-    #[serde(default)]
-    pub fields: Fields,
-    /// How long a tube is counted, where the minutes are not typed.
-    pub minutes: Amount<Minute>,
-    /// The background vials.
-    pub background: BackgroundVials,
-    /// The decimal mark of what is typed.
-    #[serde(default)]
-    pub mark: Mark,
-}
-
-/// What is typed for each vial, in the order it is typed.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
-pub enum Fields {
-    /// Gross counts; the minutes are the protocol's.
-    #[default]
-    Counts,
-    /// Gross counts, then minutes.
-    CountsMinutes,
-    /// Gross counts per minute; the minutes are the protocol's.
-    Cpm,
-    /// Gross counts per minute, then minutes.
-    CpmMinutes,
-}
-
-impl Fields {
-    /// Whether minutes are typed for every vial.
-    pub fn with_minutes(self) -> bool {
-        matches!(self, Fields::CountsMinutes | Fields::CpmMinutes)
-    }
-
-    /// What the first number is.
-    pub fn scale(self) -> super::reading::Scale {
-        match self {
-            Fields::Counts | Fields::CountsMinutes => super::reading::Scale::Counts,
-            Fields::Cpm | Fields::CpmMinutes => super::reading::Scale::Cpm,
-        }
-    }
-}
-
-/// The background vials.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct BackgroundVials {
-    /// How long each is counted, where the minutes are not typed.
-    pub minutes: Amount<Minute>,
-    /// What is in them.
-    #[serde(default)]
-    pub blank: BlankKind,
-}
-
-/// What a background vial holds.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
-pub enum BlankKind {
-    /// Nothing: an empty place in the counter.
-    EmptyCounter,
-    /// Scintillant alone.
-    #[default]
-    Scintillant,
-    /// Scintillant with an unused filter.
-    ScintillantAndFilter,
 }
 
 /// What the fit is told beyond the readings.
@@ -380,24 +262,26 @@ impl DisplayUnit {
 /// A unit for sites.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Default, Serialize, Deserialize)]
 pub enum SitesUnit {
-    /// By the amount of receptor preparation where it is known, else in the tube.
+    /// By the amount of receptor preparation where it is known, else in the tube; cells one by one.
     #[default]
     PerAmount,
+    /// By a million cells, where they are counted.
+    PerMillionCells,
     /// As a concentration in the tube.
     InTube,
 }
 
 impl Protocol {
-    /// Counts per minute of one fmol bound: `efficiency x specific activity x fraction counted`.
+    /// Counts per minute of one fmol bound, at the nominal efficiency and at the time of the assay: `efficiency x specific activity x
+    /// fraction counted`.
     pub fn counts_per_fmol(&self) -> f64 {
-        self.counter.efficiency.base()
-            * self.ligand.specific_activity.base()
-            * self.separation.fraction.base()
+        self.counter.nominal_efficiency() * self.activity() * self.separation.fraction.base()
     }
 
-    /// How long a tube of this role is counted, in minutes, where it is not typed.
+    /// How long a tube of this role is counted, in minutes, where it is not typed; one reading of a reader counts as one.
     pub fn minutes_for(&self, role: super::rack::Role) -> f64 {
         match role {
+            _ if self.separation.counted.is_signal() => 1.0,
             super::rack::Role::Background => self.counter.background.minutes.base(),
             _ => self.counter.minutes.base(),
         }

@@ -58,8 +58,33 @@ pub enum Role {
     Total,
     /// Label and an excess of unlabelled ligand.
     Nonspecific,
-    /// No label: what the counter shows by itself.
+    /// Label without receptor preparation.
+    NoReceptor,
+    /// An aliquot of a level's solution, counted to learn what was really added.
+    Added,
+    /// A standard of a reader.
+    Standard,
+    /// No label: what the counter, or the reader, shows by itself.
     Background,
+}
+
+/// A side of an equilibrium-dialysis cell.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Serialize, Deserialize)]
+pub enum Side {
+    /// The side that the receptor preparation is on.
+    Protein,
+    /// The other one.
+    Ligand,
+}
+
+impl Side {
+    /// The word, in small letters.
+    pub fn word(self) -> &'static str {
+        match self {
+            Side::Protein => "protein side",
+            Side::Ligand => "ligand side",
+        }
+    }
 }
 
 impl Role {
@@ -68,15 +93,39 @@ impl Role {
         match self {
             Role::Total => "total",
             Role::Nonspecific => "nonspecific",
+            Role::NoReceptor => "no receptor",
+            Role::Added => "added",
+            Role::Standard => "standard",
             Role::Background => "background",
         }
     }
 
-    /// The role a word stands for.
+    /// Every role.
+    pub const ALL: [Role; 6] = [
+        Role::Total,
+        Role::Nonspecific,
+        Role::NoReceptor,
+        Role::Added,
+        Role::Standard,
+        Role::Background,
+    ];
+
+    /// The role a word stands for; a hyphen may stand for a blank.
     pub fn from_word(word: &str) -> Option<Role> {
-        [Role::Total, Role::Nonspecific, Role::Background]
+        let word = word.trim().replace('-', " ");
+        Role::ALL
             .into_iter()
-            .find(|r| r.word().eq_ignore_ascii_case(word.trim()))
+            .find(|r| r.word().eq_ignore_ascii_case(&word))
+    }
+
+    /// Whether a tube of it went through the assay: with label, incubated and separated.
+    pub fn assayed(self) -> bool {
+        matches!(self, Role::Total | Role::Nonspecific | Role::NoReceptor)
+    }
+
+    /// Whether a vial of it holds label.
+    pub fn labelled(self) -> bool {
+        self != Role::Background
     }
 }
 
@@ -94,13 +143,39 @@ pub struct Tube {
     pub no: TubeNo,
     /// What it is for.
     pub role: Role,
-    /// Its level; none for background.
+    /// Its level; none for background and standards.
     pub level: Option<LevelNo>,
     /// 1 for a, 2 for b and so on.
     pub replicate: u16,
+    /// The side of a dialysis cell that it comes from.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub side: Option<Side>,
+    /// Which of the protocol's standards it holds, from 1.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub standard: Option<u16>,
 }
 
 impl Tube {
+    /// A tube that is neither of a dialysis cell nor a standard.
+    pub fn new(no: TubeNo, role: Role, level: Option<LevelNo>, replicate: u16) -> Tube {
+        Tube {
+            no,
+            role,
+            level,
+            replicate,
+            side: None,
+            standard: None,
+        }
+    }
+
+    /// What it is for, with the side of a cell: `total`, `total, protein side`.
+    pub fn what(&self) -> String {
+        match self.side {
+            Some(side) => format!("{}, {}", self.role, side.word()),
+            None => self.role.to_string(),
+        }
+    }
+
     /// The replicate as a letter, or as a number past z.
     pub fn letter(&self) -> String {
         replicate_letter(self.replicate)
@@ -192,11 +267,31 @@ impl Titration {
         self.levels.iter().find(|l| l.no == no)
     }
 
-    /// The label added to a tube in nM; none for background.
+    /// The label added to a tube in nM at the time of the assay; none for background and standards.
     pub fn added_nm(&self, tube: &Tube) -> Option<f64> {
-        tube.level
-            .and_then(|l| self.level(l))
-            .map(|l| l.added.base())
+        tube.level.and_then(|l| self.level_nm(l))
+    }
+
+    /// The label of a level in nM at the time of the assay: as written, less what has decayed where that is computed.
+    pub fn level_nm(&self, no: LevelNo) -> Option<f64> {
+        let level = self.level(no)?;
+        Some(level.added.base() * self.protocol.concentration_left())
+    }
+
+    /// The concentration of label in a standard, in nM in the volume that is read.
+    pub fn standard_nm(&self, tube: &Tube) -> Option<f64> {
+        let place = usize::from(tube.standard?).checked_sub(1)?;
+        let standards = self.protocol.separation.counted.standards();
+        standards.get(place).map(|s| s.base())
+    }
+
+    /// The other vial of a dialysis cell.
+    pub fn other_side(&self, tube: &Tube) -> Option<&Tube> {
+        let side = tube.side?;
+        self.tubes.iter().find(|t| {
+            t.side.is_some_and(|s| s != side)
+                && (t.role, t.level, t.replicate) == (tube.role, tube.level, tube.replicate)
+        })
     }
 
     /// What is kept of a tube.
@@ -266,15 +361,31 @@ impl Titration {
 
     /// How a tube is called in a sentence: `vial 26, 5.0 nM, total b`.
     pub fn name(&self, tube: &Tube) -> String {
-        match tube.level.and_then(|l| self.level(l)) {
-            Some(l) => format!(
-                "vial {}, {}, {} {}",
-                tube.no,
-                l.added,
-                tube.role,
-                tube.letter()
-            ),
-            None => format!("vial {}, {} {}", tube.no, tube.role, tube.letter()),
+        let standard = tube.standard.and_then(|n| {
+            let standards = self.protocol.separation.counted.standards();
+            standards.get(usize::from(n).checked_sub(1)?)
+        });
+        let holds = tube
+            .level
+            .and_then(|l| self.level(l))
+            .map(|l| &l.added)
+            .or(standard);
+        let side = tube
+            .side
+            .map_or(String::new(), |s| format!(", {}", s.word()));
+        let (role, letter) = (self.word_for(tube.role), tube.letter());
+        match holds {
+            Some(holds) => format!("vial {}, {holds}, {role} {letter}{side}", tube.no),
+            None => format!("vial {}, {role} {letter}", tube.no),
+        }
+    }
+
+    /// What a role is called here: a reader has blanks, not a background.
+    pub fn word_for(&self, role: Role) -> &'static str {
+        if role == Role::Background && self.protocol.separation.counted.is_signal() {
+            "blank"
+        } else {
+            role.word()
         }
     }
 
@@ -339,9 +450,9 @@ impl Titration {
                 return Err(format!("vial {} is there twice", t.no));
             }
             match (t.role, t.level) {
-                (Role::Background, None) => {}
-                (Role::Background, Some(_)) => {
-                    return Err(format!("vial {} is background and has a level", t.no));
+                (Role::Background | Role::Standard, None) => {}
+                (Role::Background | Role::Standard, Some(_)) => {
+                    return Err(format!("vial {} is {} and has a level", t.no, t.role));
                 }
                 (_, None) => return Err(format!("vial {} has no level", t.no)),
                 (_, Some(l)) if !made.contains_key(&l) => {
@@ -349,7 +460,7 @@ impl Titration {
                 }
                 _ => {}
             }
-            if !places.insert((t.role, t.level, t.replicate)) {
+            if !places.insert((t.role, t.level, t.replicate, t.side, t.standard)) {
                 return Err(format!(
                     "vial {} repeats the {} {} of its level",
                     t.no,

@@ -13,6 +13,33 @@ pub enum Scale {
     Counts,
     /// Gross counts per minute over the stated minutes.
     Cpm,
+    /// Gross disintegrations per minute over the stated minutes.
+    Dpm,
+    /// Counts per minute over the stated minutes, background taken off by the counter.
+    NetCpm,
+    /// Disintegrations per minute over the stated minutes, background taken off by the counter.
+    NetDpm,
+    /// A reader's signal.
+    Signal,
+}
+
+impl Scale {
+    /// The unit as it stands behind a number.
+    pub fn unit(self) -> &'static str {
+        match self {
+            Scale::Counts => "counts",
+            Scale::Cpm => "cpm",
+            Scale::Dpm => "dpm",
+            Scale::NetCpm => "net cpm",
+            Scale::NetDpm => "net dpm",
+            Scale::Signal => "signal",
+        }
+    }
+
+    /// Whether a background was taken off, so that a number may be below zero.
+    pub fn may_be_negative(self) -> bool {
+        matches!(self, Scale::NetCpm | Scale::NetDpm | Scale::Signal)
+    }
 }
 
 /// One reading of one tube, with the text it was typed as.
@@ -88,6 +115,58 @@ pub enum ReadingError {
         /// What was given.
         value: f64,
     },
+    /// A number that no instrument gives.
+    #[error("{}: a net reading or a signal lies between -1e12 and 1e12", found(*value))]
+    NetValue {
+        /// What was given.
+        value: f64,
+    },
+    /// A signal for a counter, or counts for a reader.
+    #[error("{}: {}", scale.unit(), if *scale == Scale::Signal {
+        "this titration is counted; counts, cpm or dpm are allowed"
+    } else {
+        "this titration is read by a reader; a signal is allowed"
+    })]
+    OtherInstrument {
+        /// What was given.
+        scale: Scale,
+    },
+    /// A quench curve stands in the protocol and the reading has no indicator.
+    #[error(
+        "no quench indicator: this titration takes the efficiency of every vial from its quench curve"
+    )]
+    NoQuench,
+    /// The indicator lies outside the curve.
+    #[error("quench: {0}")]
+    Quench(String),
+    /// A net reading where nothing says what was taken off.
+    #[error(
+        "a net reading needs the background that the counter took off: counter.subtracted of the protocol"
+    )]
+    NotKnownTakenOff,
+    /// A net reading below what was taken off.
+    #[error("{} counts behind this net reading: it is lower than the background that the counter took off allows", found(*counts))]
+    BelowNone {
+        /// The counts behind it.
+        counts: f64,
+    },
+    /// More than the dead time allows.
+    #[error("dead time: {0}")]
+    Dead(String),
+    /// The time of the count is not known and has to be.
+    #[error(
+        "no time of counting, and the label is short-lived: type the time with every vial (field `at`), or give the start of the \
+         run at the counter step"
+    )]
+    NoTime,
+    /// Counted before the assay.
+    #[error("counted {} min before the assay of {assayed}; a vial is counted after it", found(*minutes))]
+    BeforeAssay {
+        /// By how much.
+        minutes: f64,
+        /// The time of the assay, as typed.
+        assayed: String,
+    },
 }
 
 /// The longest count taken, in minutes: thirty days.
@@ -111,14 +190,6 @@ impl Reading {
         }
     }
 
-    /// The gross counts behind the reading.
-    pub fn gross_counts(&self) -> f64 {
-        match self.scale {
-            Scale::Counts => self.value,
-            Scale::Cpm => self.value * self.minutes,
-        }
-    }
-
     /// Whether the reading can be one.
     ///
     /// # Errors
@@ -130,7 +201,18 @@ impl Reading {
                 most: MOST_MINUTES,
             });
         }
-        if !(self.value >= 0.0 && self.value <= 1e12 && self.gross_counts() <= 1e15) {
+        if self.scale.may_be_negative() {
+            return if self.value.abs() <= 1e12 {
+                Ok(())
+            } else {
+                Err(ReadingError::NetValue { value: self.value })
+            };
+        }
+        let counts = match self.scale {
+            Scale::Counts => self.value,
+            _ => self.value * self.minutes,
+        };
+        if !(self.value >= 0.0 && self.value <= 1e12 && counts <= 1e15) {
             return Err(ReadingError::Value { value: self.value });
         }
         Ok(())

@@ -47,6 +47,11 @@ impl Stamp {
         Ok(Stamp { at, offset })
     }
 
+    /// Date and time on the local clock.
+    pub fn local(&self) -> jiff::civil::DateTime {
+        self.offset.to_datetime(self.at)
+    }
+
     /// The time of day on the local clock, `10:14:03`.
     pub fn clock(&self) -> String {
         self.offset

@@ -24,6 +24,31 @@ pub enum Block {
     Full,
 }
 
+/// Nonspecific binding for one of free label, dimensionless, by where it sticks.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Sticking {
+    /// To the preparation, during incubation.
+    pub during: f64,
+    /// To the filter or as trapped liquid, after separation.
+    pub after: f64,
+}
+
+impl Sticking {
+    /// All of it in one place.
+    pub fn all(ns: f64, stuck: Stuck) -> Sticking {
+        match stuck {
+            Stuck::DuringIncubation => Sticking {
+                during: ns,
+                after: 0.0,
+            },
+            Stuck::AfterSeparation => Sticking {
+                during: 0.0,
+                after: ns,
+            },
+        }
+    }
+}
+
 /// Bound label of a tube and its derivatives.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Bound {
@@ -31,10 +56,17 @@ pub struct Bound {
     pub value: f64,
     /// Free label in nM.
     pub free: f64,
-    /// Derivative by `ln ns`, in nM.
+    /// Derivative by `ln ns`, in nM, all places of sticking together.
     pub by_ln_ns: f64,
+    /// Derivative by the logarithm of what sticks after separation, in nM.
+    pub by_ln_after: f64,
     /// Derivative by the logarithm of the label added, in nM.
     pub by_ln_added: f64,
+    /// Label that separation leaves with the free side, `added - bound`, in nM. Its derivatives are those of bound with the other
+    /// sign, but for that by the label added.
+    pub unbound: f64,
+    /// Derivative of `unbound` by the logarithm of the label added, in nM.
+    pub unbound_by_ln_added: f64,
 }
 
 /// Bound label `S(F) + ns F` of a tube; derivatives by the logarithms of the isotherm's
@@ -51,70 +83,78 @@ pub fn bound<I: Isotherm>(
     block: Block,
     by_ln: &mut [f64],
 ) -> Bound {
-    let a = match stuck {
-        Stuck::DuringIncubation => 1.0 + ns,
-        Stuck::AfterSeparation => 1.0,
-    };
+    bound_at(isotherm, Sticking::all(ns, stuck), added, block, by_ln)
+}
+
+/// The same where label may stick in both places: `LT = (1 + during) F + S(F)`, and bound is `S(F) + (during + after) F`.
+pub fn bound_at<I: Isotherm>(
+    isotherm: &I,
+    ns: Sticking,
+    added: f64,
+    block: Block,
+    by_ln: &mut [f64],
+) -> Bound {
     match block {
-        Block::None => solved(isotherm, ns, stuck, a, added, added, by_ln),
-        Block::Competitor(factor) => {
-            solved(&isotherm.blocked(factor), ns, stuck, a, added, added, by_ln)
-        }
-        Block::SameLigand(unlabelled) => {
-            solved(isotherm, ns, stuck, a, added, added + unlabelled, by_ln)
-        }
+        Block::None => solved(isotherm, ns, added, added, by_ln),
+        Block::Competitor(factor) => solved(&isotherm.blocked(factor), ns, added, added, by_ln),
+        Block::SameLigand(unlabelled) => solved(isotherm, ns, added, added + unlabelled, by_ln),
         Block::Full => {
             by_ln.iter_mut().for_each(|d| *d = 0.0);
-            let free = added / a;
-            let value = ns * free;
-            let by_ln_ns = match stuck {
-                Stuck::DuringIncubation => value / a,
-                Stuck::AfterSeparation => value,
-            };
-            Bound {
-                value,
-                free,
-                by_ln_ns,
-                by_ln_added: value,
-            }
+            nothing_specific(ns, added)
         }
+    }
+}
+
+/// A tube in which nothing binds specifically: all blocked, or without receptor preparation, where nothing sticks during
+/// incubation either.
+pub fn nothing_specific(ns: Sticking, added: f64) -> Bound {
+    let a = 1.0 + ns.during;
+    let free = added / a;
+    let value = (ns.during + ns.after) * free;
+    let by_ln_after = ns.after * free;
+    let unbound = (1.0 - ns.after) * free;
+    Bound {
+        value,
+        free,
+        by_ln_ns: ns.during * free * (1.0 - ns.after) / a + by_ln_after,
+        by_ln_after,
+        by_ln_added: value,
+        unbound,
+        unbound_by_ln_added: unbound,
     }
 }
 
 /// The label's share of a balance solved for `total` nM of the ligand in all its forms.
 fn solved<I: Isotherm>(
     isotherm: &I,
-    ns: f64,
-    stuck: Stuck,
-    a: f64,
+    ns: Sticking,
     added: f64,
     total: f64,
     by_ln: &mut [f64],
 ) -> Bound {
+    let a = 1.0 + ns.during;
     let share = added / total;
     let free = isotherm.free(total, a);
     let (specific, slope) = isotherm.evaluate(free, by_ln);
     let give = a + slope;
-    let all = specific + ns * free;
-    // Bound as a whole, S + ns F, answers a parameter of S by S_p (1 - (S' + ns) / (a + S')); written out for
-    // either place of sticking, the bracket loses nothing to cancellation.
-    let kept = match stuck {
-        Stuck::DuringIncubation => 1.0 / give,
-        Stuck::AfterSeparation => (1.0 - ns) / give,
-    };
+    let stuck = ns.during + ns.after;
+    let all = specific + stuck * free;
+    // Bound as a whole, S + (during + after) F, answers a parameter of S by S_p (1 - (S' + during + after) / (a + S')); written
+    // out, the bracket loses nothing to cancellation.
+    let kept = (1.0 - ns.after) / give;
     by_ln.iter_mut().for_each(|d| *d *= kept * share);
-    let by_ln_ns = match stuck {
-        Stuck::DuringIncubation => ns * free * kept * share,
-        Stuck::AfterSeparation => ns * free * share,
-    };
-    let by_total = (slope + ns) / give;
+    let by_ln_after = ns.after * free * share;
+    let by_total = (slope + stuck) / give;
     let value = all * share;
-    let by_ln_added = by_total * added * share + value * (1.0 - share);
+    let unbound = (1.0 - ns.after) * free * share;
     Bound {
         value,
         free: free * share,
-        by_ln_ns,
-        by_ln_added,
+        by_ln_ns: ns.during * free * kept * share + by_ln_after,
+        by_ln_after,
+        by_ln_added: by_total * added * share + value * (1.0 - share),
+        unbound,
+        unbound_by_ln_added: kept * added * share + unbound * (1.0 - share),
     }
 }
 

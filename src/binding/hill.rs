@@ -77,6 +77,18 @@ impl Isotherm for Hill {
         (bound, tilt / free)
     }
 
+    fn bend(&self, free: f64, slope_by_ln: &mut [f64]) -> f64 {
+        let (taken, open) = self.shares(free.ln());
+        let slope = self.sites * self.n * taken * open / free;
+        let lean = self.n * (open - taken);
+        if let [by_kh, by_sites, by_n, ..] = slope_by_ln {
+            *by_kh = -lean * slope;
+            *by_sites = slope;
+            *by_n = slope * (1.0 + lean * (free / self.kh).ln());
+        }
+        slope * (lean - 1.0) / free
+    }
+
     /// Newton's method on `ln (a F + S(F)) = ln total` in `ln F`, kept between what was found too low and too high.
     ///
     /// On these scales the balance rises with a slope between those of its two terms, so that a few steps do.

@@ -41,6 +41,16 @@ impl Isotherm for OneClass {
         }
     }
 
+    fn bend(&self, free: f64, slope_by_ln: &mut [f64]) -> f64 {
+        let sum = self.kd + free;
+        let slope = self.slope(free);
+        if let [by_kd, by_sites, ..] = slope_by_ln {
+            *by_kd = slope * (free - self.kd) / sum;
+            *by_sites = slope;
+        }
+        -2.0 * slope / sum
+    }
+
     /// The positive root of `a F^2 + beta F - Kd LT = 0` with `beta = a Kd + R - LT`.
     ///
     /// `beta` is summed with its rounding errors kept and the form of the root is chosen by its sign,

@@ -78,6 +78,11 @@ impl Isotherm for TwoClasses {
         }
     }
 
+    fn bend(&self, free: f64, slope_by_ln: &mut [f64]) -> f64 {
+        let (first, second) = slope_by_ln.split_at_mut_checked(2).unwrap_or_default();
+        self.first.bend(free, first) + self.second.bend(free, second)
+    }
+
     /// Newton's method on `a F + S(F) = total` from below.
     ///
     /// One class with all the sites and the steepness at the origin of both binds no less at any `F` (the

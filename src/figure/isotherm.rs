@@ -48,7 +48,11 @@ pub fn isotherm(
     );
     let room = Room::Columns(plot_columns(columns, &y));
     let free = || {
-        let ladder = titration.levels.iter().map(|l| shown(l.added.base()));
+        let left = titration.protocol.concentration_left();
+        let ladder = titration
+            .levels
+            .iter()
+            .map(move |l| shown(l.added.base() * left));
         let empty = used(&series).next().is_none();
         used(&series)
             .map(|p| p.x)

@@ -27,7 +27,7 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
     let added: BTreeMap<LevelNo, f64> = titration
         .levels
         .iter()
-        .map(|l| (l.no, unit.from_nm(l.added.base())))
+        .filter_map(|l| Some((l.no, unit.from_nm(titration.level_nm(l.no)?))))
         .collect();
     let inside = fit.tubes.iter().map(|t| t.residual().abs());
     let reach = inside.filter(|r| *r <= IN_SIGHT).fold(LEAST, f64::max);
@@ -91,7 +91,7 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
 fn widened(tubes: &[FittedTube], added: &BTreeMap<LevelNo, f64>) -> Vec<f64> {
     let mut levels: Vec<f64> = tubes
         .iter()
-        .filter_map(|t| added.get(&t.level).copied())
+        .filter_map(|t| added.get(&t.level?).copied())
         .collect();
     levels.sort_by(f64::total_cmp);
     levels.dedup();
@@ -143,7 +143,7 @@ fn side_by_side(
     let levels: Vec<(f64, &[usize])> = order
         .chunk_by(|a, b| tubes[*a].level == tubes[*b].level)
         .filter_map(|here| {
-            let level = here.first().and_then(|i| added.get(&tubes[*i].level))?;
+            let level = here.first().and_then(|i| added.get(&tubes[*i].level?))?;
             Some((x.fraction(*level)?, here))
         })
         .collect();

@@ -1,8 +1,9 @@
 //! Tubes as the figures see them: measured, with the error that the fit gives them.
 
 use super::{Mark, Point, PointGlyph, Series};
-use crate::analysis::{Analysis, free};
-use crate::assay::{Measured, Role, Sticks, Titration, TubeNo, counts_per_nm};
+use crate::analysis::{Analysis, free, specific};
+use crate::assay::{Measured, Role, Titration, TubeNo, volume_shift};
+use crate::binding::Sticking;
 use crate::fit::{Fit, FittedTube};
 use std::collections::BTreeMap;
 
@@ -15,8 +16,9 @@ pub(super) struct Seen {
     measured: Measured,
     /// One standard deviation of bound, in nM.
     sd: f64,
-    sticks: Sticks,
-    ns: Option<f64>,
+    sticking: Option<Sticking>,
+    /// What is not bound is free: so it is but where both were counted.
+    balance: bool,
 }
 
 impl Seen {
@@ -27,11 +29,15 @@ impl Seen {
         let more = sds * self.sd;
         let moved = Measured {
             bound_nm: self.measured.bound_nm + more,
-            free_nm: self.measured.free_nm - more,
+            free_nm: self.measured.free_nm - if self.balance { more } else { 0.0 },
             ..self.measured
         };
-        let free = free(moved, self.sticks, self.ns);
-        (free, moved.bound_nm - self.ns.unwrap_or(0.0) * free)
+        let free = free(moved, self.sticking);
+        let bound = match self.sticking {
+            Some(sticking) => specific(moved, self.role, sticking),
+            None => moved.bound_nm,
+        };
+        (free, bound)
     }
 
     /// A point whose height and error bar are `y` of free and bound one standard deviation down, as measured, and one up.
@@ -56,27 +62,29 @@ impl Seen {
 /// that it is the counting error. The background's own error, which all tubes share, is not in the former.
 pub(super) fn seen(titration: &Titration, analysis: &Analysis) -> Vec<Seen> {
     let fit = analysis.fit();
-    let per_nm = counts_per_nm(&titration.protocol);
+    let cells = titration.protocol.separation.counted.is_cell();
+    let shift = volume_shift(&titration.protocol);
     let expected: BTreeMap<TubeNo, &FittedTube> = fit
         .into_iter()
         .flat_map(|f| &f.tubes)
         .map(|t| (t.tube, t))
         .collect();
-    let ns = fit.map(|f| f.value("ns"));
+    let sticks = titration.protocol.nonspecific.sticks;
+    let sticking = fit.map(|f| f.sticking(sticks));
     let tubes = analysis.tubes.iter();
     tubes
         .filter_map(|t| {
             let measured = t.measured?;
-            let fitted = expected.get(&t.tube.no).zip(t.observed);
+            let fitted = expected.get(&t.tube.no);
             Some(Seen {
                 role: t.tube.role,
                 mark: mark(t.suspect.is_none()),
                 measured,
-                sd: fitted.map_or(measured.bound_sd_nm, |(f, o)| {
-                    f.variance.sqrt() / (o.minutes * per_nm)
+                sd: fitted.map_or(measured.bound_sd_nm, |f| {
+                    f.variance.sqrt() / (f.per_nm * shift)
                 }),
-                sticks: titration.protocol.nonspecific.sticks,
-                ns,
+                sticking,
+                balance: !cells,
             })
         })
         .collect()

@@ -37,6 +37,8 @@ pub enum RowOf {
     Background,
     /// What the lab knows of its tube CV.
     CvPrior,
+    /// What is known of the noise of a reader.
+    NoisePrior,
     /// The dilution step that made the level in this column.
     Dilution(usize),
     /// What is known of the error in this column, which all tubes share.

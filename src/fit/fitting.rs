@@ -66,9 +66,10 @@ impl<I: Cold> Fitting<I> {
         if !missing.is_empty() {
             return Err(Outcome::TooEarly(missing));
         }
-        let n = evidence.samples().len();
+        let n = evidence.assayed();
         let confidence = titration.protocol.numbers.confidence;
-        let cut = ProfileCut::new(n, I::DIM + 1, confidence).ok_or(Outcome::NoConvergence)?;
+        let cut = ProfileCut::new(n, evidence.mean_parameters(), confidence)
+            .ok_or(Outcome::NoConvergence)?;
         let mut others = global(&evidence, warm);
         if others.is_empty() {
             return Err(Outcome::NoConvergence);
@@ -96,7 +97,7 @@ impl<I: Cold> Fitting<I> {
 
     /// The fit without any interval.
     pub fn bare(&self) -> Fit {
-        let ends = vec![[End::Unasked; 2]; I::DIM + 2];
+        let ends = vec![[End::Unasked; 2]; self.evidence.reported().len()];
         self.described(&ends, Vec::new())
     }
 
@@ -174,7 +175,8 @@ impl<I: Cold> Fitting<I> {
     fn intervals(&self, only_closed: bool) -> Result<(Vec<[End; 2]>, Vec<ProfilePlace>), Vec<f64>> {
         let mut profiles = self.profiles();
         let mut ends = Vec::new();
-        for j in 0..Columns::of::<I>().cv() {
+        let asked: Vec<usize> = self.evidence.reported().iter().map(|(_, j)| *j).collect();
+        for j in asked.iter().copied() {
             let low = self.end(j, false, &mut profiles)?;
             let enough = |end: End| only_closed && end.value().is_none();
             let high = if enough(low) {
@@ -184,12 +186,12 @@ impl<I: Cold> Fitting<I> {
             };
             ends.push([low, high]);
             if enough(low) || enough(high) {
-                ends.resize(Columns::of::<I>().cv(), [End::Unasked; 2]);
+                ends.resize(asked.len(), [End::Unasked; 2]);
                 return Ok((ends, Vec::new()));
             }
         }
         // What later profiles met may lie beyond the ends of earlier ones.
-        for (j, pair) in ends.iter_mut().enumerate() {
+        for (j, pair) in asked.iter().copied().zip(&mut ends) {
             for (found, upward) in pair.iter_mut().zip([false, true]) {
                 if profiles.contradict(j, upward, *found) {
                     *found = self.end(j, upward, &mut profiles)?;
@@ -224,30 +226,37 @@ impl<I: Cold> Fitting<I> {
 
     fn described(&self, ends: &[[End; 2]], profile: Vec<ProfilePlace>) -> Fit {
         let theta = &self.best.theta;
-        let names = I::NAMES.iter().copied().chain(["ns", "background_cpm"]);
-        let estimates = names.zip(ends).enumerate().map(|(j, (name, [low, high]))| {
-            let held = self.best.at_limit[j];
-            let searched = I::KINDS.get(j).is_some_and(|k| *k != Kind::Sites);
-            Estimate {
-                name,
-                value: theta[j].exp(),
-                se_ln: (!held).then(|| self.cov[(j, j)].sqrt()),
-                at_floor: !searched && held && theta[j] <= self.evidence.limits(j).low,
-                low: low.map(f64::exp),
-                high: high.map(f64::exp),
-            }
-        });
-        let tubes_used = self.evidence.samples().len();
+        let reported = self.evidence.reported();
+        let estimates = reported
+            .into_iter()
+            .zip(ends)
+            .map(|((name, j), [low, high])| {
+                let held = self.best.at_limit[j];
+                let searched = I::KINDS.get(j).is_some_and(|k| *k != Kind::Sites);
+                let value = self.evidence.value(theta, j);
+                let shown = |ln: f64| (ln - theta[j]).exp() * value;
+                Estimate {
+                    name,
+                    value,
+                    se_ln: (!held).then(|| self.cov[(j, j)].sqrt()),
+                    at_floor: !searched && held && theta[j] <= self.evidence.limits(j).low,
+                    low: low.map(shown),
+                    high: high.map(shown),
+                }
+            });
+        let tubes_used = self.evidence.assayed();
         let minus2lnl = self.evidence.minus2lnl(theta);
         let fitted = |s: &Sample, used: bool| {
-            let (expected, variance) = self.evidence.expected(s, theta);
+            let of = self.evidence.expected(s, theta);
             FittedTube {
                 tube: s.tube,
                 role: s.role,
                 level: s.level,
                 counts: s.counts,
-                expected,
-                variance,
+                expected: of.mean,
+                variance: of.variance,
+                per_nm: of.per_nm,
+                taken: of.taken,
                 used,
             }
         };
@@ -258,9 +267,14 @@ impl<I: Cold> Fitting<I> {
             law: I::from_ln(theta).law(),
             minus2lnl,
             prior_term: self.evidence.prior_term(theta),
-            aicc: aicc(minus2lnl, I::DIM + 3, tubes_used + 1),
+            aicc: aicc(
+                minus2lnl,
+                self.evidence.parameters(),
+                self.evidence.observations(),
+            ),
             tubes_used,
-            mean_parameters: I::DIM + 1,
+            mean_parameters: self.evidence.mean_parameters(),
+            of_law: I::DIM,
             cv: theta[Columns::of::<I>().cv()].exp(),
             theta: theta.clone(),
             cov: self.cov.clone(),

@@ -1,7 +1,9 @@
 //! What has to be there before a number means anything.
 
 use super::rack::RackEvidence;
-use crate::assay::{LevelNo, Model, Role, Titration, background, observed};
+use crate::assay::{
+    LevelNo, Model, Role, Side, Titration, background, calibration, noise_known, observed,
+};
 use crate::binding::Isotherm;
 use std::fmt;
 
@@ -10,6 +12,15 @@ use std::fmt;
 pub enum Missing {
     /// No background vial has been counted.
     Background,
+    /// No blank of a reader has been read, or none with a signal above zero.
+    Blank,
+    /// No standard of a reader has been read.
+    Standards,
+    /// Too few blanks to know the noise of a reader.
+    Blanks {
+        /// How many there are.
+        have: usize,
+    },
     /// Total tubes at too few levels for the parameters.
     Levels {
         /// At how many there are.
@@ -38,6 +49,14 @@ impl fmt::Display for Missing {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Missing::Background => f.write_str("a counted background vial"),
+            Missing::Blank => f.write_str(
+                "a blank with a signal above zero (signals as the reader gives them, no blank taken off)",
+            ),
+            Missing::Standards => f.write_str("a standard above the blank"),
+            Missing::Blanks { have } => write!(
+                f,
+                "{BLANKS_WANTED} blanks, or the noise of the reader at the counter step (now {have})"
+            ),
             Missing::Levels { have, want } => {
                 write!(f, "total tubes at {want} levels (now {have})")
             }
@@ -56,18 +75,28 @@ impl fmt::Display for Missing {
     }
 }
 
+/// How many blanks tell the noise of a reader.
+const BLANKS_WANTED: usize = 3;
+
 /// The one-sided 5 % point of the normal distribution (NIST/SEMATECH e-Handbook of Statistical Methods, 1.3.6.7.1).
 const Z95: f64 = 1.644_853_6;
 
 /// What is missing where there is no evidence at all.
 pub(super) fn nothing_yet<I: Isotherm>(titration: &Titration, flags: bool) -> Vec<Missing> {
     let mut missing = Vec::new();
-    if background(titration, flags).is_none() {
-        missing.push(Missing::Background);
+    let signal = titration.protocol.separation.counted.is_signal();
+    match background(titration, flags) {
+        None if signal => missing.push(Missing::Blank),
+        None => missing.push(Missing::Background),
+        Some(_) if signal && calibration(titration, flags).is_none() => {
+            missing.push(Missing::Standards);
+        }
+        Some(_) => {}
     }
     let samples: Vec<(Role, LevelNo)> = titration
         .tubes
         .iter()
+        .filter(|t| t.role.assayed() && t.side != Some(Side::Ligand))
         .filter(|t| observed(titration, t.no, flags).is_some())
         .filter_map(|t| t.level.map(|l| (t.role, l)))
         .collect();
@@ -83,7 +112,7 @@ fn rack_missing(titration: &Titration, samples: &[(Role, LevelNo)], dim: usize) 
     let mut levels: Vec<f64> = samples
         .iter()
         .filter(|s| s.0 == Role::Total)
-        .filter_map(|s| titration.level(s.1).map(|l| l.added.base()))
+        .filter_map(|s| titration.level_nm(s.1))
         .collect();
     levels.sort_by(f64::total_cmp);
     levels.dedup();
@@ -117,15 +146,29 @@ pub(super) fn missing<I: Isotherm>(
     let samples: Vec<_> = evidence
         .samples()
         .iter()
-        .map(|s| (s.role, s.level))
+        .filter(|s| s.assayed())
+        .filter_map(|s| Some((s.role, s.level?)))
         .collect();
-    let mut missing = rack_missing(titration, &samples, I::DIM);
-    let (n_b, t_b) = evidence.background();
-    let b = n_b / t_b;
+    let mut missing = rack_missing(titration, &samples, evidence.mean_parameters() - 1);
+    let blank = evidence.background();
+    if titration.protocol.separation.counted.is_signal() {
+        let have = blank.vials;
+        if blank.cpm() <= 0.0 {
+            missing.push(Missing::Blank);
+        } else if have < BLANKS_WANTED && noise_known(titration).is_none() {
+            missing.push(Missing::Blanks { have });
+        }
+    }
+    let b = blank.cpm();
     // Currie's critical level of a net count (1968, Anal Chem 40:586; formula from memory).
-    let above = evidence.samples().iter().any(|s| {
+    let above = evidence.samples().iter().filter(|s| s.assayed()).any(|s| {
         let net = s.counts - s.minutes * b;
-        net > Z95 * (b * s.minutes * (1.0 + s.minutes / t_b)).sqrt()
+        let own = if blank.between > 0.0 {
+            blank.between * s.minutes
+        } else {
+            b * s.minutes
+        };
+        net > Z95 * (own + blank.variance * s.minutes * s.minutes).sqrt()
     });
     if !above {
         missing.push(Missing::NothingAboveBackground);

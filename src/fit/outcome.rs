@@ -2,8 +2,8 @@
 
 use super::missing::Missing;
 use super::profile::End;
-use crate::assay::{LevelNo, Model, Role, TubeNo};
-use crate::binding::Law;
+use crate::assay::{LevelNo, Model, Role, Sticks, TubeNo};
+use crate::binding::{Law, Sticking, Stuck};
 use nalgebra::DMatrix;
 
 /// One parameter, estimated on the ln scale.
@@ -51,14 +51,18 @@ pub struct FittedTube {
     pub tube: TubeNo,
     /// What it is for.
     pub role: Role,
-    /// Its level.
-    pub level: LevelNo,
+    /// Its level; none for standards and blanks.
+    pub level: Option<LevelNo>,
     /// Gross counts, recounts added up.
     pub counts: f64,
     /// Gross counts expected.
     pub expected: f64,
     /// Their variance, of counting and between tubes.
     pub variance: f64,
+    /// Counts for one nM of what is seen in it.
+    pub per_nm: f64,
+    /// The share of its label that is bound, as fitted; where the tube tells.
+    pub taken: Option<f64>,
     /// Whether the fit uses it; one that is flagged is only compared.
     pub used: bool,
 }
@@ -97,13 +101,16 @@ pub struct Fit {
     /// Akaike's criterion with the correction for few data (Hurvich & Tsai 1989, Biometrika 76:297; from
     /// memory), `n` = tubes used + 1; `None` where there are too few tubes for it.
     pub aicc: Option<f64>,
-    /// Tubes used, background not counted.
+    /// Tubes used that went through the assay; a dialysis cell is one.
     pub tubes_used: usize,
     /// How many parameters of the mean counts there are, background not counted.
     pub mean_parameters: usize,
+    /// How many of the estimates are parameters of the isotherm; they come first.
+    pub of_law: usize,
     /// The tube CV found, as a share.
     pub cv: f64,
-    /// The parameters of the isotherm, nonspecific binding, background.
+    /// The parameters of the isotherm, nonspecific binding (and that of the filter apart, where tubes without receptor tell), background
+    /// or blank, and the gain of a reader.
     pub estimates: Vec<Estimate>,
     /// The profile of the first parameter of the isotherm, lowest value first; empty where no interval was asked for.
     pub profile: Vec<ProfilePlace>,
@@ -119,6 +126,19 @@ impl Fit {
         self.estimates.iter().find(|e| e.name == name)
     }
 
+    /// The nonspecific binding that sticks in the tube and that sticks to the filter, for one of free label.
+    pub fn sticking(&self, sticks: Sticks) -> Sticking {
+        let ns = self.value("ns");
+        match (self.estimate("ns_filter"), sticks) {
+            (Some(filter), _) => Sticking {
+                during: ns,
+                after: filter.value,
+            },
+            (None, Sticks::ToPreparation) => Sticking::all(ns, Stuck::DuringIncubation),
+            (None, Sticks::ToFilter) => Sticking::all(ns, Stuck::AfterSeparation),
+        }
+    }
+
     /// The value of an estimate by its name; not a number where there is none.
     pub fn value(&self, name: &str) -> f64 {
         self.estimate(name).map_or(f64::NAN, |e| e.value)
@@ -129,10 +149,9 @@ impl Fit {
         self.minus2lnl + self.prior_term
     }
 
-    /// The parameters of the isotherm: all estimates but nonspecific binding and background.
+    /// The parameters of the isotherm.
     pub fn of_isotherm(&self) -> &[Estimate] {
-        let n = self.estimates.len().saturating_sub(2);
-        &self.estimates[..n]
+        &self.estimates[..self.of_law.min(self.estimates.len())]
     }
 
     /// A parameter of the isotherm that the readings hardly determine: it rests on a limit, or its standard error is more than 1.5 on

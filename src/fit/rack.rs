@@ -1,34 +1,21 @@
 //! A rack of tubes as evidence: expected counts, their variance, and the rows they give.
 
+mod cell;
 mod lay;
+mod rows;
+mod sample;
 
-use super::deletion::Parts;
-use super::evidence::{Evidence, Limits, RowOf, Rows, Scale};
-use crate::assay::{LevelNo, Role, Sticks, Titration, TubeNo, background, counts_per_nm, observed};
-use crate::binding::{Block, Isotherm, Stuck, bound};
+pub use sample::Sample;
+pub(super) use sample::Shows;
+
+use super::evidence::{Evidence, Limits};
+use crate::assay::{
+    Background, Counting, LevelNo, Sticks, Titration, Tube, background, calibration, observed_in,
+};
+use crate::binding::{Isotherm, Sticking, Stuck, bound_at, nothing_specific};
 use statrs::function::gamma::ln_gamma;
-use std::f64::consts::{FRAC_1_SQRT_2, TAU};
+use std::f64::consts::TAU;
 use std::marker::PhantomData;
-
-/// One tube that informs the fit.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Sample {
-    /// Its vial number.
-    pub tube: TubeNo,
-    /// What it is for.
-    pub role: Role,
-    /// Its level.
-    pub level: LevelNo,
-    /// Label added, in nM, as the protocol has it.
-    pub added: f64,
-    /// Gross counts, recounts added up.
-    pub counts: f64,
-    /// Minutes counted.
-    pub minutes: f64,
-    pub(super) block: Block,
-    /// The column of its level's dilution error, if there is one.
-    column: Option<usize>,
-}
 
 /// Where the columns of a rack's parameters are, for an isotherm of `dim` parameters.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -89,21 +76,82 @@ struct Link {
 struct ScaleColumn {
     column: usize,
     on_added: f64,
-    on_counts: f64,
+    /// On the counts of an aliquot, and on those of what the incubation volume is in.
+    on_counts: [f64; 2],
     sd: f64,
 }
 
 /// What holds for all tubes at one set of parameters.
 struct Common<I> {
     isotherm: I,
+    sticking: Sticking,
+    /// Nonspecific binding that the column `ns` is of.
     ns: f64,
-    /// cpm.
+    /// cpm, or the signal of a blank.
     background: f64,
     cv2: f64,
     /// What scale errors add to the logarithm of the label added.
     ln_added: f64,
-    /// Counts per minute for 1 nM.
-    per_nm: f64,
+    /// What scale errors and gain make of the counts for 1 nM: of an aliquot, and of what the incubation volume is in.
+    scale: [f64; 2],
+    /// The variance between background vials, cpm^2.
+    between: f64,
+    /// Dead minutes.
+    dead: f64,
+    /// The variance of a blank reading of a reader.
+    noise2: Option<f64>,
+}
+
+impl<I> Common<I> {
+    fn scale(&self, by_volume: bool) -> f64 {
+        self.scale[usize::from(by_volume)]
+    }
+}
+
+/// What a sample shows at one set of parameters: counts beyond background, and how they answer.
+struct SeenAt {
+    signal: f64,
+    /// By `ln ns`.
+    by_ns: f64,
+    /// By the logarithm of what sticks to the filter, where that has a column.
+    by_filter: f64,
+    /// By the logarithm of the label added.
+    by_added: f64,
+}
+
+/// What background vials say.
+#[derive(Debug, Clone, Copy, PartialEq)]
+enum Blanks {
+    /// Counts and minutes of all together, and what the likelihood has of them alone.
+    Counted {
+        counts: f64,
+        minutes: f64,
+        ln_gamma: f64,
+    },
+    /// A mean and its variance, of vials that scatter.
+    Scattered { cpm: f64, variance: f64 },
+    /// Blanks of a reader, which are among the samples.
+    Sampled,
+}
+
+/// Columns that only some racks have.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+struct Extra {
+    /// `ln` of what sticks to the filter, apart from what sticks to the preparation: racks with tubes without receptor.
+    filter: Option<usize>,
+    /// `ln` of the signal for one nM over what the standards show at first sight: readers.
+    gain: Option<usize>,
+    /// `ln` of the standard deviation of a blank reading: readers.
+    noise: Option<usize>,
+}
+
+impl Extra {
+    fn number(self) -> usize {
+        [self.filter, self.gain, self.noise]
+            .into_iter()
+            .flatten()
+            .count()
+    }
 }
 
 /// A rack as evidence about an isotherm, nonspecific binding, background, CV and dilution errors.
@@ -114,9 +162,14 @@ struct Common<I> {
 pub struct RackEvidence<I> {
     samples: Vec<Sample>,
     left_out: Vec<Sample>,
-    background: (f64, f64),
-    ln_gamma_background: f64,
-    per_nm: f64,
+    blanks: Blanks,
+    background: Background,
+    /// Signal for one nM that the gain is reckoned from; one for a counter.
+    gain: f64,
+    noise: f64,
+    noise_prior: Option<(f64, f64)>,
+    dead: f64,
+    extra: Extra,
     stuck: Stuck,
     cv_prior: Option<(f64, f64)>,
     s_d: f64,
@@ -140,35 +193,85 @@ impl<I: Isotherm> RackEvidence<I> {
     pub fn new(titration: &Titration, flags: bool) -> Option<Self> {
         let p = &titration.protocol;
         let blank = background(titration, flags)?;
-        let mut samples = lay::samples(titration, |no| observed(titration, no, flags));
-        let mut left_out = lay::samples(titration, |no| {
-            let used = observed(titration, no, flags).is_some();
-            observed(titration, no, false).filter(|_| !used)
-        });
-        let low = samples.iter().map(|s| s.added).reduce(f64::min)?;
-        let high = samples.iter().map(|s| s.added).reduce(f64::max)?;
+        let signal = p.separation.counted.is_signal();
+        let gain = if signal {
+            calibration(titration, flags)?.gain
+        } else {
+            1.0
+        };
+        let counting = Counting::of(p);
+        let of = |tube: &Tube, flags| observed_in(&counting, titration, tube, flags);
+        let mut samples = lay::samples(titration, |tube| of(tube, flags));
+        let mut left_out = if flags && titration.has_flags() {
+            lay::samples(titration, |tube| of(tube, false))
+        } else {
+            Vec::new()
+        };
+        let used: std::collections::BTreeSet<_> = samples.iter().map(|s| s.tube).collect();
+        left_out.retain(|s| !used.contains(&s.tube));
+        let added = || samples.iter().filter(|s| s.assayed()).map(|s| s.added);
+        let low = added().reduce(f64::min)?;
+        let high = added().reduce(f64::max)?;
         let first = Columns::of::<I>().dilutions();
         let s_d = p.numbers.dilution_error.base();
-        let links = if s_d > 0.0 {
+        let cells = p.separation.counted.is_cell();
+        let links = if s_d > 0.0 && !cells {
             lay::links(titration, &mut samples, &mut left_out, first, s_d)
         } else {
             Vec::new()
         };
         let scales = lay::scales(&p.numbers.scale_errors, first + links.len());
-        let per_nm = counts_per_nm(p);
-        let longest = samples.iter().map(|s| s.minutes).fold(0.0, f64::max);
-        let limits = lay::limits::<I>(
-            low,
-            high,
-            COUNTS_FLOOR / (longest * per_nm),
-            COUNTS_FLOOR / blank.minutes,
-        );
+        let mut next = first + links.len() + scales.len()..;
+        let filter = samples
+            .iter()
+            .any(|s| s.role == crate::assay::Role::NoReceptor);
+        let extra = Extra {
+            filter: if filter { next.next() } else { None },
+            gain: if signal { next.next() } else { None },
+            noise: if signal { next.next() } else { None },
+        };
+        let most = samples
+            .iter()
+            .filter(|s| s.assayed())
+            .map(|s| s.per_nm * gain)
+            .fold(0.0, f64::max);
+        let noise = noise_at_first(&blank, titration);
+        let least = if signal { noise * 1e-3 } else { COUNTS_FLOOR };
+        let mut limits = lay::limits::<I>(low, high, least / most, least / blank.minutes);
+        limits.resize(next.start, Limits::NONE);
+        if let Some(j) = extra.filter {
+            limits[j] = Limits {
+                low: NS_FLOOR.ln(),
+                high: 0.0,
+            };
+        }
+        if let Some(j) = extra.noise {
+            limits[j].low = (1e-6 * blank.cpm().abs().max(noise)).ln();
+        }
+        let blanks = if signal {
+            Blanks::Sampled
+        } else if blank.scattered() {
+            Blanks::Scattered {
+                cpm: blank.cpm(),
+                variance: blank.variance,
+            }
+        } else {
+            Blanks::Counted {
+                counts: blank.counts,
+                minutes: blank.minutes,
+                ln_gamma: ln_gamma(blank.counts + 1.0),
+            }
+        };
         Some(RackEvidence {
             samples,
             left_out,
-            background: (blank.counts, blank.minutes),
-            ln_gamma_background: ln_gamma(blank.counts + 1.0),
-            per_nm,
+            blanks,
+            background: blank,
+            gain,
+            noise,
+            noise_prior: crate::assay::noise_known(titration).map(|s| (s.ln(), NOISE_SD_LN)),
+            dead: p.counter.dead_minutes(),
+            extra,
             stuck: match p.nonspecific.sticks {
                 Sticks::ToPreparation => Stuck::DuringIncubation,
                 Sticks::ToFilter => Stuck::AfterSeparation,
@@ -218,7 +321,7 @@ impl<I: Isotherm> RackEvidence<I> {
                 sd: FREE_STEP,
             });
             let all = free.samples.iter_mut().chain(&mut free.left_out);
-            all.filter(|s| s.level == level)
+            all.filter(|s| s.level == Some(level))
                 .for_each(|s| s.column = Some(column));
             free.links.len() - 1
         });
@@ -238,14 +341,78 @@ impl<I: Isotherm> RackEvidence<I> {
         self.added
     }
 
-    /// Background counts and minutes.
-    pub fn background(&self) -> (f64, f64) {
-        self.background
+    /// The background vials, or the blanks of a reader.
+    pub fn background(&self) -> &Background {
+        &self.background
     }
 
-    /// Counts per minute for 1 nM bound.
-    pub fn per_nm(&self) -> f64 {
-        self.per_nm
+    /// Signal for one nM in the volume that is read, as the standards show it at first sight; one for a counter.
+    pub fn gain(&self) -> f64 {
+        self.gain
+    }
+
+    /// Whether nonspecific label on the filter has a parameter of its own.
+    pub fn filter_column(&self) -> Option<usize> {
+        self.extra.filter
+    }
+
+    /// The column of the noise of a reader.
+    pub(super) fn noise_column(&self) -> Option<usize> {
+        self.extra.noise
+    }
+
+    /// The standard deviation of a blank reading to begin a fit with.
+    pub(super) fn noise_at_first(&self) -> f64 {
+        self.noise
+    }
+
+    /// How many vials went through the assay.
+    pub fn assayed(&self) -> usize {
+        self.samples.iter().filter(|s| s.assayed()).count()
+    }
+
+    /// How many parameters of the mean counts there are, background and reader not counted.
+    pub fn mean_parameters(&self) -> usize {
+        I::DIM + 1 + usize::from(self.extra.filter.is_some())
+    }
+
+    /// How many parameters the likelihood has, dilution and scale errors not counted.
+    pub fn parameters(&self) -> usize {
+        I::DIM + 3 + self.extra.number()
+    }
+
+    /// How many observations the likelihood has.
+    pub fn observations(&self) -> usize {
+        let others = match self.blanks {
+            Blanks::Sampled => self.samples.len() - self.assayed(),
+            _ => 1,
+        };
+        self.assayed() + others
+    }
+
+    /// What an interval is reported of beside the isotherm's parameters, by name and column.
+    pub fn reported(&self) -> Vec<(&'static str, usize)> {
+        let at = Columns::of::<I>();
+        let mut names: Vec<(&'static str, usize)> = I::NAMES.iter().copied().zip(0..).collect();
+        names.push(("ns", at.ns()));
+        names.extend(self.extra.filter.map(|j| ("ns_filter", j)));
+        let blank = match self.blanks {
+            Blanks::Sampled => "blank_signal",
+            _ => "background_cpm",
+        };
+        names.push((blank, at.background()));
+        names.extend(self.extra.gain.map(|j| ("gain", j)));
+        names
+    }
+
+    /// The value that a parameter is reported as.
+    pub fn value(&self, theta: &[f64], column: usize) -> f64 {
+        let of = theta[column].exp();
+        if self.extra.gain == Some(column) {
+            of * self.gain
+        } else {
+            of
+        }
     }
 
     /// The centre of the CV prior, or the lab's common one.
@@ -259,30 +426,105 @@ impl<I: Isotherm> RackEvidence<I> {
     /// What holds for all tubes at `theta`.
     fn common(&self, theta: &[f64]) -> Common<I> {
         let at = Columns::of::<I>();
-        let (mut on_added, mut on_counts) = (0.0, 0.0);
+        let (mut on_added, mut on_counts) = (0.0, [0.0; 2]);
         for s in &self.scales {
             on_added += s.on_added * theta[s.column];
-            on_counts += s.on_counts * theta[s.column];
+            on_counts[0] += s.on_counts[0] * theta[s.column];
+            on_counts[1] += s.on_counts[1] * theta[s.column];
         }
+        let gain = self.extra.gain.map_or(1.0, |j| self.gain * theta[j].exp());
+        let ns = theta[at.ns()].exp();
+        let sticking = match self.extra.filter {
+            Some(j) => Sticking {
+                during: ns,
+                after: theta[j].exp(),
+            },
+            None => Sticking::all(ns, self.stuck),
+        };
         Common {
             isotherm: I::from_ln(theta),
-            ns: theta[at.ns()].exp(),
+            sticking,
+            ns,
             background: theta[at.background()].exp(),
             cv2: (2.0 * theta[at.cv()]).exp(),
             ln_added: on_added,
-            per_nm: self.per_nm * on_counts.exp(),
+            scale: on_counts.map(|ln| gain * ln.exp()),
+            between: match self.blanks {
+                Blanks::Scattered { .. } => self.background.between,
+                _ => 0.0,
+            },
+            dead: self.dead,
+            noise2: self.extra.noise.map(|j| (2.0 * theta[j]).exp()),
         }
     }
 
-    /// Expected counts of a sample without background, and derivatives of it: `by` gets those by the isotherm's
-    /// parameters; returned are the value and the derivatives by `ln ns` and by the logarithm of the label added.
-    fn signal(&self, s: &Sample, c: &Common<I>, theta: &[f64], by: &mut [f64]) -> (f64, f64, f64) {
+    /// Expected counts of a sample without background, and derivatives of it; `by` gets those by the isotherm's parameters.
+    fn seen(&self, s: &Sample, c: &Common<I>, theta: &[f64], by: &mut [f64]) -> SeenAt {
         let d = c.ln_added + s.column.map_or(0.0, |j| theta[j]);
-        let added = if d == 0.0 { s.added } else { s.added * d.exp() };
-        let b = bound(&c.isotherm, c.ns, self.stuck, added, s.block, by);
-        let k = s.minutes * c.per_nm;
+        let times = if d == 0.0 { 1.0 } else { d.exp() };
+        let added = s.added * times;
+        let k = s.per_nm * c.scale(s.by_volume());
+        let known = |by: &mut [f64], signal: f64, by_added: f64| {
+            by.iter_mut().for_each(|v| *v = 0.0);
+            SeenAt {
+                signal,
+                by_ns: 0.0,
+                by_filter: 0.0,
+                by_added,
+            }
+        };
+        match s.shows {
+            Shows::Known => return known(by, k * s.added, 0.0),
+            Shows::Added => {
+                let all = k * (added + s.rest * times);
+                return known(by, all, all);
+            }
+            _ => {}
+        }
+        let b = if s.role == crate::assay::Role::NoReceptor {
+            by.iter_mut().for_each(|v| *v = 0.0);
+            let filter = Sticking {
+                during: 0.0,
+                ..c.sticking
+            };
+            nothing_specific(filter, added)
+        } else {
+            bound_at(&c.isotherm, c.sticking, added, s.block, by)
+        };
+        let apart = self.extra.filter.is_some();
+        let (by_ns, by_filter) = if apart {
+            (b.by_ln_ns - b.by_ln_after, b.by_ln_after)
+        } else {
+            (b.by_ln_ns, 0.0)
+        };
+        if s.shows == Shows::Unbound {
+            let rest = s.rest * times;
+            by.iter_mut().for_each(|v| *v *= -k);
+            return SeenAt {
+                signal: k * (b.unbound + rest),
+                by_ns: -k * by_ns,
+                by_filter: -k * by_filter,
+                by_added: k * (b.unbound_by_ln_added + rest),
+            };
+        }
         by.iter_mut().for_each(|v| *v *= k);
-        (k * b.value, k * b.by_ln_ns, k * b.by_ln_added)
+        SeenAt {
+            signal: k * b.value,
+            by_ns: k * by_ns,
+            by_filter: k * by_filter,
+            by_added: k * b.by_ln_added,
+        }
+    }
+
+    /// The variance of a sample without the CV's part, and its derivative by the counts expected.
+    fn own_variance(&self, s: &Sample, c: &Common<I>, mu: f64) -> (f64, f64) {
+        if let Some(noise2) = c.noise2 {
+            return (s.minutes * noise2, 0.0);
+        }
+        // After the correction for dead time a rate n has the variance of counting times 1 + n tau.
+        let dead = c.dead * mu / s.minutes;
+        let between = c.between * s.minutes * s.minutes;
+        (mu * (1.0 + dead) + between, 1.0 + 2.0 * dead)
     }
 
     /// `-2 ln L` of the data alone: tubes normal, background Poisson.
@@ -291,19 +533,39 @@ impl<I: Isotherm> RackEvidence<I> {
         let mut by = [0.0; MOST_DIM];
         let mut sum = 0.0;
         for s in &self.samples {
-            let (signal, _, _) = self.signal(s, &c, theta, &mut by[..I::DIM]);
-            let mu = s.minutes * c.background + signal;
-            let v = mu + c.cv2 * signal * signal;
-            sum += (s.counts - mu).powi(2) / v + (TAU * v).ln();
+            let (miss, v) = match s.shows {
+                Shows::Cell(other) => {
+                    let cell = c.cell(s, other);
+                    (cell.miss, cell.variance)
+                }
+                _ => {
+                    let signal = self.seen(s, &c, theta, &mut by[..I::DIM]).signal;
+                    let mu = s.minutes * c.background + signal;
+                    let own = self.own_variance(s, &c, mu).0;
+                    (s.counts - mu, own + c.cv2 * signal * signal)
+                }
+            };
+            sum += miss.powi(2) / v + (TAU * v).ln();
         }
         sum + self.minus2lnl_background(c.background)
     }
 
     /// The part of the background vials in it.
-    fn minus2lnl_background(&self, cpm: f64) -> f64 {
-        let (n_b, t_b) = self.background;
-        let expected = t_b * cpm;
-        2.0 * (expected - n_b * expected.ln() + self.ln_gamma_background)
+    fn minus2lnl_background(&self, b: f64) -> f64 {
+        match self.blanks {
+            Blanks::Counted {
+                counts,
+                minutes,
+                ln_gamma,
+            } => {
+                let expected = minutes * b;
+                2.0 * (expected - counts * expected.ln() + ln_gamma)
+            }
+            Blanks::Scattered { cpm, variance } => {
+                (cpm - b).powi(2) / variance + (TAU * variance).ln()
+            }
+            Blanks::Sampled => 0.0,
+        }
     }
 
     /// The squares of the rows of what is known beforehand: CV, dilution steps, scale errors.
@@ -311,17 +573,75 @@ impl<I: Isotherm> RackEvidence<I> {
         let cv = self.cv_prior.map_or(0.0, |(centre, sd)| {
             ((theta[Columns::of::<I>().cv()] - centre) / sd).powi(2)
         });
+        let noise = match (self.noise_prior, self.extra.noise) {
+            (Some((centre, sd)), Some(j)) => ((theta[j] - centre) / sd).powi(2),
+            _ => 0.0,
+        };
+        let cv = cv + noise;
         let steps = self.links.iter().map(|l| step(l, theta) / l.sd);
         let scales = self.scales.iter().map(|s| theta[s.column] / s.sd);
         cv + steps.chain(scales).map(|z| z * z).sum::<f64>()
     }
 
-    /// The expected counts of a tube of this rack at `theta`, and their variance.
-    pub fn expected(&self, sample: &Sample, theta: &[f64]) -> (f64, f64) {
+    /// What is expected of a vial of this rack at `theta`.
+    pub fn expected(&self, s: &Sample, theta: &[f64]) -> Expectation {
         let c = self.common(theta);
-        let (signal, _, _) = self.signal(sample, &c, theta, &mut [0.0; MOST_DIM][..I::DIM]);
-        let mu = sample.minutes * c.background + signal;
-        (mu, mu + c.cv2 * signal * signal)
+        if let Shows::Cell(other) = s.shows {
+            let cell = c.cell(s, other);
+            return Expectation {
+                mean: cell.mean,
+                variance: cell.variance,
+                of_cv: cell.of_cv,
+                per_nm: s.per_nm * c.scale(false),
+                taken: None,
+            };
+        }
+        let mut by = [0.0; MOST_DIM];
+        let signal = self.seen(s, &c, theta, &mut by[..I::DIM]).signal;
+        let mean = s.minutes * c.background + signal;
+        let of_cv = c.cv2 * signal * signal;
+        let per_nm = s.per_nm * c.scale(s.by_volume());
+        let taken = match s.shows {
+            Shows::Bound => Some(signal / per_nm / s.added),
+            Shows::Unbound => Some(1.0 - (signal / per_nm - s.rest) / s.added),
+            _ => None,
+        };
+        Expectation {
+            mean,
+            variance: self.own_variance(s, &c, mean).0 + of_cv,
+            of_cv,
+            per_nm,
+            taken: taken.filter(|_| s.assayed()),
+        }
+    }
+}
+
+/// What is expected of a vial.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Expectation {
+    /// Gross counts, or the signal.
+    pub mean: f64,
+    /// Their variance.
+    pub variance: f64,
+    /// The part of the variance that the tube CV makes.
+    pub of_cv: f64,
+    /// Counts for one nM of what is seen.
+    pub per_nm: f64,
+    /// The share of the label added that is bound; where the tube tells.
+    pub taken: Option<f64>,
+}
+
+/// How well the noise of a reader is known where the protocol has it: a factor of two either way, as the tube CV.
+const NOISE_SD_LN: f64 = 0.7;
+
+/// The standard deviation of a blank reading to begin a fit with.
+fn noise_at_first(blank: &Background, titration: &Titration) -> f64 {
+    let known = crate::assay::noise_known(titration);
+    let of_blanks = blank.between.sqrt();
+    match known {
+        Some(s) => s,
+        None if of_blanks > 0.0 => of_blanks,
+        None => 0.01 * blank.cpm().abs().max(1e-3),
     }
 }
 
@@ -331,99 +651,4 @@ const MOST_DIM: usize = 4;
 /// The dilution error that a link's row speaks of.
 fn step(l: &Link, theta: &[f64]) -> f64 {
     theta[l.column] - l.from.map_or(0.0, |c| theta[c])
-}
-
-impl<I: Isotherm> Evidence for RackEvidence<I> {
-    fn dim(&self) -> usize {
-        Columns::of::<I>().dilutions() + self.links.len() + self.scales.len()
-    }
-
-    fn cost(&self, theta: &[f64]) -> f64 {
-        self.minus2lnl(theta) + self.prior_term(theta)
-    }
-
-    fn rows(&self, theta: &[f64], rows: &mut Rows) {
-        self.cost_and_rows(theta, rows);
-    }
-
-    /// One pass over the tubes for both: every balance is solved once.
-    fn cost_and_rows(&self, theta: &[f64], rows: &mut Rows) -> f64 {
-        let mut minus2lnl = 0.0;
-        rows.clear(self.dim());
-        let at = Columns::of::<I>();
-        let c = self.common(theta);
-        let mut by = [0.0; MOST_DIM];
-        for (i, s) in self.samples.iter().enumerate() {
-            let (signal, by_ns, by_added) = self.signal(s, &c, theta, &mut by[..I::DIM]);
-            let blank = s.minutes * c.background;
-            let mu = blank + signal;
-            let v = mu + c.cv2 * signal * signal;
-            // A row of the derivatives of what the vial shows beyond background, each times `weight`.
-            let fill = |row: &mut [f64], weight: f64| {
-                by[..I::DIM]
-                    .iter()
-                    .zip(row.iter_mut())
-                    .for_each(|(d, m)| *m = d * weight);
-                row[at.ns()] = by_ns * weight;
-                if let Some(j) = s.column {
-                    row[j] = by_added * weight;
-                }
-                for e in &self.scales {
-                    row[e.column] = (e.on_added * by_added + e.on_counts * signal) * weight;
-                }
-            };
-            // mu' = signal' (and blank' = t b in the column of ln b); V' = mu' + 2 cv^2 signal signal'.
-            let miss = s.counts - mu;
-            minus2lnl += miss * miss / v + (TAU * v).ln();
-            let weight = 1.0 / v.sqrt();
-            let mean = rows.push(RowOf::Mean(i), miss * weight);
-            fill(mean, weight);
-            mean[at.background()] = blank * weight;
-            let weight = FRAC_1_SQRT_2 / v;
-            let spread = rows.push(RowOf::Variance(i), (miss * miss - v) * weight);
-            fill(spread, (1.0 + 2.0 * c.cv2 * signal) * weight);
-            spread[at.background()] = blank * weight;
-            spread[at.cv()] = 2.0 * c.cv2 * signal * signal * weight;
-        }
-        let b = c.background;
-        let (n_b, t_b) = self.background;
-        let root = (t_b * b).sqrt();
-        rows.push(RowOf::Background, (n_b - t_b * b) / root)[at.background()] = root;
-        if let Some((centre, sd)) = self.cv_prior {
-            rows.push(RowOf::CvPrior, -(theta[at.cv()] - centre) / sd)[at.cv()] = 1.0 / sd;
-        }
-        for l in &self.links {
-            let row = rows.push(RowOf::Dilution(l.column), -step(l, theta) / l.sd);
-            row[l.column] = 1.0 / l.sd;
-            if let Some(from) = l.from {
-                row[from] = -1.0 / l.sd;
-            }
-        }
-        for s in &self.scales {
-            rows.push(RowOf::Scale(s.column), -theta[s.column] / s.sd)[s.column] = 1.0 / s.sd;
-        }
-        minus2lnl + self.minus2lnl_background(b) + self.prior_term(theta)
-    }
-
-    fn scale(&self) -> Scale {
-        Scale::Known
-    }
-
-    fn limits(&self, j: usize) -> Limits {
-        self.limits.get(j).copied().unwrap_or(Limits::NONE)
-    }
-}
-
-impl<I: Isotherm> Parts for RackEvidence<I> {
-    fn parts(&self) -> usize {
-        self.samples.len()
-    }
-
-    fn without(&self, part: usize) -> Self {
-        let mut rest = self.clone();
-        if part < rest.samples.len() {
-            rest.samples.remove(part);
-        }
-        rest
-    }
 }

@@ -1,8 +1,8 @@
 //! Cold starts: where a fit begins when nothing is known but the readings.
 
 use super::evidence::Evidence;
-use super::rack::{Columns, RackEvidence, Sample};
-use crate::assay::Model;
+use super::rack::{Columns, RackEvidence, Sample, Shows};
+use crate::assay::{Model, Role};
 use crate::binding::{Block, Hill, Isotherm, Kind, OneClass, TwoClasses};
 use nalgebra::{Matrix3, Vector3};
 
@@ -81,8 +81,8 @@ pub(super) fn cold<I: Cold>(evidence: &RackEvidence<I>) -> Vec<Vec<f64>> {
 }
 
 fn from_shape<I: Cold>(evidence: &RackEvidence<I>, shape: &[f64]) -> Vec<f64> {
-    let (n_b, t_b) = evidence.background();
-    let b = n_b.max(0.5) / t_b;
+    let blank = evidence.background();
+    let b = blank.cpm().max(0.5 / blank.minutes);
     // One isotherm for every class of sites, with one nM of it and none of the others.
     let places: Vec<usize> = (0..I::DIM)
         .filter(|j| I::KINDS[*j] == Kind::Sites)
@@ -97,13 +97,25 @@ fn from_shape<I: Cold>(evidence: &RackEvidence<I>, shape: &[f64]) -> Vec<f64> {
         })
         .collect();
     let (mut gram, mut right) = (Matrix3::zeros(), Vector3::zeros());
+    let (mut filter, mut filters) = (0.0, 0.0);
     for s in evidence.samples() {
-        let per_nm = evidence.per_nm();
-        let m = (s.counts / s.minutes - b) / per_nm;
+        let Some(rough) = s.rough(b, evidence.gain()) else {
+            continue;
+        };
+        let m = rough.bound;
+        if s.role == Role::NoReceptor && evidence.filter_column().is_some() {
+            filter += m / s.added;
+            filters += 1.0;
+            continue;
+        }
         // Counting error and a common 6 % between tubes, so that no level rules the others.
-        let variance = s.counts.max(1.0) / (s.minutes * per_nm).powi(2) + (0.06 * m).powi(2);
+        let counted = match s.shows {
+            Shows::Unbound => s.added - m,
+            _ => m,
+        };
+        let variance = rough.variance + (0.06 * counted).powi(2);
         let mut x = Vector3::zeros();
-        let free = (s.added - m).clamp(0.02 * s.added, s.added);
+        let free = rough.free;
         x[0] = free;
         for (class, x) in classes.iter().zip(x.iter_mut().skip(1)) {
             *x = regressor(class, s, free);
@@ -115,7 +127,16 @@ fn from_shape<I: Cold>(evidence: &RackEvidence<I>, shape: &[f64]) -> Vec<f64> {
     let at = Columns::of::<I>();
     let mut theta = vec![0.0; evidence.dim()];
     theta[..I::DIM].copy_from_slice(shape);
-    theta[at.ns()] = found[0].unwrap_or(1e-4).ln();
+    let ns = found[0].unwrap_or(1e-4);
+    theta[at.ns()] = ns.ln();
+    if let Some(j) = evidence.filter_column() {
+        let of_filter = (filter / filters).clamp(1e-5, 0.5);
+        theta[j] = of_filter.ln();
+        theta[at.ns()] = (ns - of_filter).max(0.05 * ns).ln();
+    }
+    if let Some(j) = evidence.noise_column() {
+        theta[j] = evidence.noise_at_first().ln();
+    }
     for (k, j) in places.iter().enumerate() {
         let alone = 0.1 * right[k + 1].abs() / gram[(k + 1, k + 1)];
         let sites = found[k + 1].unwrap_or(alone);
@@ -162,6 +183,7 @@ fn positive(gram: &Matrix3<f64>, right: &Vector3<f64>, unknowns: usize) -> [Opti
 /// What one nM of the sites of a class would bring to a tube's bound, at this free label.
 fn regressor<I: Isotherm>(class: &I, s: &Sample, free: f64) -> f64 {
     match s.block {
+        _ if s.role == Role::NoReceptor => 0.0,
         Block::None => class.specific(free),
         Block::SameLigand(c) => class.specific(s.added + c) * s.added / (s.added + c),
         Block::Competitor(factor) => class.blocked(factor).specific(free),

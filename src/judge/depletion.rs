@@ -1,7 +1,7 @@
 //! How much of the label is bound.
 
-use crate::assay::{LevelNo, Role, Titration, counts_per_nm, observed};
-use crate::fit::Fit;
+use crate::assay::{LevelNo, Role};
+use crate::fit::{Fit, FittedTube};
 
 /// The tube that binds the largest share of its label.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -22,17 +22,13 @@ impl Depletion {
     }
 }
 
-/// The largest share of the label that is bound in a total tube, as fitted.
-pub fn depletion(titration: &Titration, fit: &Fit) -> Option<Depletion> {
-    let per_nm = counts_per_nm(&titration.protocol);
-    let background = fit.value("background_cpm");
-    let share = |t: &crate::fit::FittedTube| {
-        let minutes = observed(titration, t.tube, t.used)?.minutes;
-        let added = titration.level(t.level)?.added.base();
-        let bound = (t.expected / minutes - background) / per_nm;
+/// The largest share of the label that is bound in a total tube, as fitted; a dialysis cell tells of none, since its free label
+/// is measured.
+pub fn depletion(fit: &Fit) -> Option<Depletion> {
+    let share = |t: &FittedTube| {
         Some(Depletion {
-            level: t.level,
-            share: bound / added,
+            level: t.level?,
+            share: t.taken?,
         })
     };
     fit.tubes

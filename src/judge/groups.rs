@@ -34,8 +34,9 @@ impl Group {
 pub(super) fn groups(fit: &Fit) -> Vec<Group> {
     let mut found: BTreeMap<(LevelNo, Role), Group> = BTreeMap::new();
     for t in fit.tubes.iter().filter(|t| t.used) {
-        let group = found.entry((t.level, t.role)).or_insert_with(|| Group {
-            level: t.level,
+        let Some(level) = t.level else { continue };
+        let group = found.entry((level, t.role)).or_insert_with(|| Group {
+            level,
             role: t.role,
             tubes: Vec::new(),
             residuals: Vec::new(),

@@ -1,7 +1,7 @@
 //! How tubes scatter about a fit, whatever was known of their CV beforehand.
 
 use crate::binding::Isotherm;
-use crate::fit::{Evidence, RackEvidence, RowOf, Rows, f_upper_tail};
+use crate::fit::{Evidence, Expectation, RackEvidence, RowOf, Rows, f_upper_tail};
 use nalgebra::DMatrix;
 
 /// The scatter of tubes about a fit that they are part of.
@@ -89,9 +89,9 @@ impl Scatter {
     }
 }
 
-/// The share of a tube's variance that is not that of counting, from the counts expected and their variance.
-pub(super) fn share_of_cv((expected, variance): (f64, f64)) -> f64 {
-    (variance - expected) / variance
+/// The share of a tube's variance that is not that of counting.
+pub(super) fn share_of_cv(of: Expectation) -> f64 {
+    of.of_cv / of.variance
 }
 
 /// `a Cov a'` of a row; it touches few columns.

@@ -105,7 +105,7 @@ fn step(theta: &[f64], cov: &DMatrix<f64>, j: usize, from: Option<usize>) -> (f6
 
 /// The steps of a fit that has no columns for them, each by the score of a column of its own.
 fn scored<I: Cold>(evidence: &RackEvidence<I>, fit: &Fit) -> Vec<Step> {
-    let mut levels: Vec<LevelNo> = evidence.samples().iter().map(|s| s.level).collect();
+    let mut levels: Vec<LevelNo> = evidence.samples().iter().filter_map(|s| s.level).collect();
     levels.sort();
     levels.dedup();
     let mut rows = Rows::default();

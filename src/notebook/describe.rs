@@ -3,8 +3,8 @@
 use super::Notebook;
 use super::entry::{Count, Entry, What};
 use super::rejection::Rejection;
-use crate::assay::{Reading, ReadingId, Scale, Suspicion, TubeNo};
-use crate::units::{clean, fixed, grouped};
+use crate::assay::{Reading, ReadingId, Suspicion, TubeNo};
+use crate::units::{clean, fixed, grouped, short};
 
 /// What a reading shows, with its unit: `2 258 counts`, `1 203 cpm`.
 pub fn reading_in_words(reading: &Reading) -> String {
@@ -14,10 +14,14 @@ pub fn reading_in_words(reading: &Reading) -> String {
     } else {
         fixed(reading.value, 2)
     };
-    match reading.scale {
-        Scale::Counts => format!("{number} counts"),
-        Scale::Cpm => format!("{number} cpm"),
+    let mut text = format!("{number} {}", reading.scale.unit());
+    if let Some(quench) = reading.quench {
+        text.push_str(&format!(", quench {}", short(quench, 9)));
     }
+    if let Some(at) = reading.counted {
+        text.push_str(&format!(", at {}", at.clock()));
+    }
+    text
 }
 
 /// A reason without control characters.

@@ -4,7 +4,7 @@ use super::describe::{in_short, reading_in_words};
 use super::entry::{Count, Entry, What};
 use super::rejection::Rejection;
 use crate::assay::{
-    Kept, Level, Loss, Note, Protocol, ReadingId, Suspicion, Titration, Tube, TubeNo,
+    Kept, Level, Loss, Note, Protocol, ReadingId, Suspicion, Titration, Tube, TubeNo, check_reading,
 };
 use crate::units::clean;
 use std::collections::{BTreeMap, BTreeSet};
@@ -186,6 +186,10 @@ impl State {
             }
             _ => {}
         }
+        if let Some(of) = self.titration.tube(tube) {
+            check_reading(&self.titration, of, &count.reading, count.again)
+                .map_err(|cause| Rejection::Reading { tube, cause })?;
+        }
         self.titration.kept.entry(tube).or_default().push(Kept {
             id,
             reading: count.reading.clone(),
@@ -264,9 +268,14 @@ impl State {
                 if !r.own_scale {
                     r.scale = t.protocol.counter.fields.scale();
                 }
-                let tube = tube.no;
-                r.check()
-                    .map_err(|cause| Rejection::Reading { tube, cause })?;
+            }
+        }
+        let t = &self.titration;
+        for tube in &t.tubes {
+            for (n, kept) in t.kept(tube.no).iter().enumerate() {
+                let no = tube.no;
+                check_reading(t, tube, &kept.reading, n > 0)
+                    .map_err(|cause| Rejection::Reading { tube: no, cause })?;
             }
         }
         Ok(())

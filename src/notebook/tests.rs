@@ -93,12 +93,12 @@ fn extended(level: u16, vial: u32) -> What {
             added: nm("20 nM"),
             made: Made::FromStock,
         }],
-        tubes: vec![Tube {
-            no: TubeNo(vial),
-            role: Role::Total,
-            level: Some(LevelNo(level)),
-            replicate: 1,
-        }],
+        tubes: vec![Tube::new(
+            TubeNo(vial),
+            Role::Total,
+            Some(LevelNo(level)),
+            1,
+        )],
     }
 }
 

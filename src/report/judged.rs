@@ -256,11 +256,10 @@ pub fn remarks(t: &Titration, analysis: &Analysis) -> Vec<String> {
     said
 }
 
-fn role_of(role: Role) -> &'static str {
+fn role_of(role: Role) -> String {
     match role {
-        Role::Total => " (total)",
-        Role::Nonspecific => " (nonspecific)",
-        Role::Background => "",
+        Role::Background => String::new(),
+        other => format!(" ({other})"),
     }
 }
 

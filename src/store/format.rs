@@ -1,7 +1,7 @@
 //! The text of a notebook: one RON document, one entry to a line, each line chained to the one before.
 //!
 //! ```text
-//! (format: 2, entries: [
+//! (format: 3, entries: [
 //! (n:1,at:"2031-05-04T10:14:03+02:00",who:"ann",what:Opened(...)), // 9f3c0a...
 //! (n:2,at:"2031-05-04T10:15:40+02:00",who:"ann",what:Counted(...)), // 71d2e4...
 //! ])
@@ -12,7 +12,7 @@
 //! (the first line of the file, for the first) and the line up to and with its comma. It shows damage and careless
 //! editing; who sets out to forge a notebook can compute it too.
 //!
-//! Formats: 1 as first released; 2 knows scale errors and a chosen law of binding in the protocol. Lines of an older
+//! Formats: 1 as first released; 2 knows scale errors and a chosen law of binding in the protocol; 3 all ways of counting. Lines of an older
 //! format are lines of the newer ones too, so that it is enough to link them anew.
 
 use crate::notebook::{Entry, Notebook, Rejection};
@@ -23,7 +23,7 @@ use std::fmt::Write;
 use std::sync::Arc;
 
 /// The format written here, and the newest one read.
-pub const FORMAT: u32 = 2;
+pub const FORMAT: u32 = 3;
 
 /// The largest notebook read or written, in bytes: 32 MiB.
 pub const MOST_BYTES: usize = 32 * 1024 * 1024;

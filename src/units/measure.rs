@@ -1,5 +1,6 @@
 //! Measures with a dimension, parsed from text with a unit.
 
+use super::SECONDS_PER_YEAR;
 use super::number::{Mark, NumberError, parse_decimal};
 use serde::{Deserialize, Deserializer, Serialize, Serializer, de};
 use std::fmt;
@@ -45,7 +46,10 @@ dimensions! {
     MilliGram, Mass, "a mass", [("mg", 1.0), ("ug", 1e-3), ("g", 1e3), ("ng", 1e-6)];
     /// A length of time, in minutes.
     Minute, Minutes, "a time",
-        [("min", 1.0), ("s", 1.0 / 60.0), ("h", 60.0), ("d", 1440.0)];
+        [("min", 1.0), ("s", 1.0 / 60.0), ("h", 60.0), ("d", 1440.0), ("y", SECONDS_PER_YEAR / 60.0),
+         ("ms", 1.0 / 60_000.0), ("us", 1.0 / 60_000_000.0)];
+    /// A rate, in counts per minute.
+    Cpm, Rate, "a rate", [("cpm", 1.0), ("cps", 60.0)];
     /// A share of one.
     Share, Fraction, "a fraction", [("", 1.0), ("%", 0.01)];
     /// A number of cells.
@@ -242,6 +246,19 @@ impl<D: Dimension> Typed<Measure<D>> {
         self.value.base()
     }
 
+    /// Nothing typed; it stands for one in the base unit, so that it changes nothing it is multiplied with.
+    pub fn unset() -> Self {
+        Typed {
+            text: String::new(),
+            value: Measure::of(1.0),
+        }
+    }
+
+    /// Whether nothing was typed.
+    pub fn is_unset(&self) -> bool {
+        self.text.is_empty()
+    }
+
     /// The mark the text is written in, where it has one.
     pub fn mark(&self) -> Option<Mark> {
         self.text.chars().find_map(|c| match c {
@@ -320,6 +337,15 @@ mod tests {
         assert_eq!(Fraction::parse("95 %", Mark::Point).unwrap().base(), 0.95);
         assert_eq!(Volume::parse("7 uL", Mark::Point).unwrap().base(), 0.007);
         close(Minutes::parse("90 s", Mark::Point).unwrap().base(), 1.5);
+        close(
+            Minutes::parse("5 us", Mark::Point).unwrap().base(),
+            5e-6 / 60.0,
+        );
+        // The year of ICRP Publication 107, 365.2422 days.
+        close(
+            Minutes::parse("12.32 y", Mark::Point).unwrap().base(),
+            12.32 * 365.2422 * 1440.0,
+        );
         close(
             CellCount::parse("2.5e5", Mark::Point).unwrap().base(),
             2.5e5,

@@ -232,7 +232,7 @@ fn preview(draft: &Draft) -> Vec<String> {
 
 /// The rack that a ladder lays: a line a level with its vial numbers.
 fn rack(ladder: &Ladder, mark: Mark) -> Vec<String> {
-    let Ok((levels, tubes)) = ladder.lay(mark) else {
+    let Ok((levels, tubes)) = ladder.lay(mark, &crate::assay::Counted::Bound) else {
         return Vec::new();
     };
     let vials = |role: Role, level| {
@@ -282,7 +282,7 @@ fn worked(forms: &Forms) -> String {
     let shown = |v: f64, decimals: usize| fixed(v, decimals).replace('.', &mark.char().to_string());
     let cpm = match p.counter.fields.scale() {
         crate::assay::Scale::Counts => parse_counts(&typed, mark).map(|n| (n / minutes, n)),
-        crate::assay::Scale::Cpm => parse_decimal(&typed, mark).map(|r| (r, r * minutes)),
+        _ => parse_decimal(&typed, mark).map(|r| (r, r * minutes)),
     };
     match (cpm, p.counter.fields.scale()) {
         (Err(e), _) => format!("  printout: {e}"),
@@ -292,7 +292,7 @@ fn worked(forms: &Forms) -> String {
             shown(cpm, 1),
             short(cpm * per_cpm, 3)
         ),
-        (Ok((cpm, counts)), crate::assay::Scale::Cpm) => format!(
+        (Ok((cpm, counts)), _) => format!(
             "  printout {typed} cpm, {} min = {} counts = {} fmol, background included",
             shown(minutes, 2),
             grouped(counts),

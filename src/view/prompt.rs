@@ -110,6 +110,8 @@ fn entry(app: &Desk) -> (String, String) {
     let what = match counter.fields.scale() {
         Scale::Counts => "gross counts",
         Scale::Cpm => "gross cpm",
+        Scale::Dpm => "gross dpm",
+        other => other.unit(),
     };
     let typed = app.bench.line.value().to_string();
     let label = match &app.bench.field {

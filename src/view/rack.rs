@@ -117,7 +117,8 @@ impl Table {
             if at == Some(l.no) {
                 table.here = table.rows.len();
             }
-            let shown = short(unit.from_nm(l.added.base()), 3);
+            let nm = t.level_nm(l.no).unwrap_or(l.added.base());
+            let shown = short(unit.from_nm(nm), 3);
             table.level(app, l.no, &shown, (totals, others), width);
         }
         table

@@ -30,7 +30,7 @@ fn sound(tube: &Tube, added: f64) -> f64 {
     match tube.role {
         Role::Background => 250.0,
         Role::Nonspecific => (50.0 + 160.0 * added * uneven).round(),
-        Role::Total => (50.0 + (160.0 * added + 1600.0 * added / (0.5 + added)) * uneven).round(),
+        _ => (50.0 + (160.0 * added + 1600.0 * added / (0.5 + added)) * uneven).round(),
     }
 }
 
@@ -269,8 +269,8 @@ fn total_and_nonspecific_alike() {
 fn total_below_nonspecific() {
     honest(&rack(example(), |t, added| match t.role {
         Role::Background => 250.0,
-        Role::Total => (50.0 + 100.0 * added).round(),
         Role::Nonspecific => (50.0 + 160.0 * added).round(),
+        _ => (50.0 + 100.0 * added).round(),
     }));
 }
 
@@ -330,6 +330,8 @@ fn huge_counts() {
         // With an activity and a volume to match it is the sound rack, only counted better.
         let t = sheet(&[
             ("\"80 Ci/mmol\"", &format!("\"{activity}\"")),
+            // A nuclide that can be as hot as that.
+            ("label: \"H-3\"", "label: \"hot\", half_life: \"1 s\""),
             ("\"0.5 mL\"", "\"500 mL\""),
         ]);
         let fit = fitted(&rack(t, |t, added| times * sound(t, added)));
@@ -378,8 +380,8 @@ fn identical_counts_everywhere() {
 fn counts_falling_with_concentration() {
     honest(&rack(example(), |t, added| match t.role {
         Role::Background => 250.0,
-        Role::Total => (50.0 + 1000.0 / added).round(),
         Role::Nonspecific => (50.0 + 100.0 / added).round(),
+        _ => (50.0 + 1000.0 / added).round(),
     }));
 }
 

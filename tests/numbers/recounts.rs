@@ -58,7 +58,8 @@ fn the_cv_acts_once_however_long_a_tube_is_counted() {
         let e = RackEvidence::<OneClass>::new(t, true).unwrap();
         let tube = find(t, Role::Total, Some(5), 1);
         let i = e.samples().iter().position(|s| s.tube == tube.no).unwrap();
-        e.expected(&e.samples()[i], &theta)
+        let of = e.expected(&e.samples()[i], &theta);
+        (of.mean, of.variance)
     };
     let (mu, v) = place(&t);
     // Ten times the minutes: ten times the mean, and a tube part of the variance a hundred times as large, not ten.

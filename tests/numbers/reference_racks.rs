@@ -107,6 +107,10 @@ pub fn titration(rack: &Rack) -> Titration {
     p.incubation.volume = typed(s.volume_ml, "mL");
     p.counter.efficiency = typed(s.efficiency, "");
     p.ligand.specific_activity = typed(s.sa_ci_per_mmol, "Ci/mmol");
+    // No more of H-3 than ten atoms give: what is hotter is labelled with iodine.
+    if s.sa_ci_per_mmol > 290.0 {
+        p.ligand.label = "I-125".into();
+    }
     p.separation.fraction = typed(s.fraction_counted, "");
     p.nonspecific.concentration = typed(s.unlabelled.concentration_nm, "nM");
     p.nonspecific.unlabelled = match s.unlabelled.kind.as_str() {

@@ -276,6 +276,7 @@ fn scarce<I: Isotherm>(of_law: &[f64]) {
         ns,
         &[
             ("\"80 Ci/mmol\"", "\"8e7 Ci/mmol\""),
+            ("label: \"H-3\"", "label: \"hot\", half_life: \"1 s\""),
             ("sticks: ToPreparation", "sticks: ToFilter"),
             ("unlabelled: SameLigand", "unlabelled: Other(name: \"x\")"),
             ("dilution_error: \"2 %\"", "dilution_error: \"0\""),

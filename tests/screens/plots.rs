@@ -221,7 +221,7 @@ fn residuals_stand_side_by_side_at_their_level() {
             let tubes: Vec<_> = fit.tubes.iter().filter(|f| f.role == role).collect();
             assert_eq!(tubes.len(), series.points.len());
             for (f, p) in tubes.iter().zip(&series.points) {
-                let added = t.level(f.level).unwrap().added.base();
+                let added = t.level(f.level.unwrap()).unwrap().added.base();
                 assert!((column(p.x) - column(added)).abs() < 2.0, "{f:?} {p:?}");
             }
         }
@@ -380,7 +380,7 @@ fn error_bars_are_those_of_the_fitted_counts() {
     let totals: Vec<_> = fit_order(&t, fit);
     assert_eq!(totals.len(), 16);
     for (n, f) in totals.iter().enumerate() {
-        let added = t.level(f.level).unwrap().added.base();
+        let added = t.level(f.level.unwrap()).unwrap().added.base();
         let of = |counts: f64| {
             let bound = (counts / 2.0 - blank) / nm;
             let free = match t.protocol.nonspecific.sticks {

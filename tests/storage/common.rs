@@ -112,12 +112,7 @@ pub fn everything() -> Notebook {
                 added: Amount::parse("20 nM", Mark::Point).unwrap(),
                 made: Made::FromLevel(LevelNo(2)),
             }],
-            tubes: vec![Tube {
-                no: TubeNo(8),
-                role: Role::Total,
-                level: Some(LevelNo(3)),
-                replicate: 1,
-            }],
+            tubes: vec![Tube::new(TubeNo(8), Role::Total, Some(LevelNo(3)), 1)],
         },
         What::TakenBack(9),
         What::Amended {

@@ -1,12 +1,12 @@
 //! What is typed, read.
 
-use super::super::fields::{BLANKS, LAWS, READING, SITES, STICKS, UNITS};
+use super::super::fields::{BLANKS, LAWS, SITES, STICKS, UNITS};
 use super::super::form::Form;
 use super::Errors;
 use crate::assay::{
     BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Except, Fields, Incubation,
     Ligand, Model, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, ScaleErrors,
-    Separation, SitesUnit, Sticks, Unlabelled,
+    Separation, SitesUnit, Sticks, Unlabelled, When,
 };
 use crate::units::{Amount, Dimension, Fraction, Mark, Measure, NanoMolar, Typed, parse_decimal};
 
@@ -97,11 +97,10 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
     });
     let activity_date = match a.form.value("activity date") {
         "" => None,
-        text => match text.parse() {
+        text => match When::parse(text) {
             Ok(date) => Some(date),
-            Err(_) => {
-                let what = format!("`{text}`: a date is written as 2031-05-04");
-                a.wrong("activity date", what);
+            Err(e) => {
+                a.wrong("activity date", e.to_string());
                 None
             }
         },
@@ -125,12 +124,10 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
     } else {
         SitesUnit::InTube
     };
-    let fields = [
-        Fields::Counts,
-        Fields::CountsMinutes,
-        Fields::Cpm,
-        Fields::CpmMinutes,
-    ][b.choice("typed per vial", &READING)];
+    let fields = Fields::parse(b.form.value("typed per vial")).unwrap_or_else(|e| {
+        b.wrong("typed per vial", e.to_string());
+        Fields::default()
+    });
     let blank = [
         BlankKind::Scintillant,
         BlankKind::ScintillantAndFilter,
@@ -144,6 +141,10 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             label: a.needed("label"),
             specific_activity: a.amount("specific activity"),
             activity_date,
+            decay: None,
+            half_life: None,
+            atoms: None,
+            bindable: None,
             lot: a.text("lot"),
         },
         receptor: Receptor {
@@ -156,6 +157,7 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             volume: a.amount("volume"),
             temperature: a.maybe("temperature"),
             time: a.maybe("incubation time"),
+            assayed: None,
             buffer: a.text("buffer"),
             vehicle: a.maybe("vehicle"),
         },
@@ -165,6 +167,8 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             concentration: a.amount("unlabelled"),
         },
         separation: Separation {
+            counted: crate::assay::Counted::Bound,
+            added_counted: None,
             fraction: a
                 .maybe("fraction counted")
                 .unwrap_or(Separation::default().fraction),
@@ -176,6 +180,10 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
         counter: Counter {
             name: b.text("counter"),
             efficiency: b.amount("efficiency"),
+            quench: Vec::new(),
+            dead_time: None,
+            subtracted: None,
+            run: None,
             fields,
             minutes: b.amount("minutes per tube"),
             background: BackgroundVials {

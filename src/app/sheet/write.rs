@@ -1,10 +1,9 @@
 //! A protocol as it is typed.
 
-use super::super::fields::{BLANKS, LAWS, MARKS, READING, SITES, STICKS};
+use super::super::fields::{BLANKS, LAWS, MARKS, SITES, STICKS};
 use super::super::form::Form;
 use crate::assay::{
-    BlankKind, CvPrior, Fields, Model, Protocol, ReceptorAmount, ScaleErrors, SitesUnit, Sticks,
-    Unlabelled,
+    BlankKind, CvPrior, Model, Protocol, ReceptorAmount, ScaleErrors, SitesUnit, Sticks, Unlabelled,
 };
 use crate::units::{Fraction, Mark, Typed, short};
 use tui_input::Input;
@@ -111,13 +110,7 @@ pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
     match name {
         "counter" => c.name.clone(),
         "efficiency" => c.efficiency.to_string(),
-        "typed per vial" => READING[match c.fields {
-            Fields::Counts => 0,
-            Fields::CountsMinutes => 1,
-            Fields::Cpm => 2,
-            Fields::CpmMinutes => 3,
-        }]
-        .into(),
+        "typed per vial" => c.fields.to_string(),
         "minutes per tube" => c.minutes.to_string(),
         "background minutes" => c.background.minutes.to_string(),
         "background vial" => BLANKS[match c.background.blank {

@@ -1,6 +1,7 @@
 //! Whether a protocol is one that a titration can have.
 
-use super::super::reading::MOST_MINUTES;
+mod counting;
+
 use super::{Numbers, Protocol, ReceptorAmount, Unlabelled};
 use crate::units::{Amount, Dimension, Mark, short};
 
@@ -35,13 +36,6 @@ impl Protocol {
         self.check_texts()?;
         let mark = self.counter.mark;
         let checks = Checks { mark };
-        checks.within(
-            "ligand.specific_activity",
-            &self.ligand.specific_activity,
-            0.0,
-            1e9,
-            "more than zero",
-        )?;
         checks.within(
             "incubation.volume",
             &self.incubation.volume,
@@ -96,27 +90,9 @@ impl Protocol {
             1e6,
             "more than zero",
         )?;
-        checks.within(
-            "counter.efficiency",
-            &self.counter.efficiency,
-            0.0,
-            1.0,
-            "more than zero and at most 100 %",
-        )?;
-        checks.within(
-            "counter.minutes",
-            &self.counter.minutes,
-            0.0,
-            MOST_MINUTES,
-            "more than zero and at most 30 d",
-        )?;
-        checks.within(
-            "counter.background.minutes",
-            &self.counter.background.minutes,
-            0.0,
-            MOST_MINUTES,
-            "more than zero and at most 30 d",
-        )?;
+        self.check_label(&checks)?;
+        self.check_separation(&checks)?;
+        self.check_counter(&checks)?;
         match &self.receptor.amount {
             ReceptorAmount::Unknown => {}
             ReceptorAmount::Protein(m) => checks.within(
@@ -228,6 +204,15 @@ pub(super) struct Checks {
 }
 
 impl Checks {
+    /// Something was typed.
+    fn given<D: Dimension>(&self, field: &str, a: &Amount<D>) -> Result<(), ProtocolError> {
+        if a.is_unset() {
+            Err(ProtocolError::new(field, "needed"))
+        } else {
+            Ok(())
+        }
+    }
+
     fn marked<D: Dimension>(&self, field: &str, a: &Amount<D>) -> Result<(), ProtocolError> {
         match a.mark() {
             Some(found) if found != self.mark => Err(ProtocolError::new(

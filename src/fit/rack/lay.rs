@@ -1,8 +1,10 @@
 //! From a titration to samples, columns and limits.
 
-use super::{Link, NS_FLOOR, Sample, ScaleColumn};
+use super::sample::{OtherSide, Sample, Shows};
+use super::{Link, NS_FLOOR, ScaleColumn};
 use crate::assay::{
-    Level, LevelNo, Made, Observed, Role, ScaleErrors, Titration, TubeNo, Unlabelled,
+    Level, LevelNo, Made, Observed, Role, ScaleErrors, Seen, Side, Titration, Tube, Unlabelled,
+    per_nm, seen_as, volume_shift,
 };
 use crate::binding::{Block, Isotherm, Kind};
 use crate::fit::Limits;
@@ -15,34 +17,99 @@ const KD_SEARCH: f64 = 1000.0;
 /// Where a Hill coefficient is searched.
 const EXPONENTS: (f64, f64) = (0.1, 10.0);
 
-/// The tubes for which `counts` has a reading, background vials apart.
+/// The vials for which `counts` has a reading; background vials only of a reader, where they are blanks.
 pub(super) fn samples(
     titration: &Titration,
-    counts: impl Fn(TubeNo) -> Option<Observed>,
+    counts: impl Fn(&Tube) -> Option<Observed>,
 ) -> Vec<Sample> {
+    let signal = titration.protocol.separation.counted.is_signal();
     let levels = levels(titration);
-    let tubes = titration.tubes.iter();
-    tubes
-        .filter(|t| t.role != Role::Background)
-        .filter_map(|t| {
-            let level = levels.get(&t.level?)?;
-            let o = counts(t.no)?;
-            Some(Sample {
-                tube: t.no,
-                role: t.role,
-                level: level.no,
-                added: level.added.base(),
-                counts: o.counts,
-                minutes: o.minutes,
-                block: if t.role == Role::Nonspecific {
-                    block(titration)
-                } else {
-                    Block::None
-                },
-                column: None,
-            })
+    let left = titration.protocol.concentration_left();
+    let bindable = titration.protocol.ligand.bindable();
+    let for_one: BTreeMap<Role, f64> = Role::ALL
+        .iter()
+        .filter_map(|r| {
+            let tube = titration.tubes.iter().find(|t| t.role == *r)?;
+            Some((
+                *r,
+                per_nm(&titration.protocol, seen_as(&titration.protocol, tube)?),
+            ))
         })
-        .collect()
+        .collect();
+    let sample = |t: &Tube| {
+        let o = counts(t)?;
+        let plain = Sample {
+            tube: t.no,
+            role: t.role,
+            level: t.level,
+            added: 0.0,
+            rest: 0.0,
+            counts: o.counts,
+            minutes: o.minutes,
+            per_nm: o.signal_minutes * for_one.get(&t.role).copied().unwrap_or(1.0),
+            shows: Shows::Known,
+            block: Block::None,
+            column: None,
+        };
+        if t.role == Role::Background {
+            return signal.then_some(plain);
+        }
+        if t.role == Role::Standard {
+            let added = titration.standard_nm(t)?;
+            return Some(Sample { added, ..plain });
+        }
+        let all = levels.get(&t.level?)?.added.base() * left;
+        let of_label = Sample {
+            added: all * bindable,
+            rest: all * (1.0 - bindable),
+            block: if t.role == Role::Nonspecific {
+                block(titration)
+            } else {
+                Block::None
+            },
+            ..plain
+        };
+        let shows = match seen_as(&titration.protocol, t)? {
+            Seen::Bound => Shows::Bound,
+            Seen::Unbound => Shows::Unbound,
+            Seen::Added => Shows::Added,
+            Seen::Standard => Shows::Known,
+            Seen::Side(Side::Ligand) => return None,
+            Seen::Side(Side::Protein) => Shows::Cell(other_side(titration, t, all, &counts)?),
+        };
+        let of_side = match seen_as(&titration.protocol, t)? {
+            side @ Seen::Side(_) => o.signal_minutes * per_nm(&titration.protocol, side),
+            _ => of_label.per_nm,
+        };
+        Some(Sample {
+            shows,
+            per_nm: of_side,
+            ..of_label
+        })
+    };
+    titration.tubes.iter().filter_map(sample).collect()
+}
+
+/// The ligand side of a cell.
+fn other_side(
+    titration: &Titration,
+    tube: &Tube,
+    added: f64,
+    counts: impl Fn(&Tube) -> Option<Observed>,
+) -> Option<OtherSide> {
+    let p = &titration.protocol;
+    let o = counts(titration.other_side(tube)?)?;
+    let unlabelled = match (tube.role, block(titration)) {
+        (Role::Nonspecific, Block::SameLigand(c)) => c,
+        _ => 0.0,
+    };
+    Some(OtherSide {
+        counts: o.counts,
+        minutes: o.minutes,
+        per_nm: o.signal_minutes * per_nm(p, Seen::Side(Side::Ligand)),
+        shift: volume_shift(p),
+        all_over_label: (added + unlabelled) / added,
+    })
 }
 
 fn levels(titration: &Titration) -> BTreeMap<LevelNo, &Level> {
@@ -78,7 +145,7 @@ pub(super) fn links(
     };
     let mut wanted: BTreeMap<LevelNo, usize> = BTreeMap::new();
     for s in samples.iter() {
-        let mut at = Some(s.level);
+        let mut at = s.level;
         while let Some(no) = at {
             if wanted.insert(no, 0).is_some() {
                 break;
@@ -90,7 +157,7 @@ pub(super) fn links(
     samples
         .iter_mut()
         .chain(left_out)
-        .for_each(|s| s.column = wanted.get(&s.level).copied());
+        .for_each(|s| s.column = s.level.and_then(|l| wanted.get(&l).copied()));
     wanted
         .iter()
         .map(|(no, column)| Link {
@@ -104,13 +171,14 @@ pub(super) fn links(
 
 /// A column for every error that was given and that a tube can feel.
 ///
-/// A volume that is larger dilutes the label and leaves its amount: fewer nM, and more counts for one nM.
+/// A volume that is larger dilutes the label and leaves its amount: fewer nM, and more counts for one nM of what is in all of it; an
+/// aliquot's counts do not know of it.
 pub(super) fn scales(errors: &ScaleErrors, first: usize) -> Vec<ScaleColumn> {
     let given = [
-        (&errors.stock, 1.0, 0.0),
-        (&errors.specific_activity, 0.0, 1.0),
-        (&errors.efficiency, 0.0, 1.0),
-        (&errors.volume, -1.0, 1.0),
+        (&errors.stock, 1.0, [0.0, 0.0]),
+        (&errors.specific_activity, 0.0, [1.0, 1.0]),
+        (&errors.efficiency, 0.0, [1.0, 1.0]),
+        (&errors.volume, -1.0, [0.0, 1.0]),
     ];
     given
         .into_iter()
