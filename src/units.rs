@@ -4,6 +4,7 @@
 //! person typed beside it, so that a record shows `3.1 TBq/mmol` for ever and not what we made of it.
 
 mod measure;
+mod nuclide;
 mod number;
 mod show;
 
@@ -12,6 +13,7 @@ pub use measure::{
     Fraction, Mass, Measure, MilliGram, MilliLitre, Minute, Minutes, NanoMolar, Share,
     SpecificActivity, Typed, UnitError, Volume,
 };
+pub use nuclide::{Nuclide, carrier_free, during_count, left_after};
 pub use number::{Mark, NumberError, parse_counts, parse_decimal};
 pub use show::{clean, fixed, grouped, short, significant};
 

@@ -1,5 +1,6 @@
 //! Measures with a dimension, parsed from text with a unit.
 
+use super::SECONDS_PER_YEAR;
 use super::number::{Mark, NumberError, parse_decimal};
 use serde::{Deserialize, Deserializer, Serialize, Serializer, de};
 use std::fmt;
@@ -45,7 +46,7 @@ dimensions! {
     MilliGram, Mass, "a mass", [("mg", 1.0), ("ug", 1e-3), ("g", 1e3), ("ng", 1e-6)];
     /// A length of time, in minutes.
     Minute, Minutes, "a time",
-        [("min", 1.0), ("s", 1.0 / 60.0), ("h", 60.0), ("d", 1440.0)];
+        [("min", 1.0), ("s", 1.0 / 60.0), ("h", 60.0), ("d", 1440.0), ("y", SECONDS_PER_YEAR / 60.0)];
     /// A share of one.
     Share, Fraction, "a fraction", [("", 1.0), ("%", 0.01)];
     /// A number of cells.
@@ -320,6 +321,13 @@ mod tests {
         assert_eq!(Fraction::parse("95 %", Mark::Point).unwrap().base(), 0.95);
         assert_eq!(Volume::parse("7 uL", Mark::Point).unwrap().base(), 0.007);
         close(Minutes::parse("90 s", Mark::Point).unwrap().base(), 1.5);
+        // The year of ICRP Publication 107, 365.2422 days.
+        close(
+            Minutes::parse("12.32 y", Mark::Point).unwrap().base(),
+            12.32 * 365.2422 * 1440.0,
+        );
+        let e = Minutes::parse("3 weeks", Mark::Point).unwrap_err();
+        assert!(e.to_string().ends_with("min, s, h, d, y"), "{e}");
         close(
             CellCount::parse("2.5e5", Mark::Point).unwrap().base(),
             2.5e5,
