@@ -10,6 +10,7 @@
 mod balance;
 mod choosing;
 mod conversions;
+mod counting;
 mod coverage;
 mod deletion;
 mod dilution;
