@@ -214,6 +214,7 @@ pub fn check_reading(
     reading: &Reading,
     again: bool,
 ) -> Result<(), ReadingError> {
+    reading.check()?;
     let turn = turn(titration, tube);
     let counting = Counting::of(&titration.protocol);
     let known = again && titration.protocol.short_lived();

@@ -79,7 +79,6 @@ impl<'p> Counting<'p> {
         turn: Turn,
         work: &mut W,
     ) -> Result<Observed, ReadingError> {
-        reading.check()?;
         let signal = self.protocol.separation.counted.is_signal();
         if signal != (reading.scale == Scale::Signal) {
             return Err(ReadingError::OtherInstrument {
