@@ -16,6 +16,7 @@ mod deletion;
 mod dilution;
 mod hard_racks;
 mod judging;
+mod kinds;
 mod models;
 mod nist;
 mod nist_models;
