@@ -1164,7 +1164,7 @@ def rack_quench():
 def rack_background():
     s = settings("bound_counted", background_scatter=True)
     vials = vials_of(ladder(0.05, 5.0, 8), background=(10.0, 10.0, 10.0, 10.0, 5.0, 20.0), minutes=5.0)
-    return simulate(dict(settings=s, vials=vials), truth(0.5, 0.008, 0.0008, background_sd_cpm=4.0), 20413)
+    return simulate(dict(settings=s, vials=vials), truth(0.5, 0.008, 0.0008, background_sd_cpm=8.0), 20413)
 
 
 RACKS = dict(
