@@ -10,6 +10,7 @@
 mod balance;
 mod choosing;
 mod conversions;
+mod counted;
 mod counting;
 mod coverage;
 mod deletion;
