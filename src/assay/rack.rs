@@ -475,6 +475,68 @@ impl Titration {
         Ok(())
     }
 
+    /// Whether tubes are of the kinds that a protocol counts: cells with both sides, standards that it has.
+    ///
+    /// # Errors
+    /// A sentence naming the tube at fault.
+    pub fn check_kinds(protocol: &Protocol, tubes: &[Tube]) -> Result<(), String> {
+        let counted = &protocol.separation.counted;
+        let (cells, standards) = (counted.is_cell(), counted.standards().len());
+        let mut sides = BTreeMap::new();
+        for t in tubes {
+            let no = t.no;
+            let in_cell = matches!(t.role, Role::Total | Role::Nonspecific);
+            match (t.side, cells && in_cell) {
+                (None, true) => {
+                    return Err(format!(
+                        "vial {no} is of a dialysis cell and of no side of it"
+                    ));
+                }
+                (Some(_), false) => {
+                    return Err(format!(
+                        "vial {no} is a side of a dialysis cell, and what is counted here is {}",
+                        counted.words()
+                    ));
+                }
+                (Some(side), true) => {
+                    let cell = (t.role, t.level, t.replicate);
+                    let (vial, protein, ligand) = sides.entry(cell).or_insert((no, 0, 0));
+                    *vial = no;
+                    *(if side == Side::Protein {
+                        protein
+                    } else {
+                        ligand
+                    }) += 1;
+                }
+                (None, false) => {}
+            }
+            if cells && matches!(t.role, Role::NoReceptor | Role::Added) {
+                return Err(format!(
+                    "vial {no} is {}, and a dialysis cell has none",
+                    t.role
+                ));
+            }
+            if counted.is_signal() && t.role == Role::Added {
+                return Err(format!(
+                    "vial {no} is {}, and a reader has standards instead",
+                    t.role
+                ));
+            }
+            let there = |n: u16| n >= 1 && usize::from(n) <= standards;
+            if (t.role == Role::Standard) != t.standard.is_some() || !t.standard.is_none_or(there) {
+                return Err(format!(
+                    "vial {no} is not one of the protocol's {standards} standards"
+                ));
+            }
+        }
+        match sides.values().find(|(_, p, l)| (*p, *l) != (1, 1)) {
+            Some((vial, ..)) => Err(format!(
+                "vial {vial} is a side of a cell without the other side"
+            )),
+            None => Ok(()),
+        }
+    }
+
     /// The most levels a rack may have.
     pub const MOST_LEVELS: usize = 1000;
     /// The most tubes a rack may have.

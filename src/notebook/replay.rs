@@ -305,6 +305,7 @@ fn check_protocol(protocol: &Protocol, levels: &[Level], tubes: &[Tube]) -> Resu
 
 fn check_rack(protocol: &Protocol, levels: &[Level], tubes: &[Tube]) -> Result<(), Rejection> {
     Titration::check_rack(levels, tubes).map_err(Rejection::Rack)?;
+    Titration::check_kinds(protocol, tubes).map_err(Rejection::Rack)?;
     let mark = protocol.counter.mark;
     match levels
         .iter()

@@ -2,7 +2,10 @@
 
 use crate::common::{at, book, counted, everything, note, opened};
 use proptest::prelude::*;
-use rackside::assay::{Model, Reading, ScaleErrors, Stamp, TubeNo};
+use rackside::assay::{
+    Carrier, Fields, LevelNo, Model, Protocol, Reading, Role, Run, Scale, ScaleErrors, Sheet,
+    SitesUnit, Stamp, Subtracted, Tube, TubeNo, When,
+};
 use rackside::notebook::{Count, Entry, Notebook, What};
 use rackside::store::format::{Fault, MOST_BYTES, read};
 use rackside::store::{Access, Holder, Text, open_for_writing};
@@ -38,7 +41,7 @@ fn the_layout_is_the_one_described() {
     let lines = lines(&b);
     let n = b.entries().len();
     assert_eq!(lines.len(), n + 3);
-    assert_eq!(lines[0], "(format: 2, entries: [");
+    assert_eq!(lines[0], "(format: 3, entries: [");
     assert_eq!(lines[n + 1], "])");
     let last = lines[n].rsplit_once(" // ").unwrap().1;
     assert_eq!(lines[n + 2], format!("// {n} entries, last {last}"));
@@ -58,7 +61,7 @@ fn links_are_those_of_sha256sum() {
     use std::io::Write;
     use std::process::{Command, Stdio};
     let lines = lines(&everything());
-    let mut previous = String::from("(format: 2, entries: [");
+    let mut previous = String::from("(format: 3, entries: [");
     for line in &lines[1..4] {
         let (text, link) = line.rsplit_once(" // ").unwrap();
         let mut sum = Command::new("sha256sum")
@@ -86,16 +89,149 @@ fn the_golden_files() {
     assert_eq!(back.text.format(), 1);
     assert_eq!(back.text.to_bytes(), older);
     assert_eq!(back.notebook.entries(), everything().entries());
-    let golden = include_bytes!("golden/format-2.ron");
-    let back = read(golden).unwrap();
+    let older = include_bytes!("golden/format-2.ron");
+    let back = read(older).unwrap();
     assert!(back.changed.is_empty());
     assert_eq!(back.text.format(), 2);
-    assert_eq!(back.notebook.entries(), newest().entries());
-    assert_eq!(bytes(&back.notebook), golden);
+    assert_eq!(back.text.to_bytes(), older);
+    assert_eq!(back.notebook.entries(), second().entries());
+    let golden: [(&[u8], Notebook); 3] = [
+        (include_bytes!("golden/format-3.ron"), newest()),
+        (include_bytes!("golden/format-3-cells.ron"), cells()),
+        (include_bytes!("golden/format-3-reader.ron"), reader()),
+    ];
+    for (golden, book) in golden {
+        let back = read(golden).unwrap();
+        assert!(back.changed.is_empty());
+        assert_eq!(back.text.format(), 3);
+        assert_eq!(back.notebook.entries(), book.entries());
+        assert_eq!(bytes(&back.notebook), golden);
+    }
+}
+
+/// What format 3 added, on a rack whose bound label is counted: decay, dead time, what a counter takes off, a run, tubes without
+/// receptor and aliquots, readings in every scale.
+fn newest() -> Notebook {
+    let mut book = second();
+    let amended = |book: &Notebook, change: fn(&mut Protocol)| {
+        let t = book.titration();
+        let mut protocol = t.protocol.clone();
+        change(&mut protocol);
+        What::Amended {
+            protocol: Box::new(protocol),
+            levels: t.levels.clone(),
+            reason: "ways of counting".into(),
+        }
+    };
+    let what = amended(&book, |p| {
+        let when = |text| Some(When::parse(text).unwrap());
+        p.ligand.activity_date = when("2031-04-02");
+        p.incubation.assayed = when("2031-05-04 09:30");
+        p.ligand.decay = Some(Carrier::ProductInert);
+        p.ligand.half_life = Some(Typed::parse("12.3 y", Mark::Point).unwrap());
+        p.ligand.atoms = Some(3);
+        p.ligand.bindable = Some(Typed::parse("92 %", Mark::Point).unwrap());
+        p.separation.added_counted = Some(Typed::parse("10 %", Mark::Point).unwrap());
+        p.counter.dead_time = Some(Typed::parse("5 us", Mark::Point).unwrap());
+        p.counter.subtracted = Some(Subtracted {
+            rate: Typed::parse("24.5 cpm", Mark::Point).unwrap(),
+            minutes: Some(Typed::parse("30 min", Mark::Point).unwrap()),
+        });
+        p.counter.run = Some(Run {
+            start: When::parse("2031-05-04T10:00").unwrap(),
+            changer: Typed::parse("10 s", Mark::Point).unwrap(),
+        });
+        p.counter.fields = Fields::parse("net cpm, at, minutes").unwrap();
+        p.display.sites = SitesUnit::PerMillionCells;
+    });
+    book.record(what, at(), "ann").unwrap();
+    let extra = What::Extended {
+        levels: vec![],
+        tubes: vec![
+            Tube::new(TubeNo(9), Role::NoReceptor, Some(LevelNo(1)), 1),
+            Tube::new(TubeNo(10), Role::Added, Some(LevelNo(2)), 1),
+        ],
+    };
+    book.record(extra, at(), "ann").unwrap();
+    let scales = [Scale::Dpm, Scale::NetCpm, Scale::NetDpm];
+    let readings = [3, 9, 10].into_iter().zip(scales).map(|(vial, scale)| {
+        let reading = Reading {
+            scale,
+            counted: Some(at()),
+            ..Reading::counts("-3.5", if scale == Scale::Dpm { 3.5 } else { -3.5 }, 2.0)
+        };
+        Count::first(TubeNo(vial), reading)
+    });
+    let readings = readings.collect();
+    book.record(What::Counted { readings }, at(), "ann")
+        .unwrap();
+    book
+}
+
+/// The example sheet with some of its lines changed, opened.
+fn sheet(changes: &[(&str, &str)]) -> Notebook {
+    let mut text = Sheet::EXAMPLE.to_string();
+    for (from, to) in changes {
+        assert!(text.contains(from), "the example does not hold `{from}`");
+        text = text.replacen(from, to, 1);
+    }
+    let t = Sheet::parse(&text).unwrap().titration().unwrap();
+    Notebook::open(t.protocol, t.levels, t.tubes, at(), "ann").unwrap()
+}
+
+/// The two sides of dialysis cells, with a quench curve.
+fn cells() -> Notebook {
+    let mut book = sheet(&[
+        (
+            "fraction: \"100 %\",",
+            "counted: BothSides(protein_aliquot: \"0.1 mL\", ligand_aliquot: \"0.2 mL\", protein_after: \"0.55 mL\", \
+             ligand_volume: \"0.5 mL\"),",
+        ),
+        (
+            "fields: Counts,",
+            "fields: Each([Counts, Quench]), quench: [(indicator: 300, efficiency: \"30 %\"), (indicator: 420.5, efficiency: \"45 %\")],",
+        ),
+        ("\"0.05 nM\", \"0.1 nM\", \"0.2 nM\", \"0.5 nM\", ", ""),
+    ]);
+    let reading = Reading {
+        quench: Some(410.0),
+        ..Reading::counts("2258 / 410", 2258.0, 2.0)
+    };
+    let readings = vec![Count::first(TubeNo(1), reading)];
+    book.record(What::Counted { readings }, at(), "ann")
+        .unwrap();
+    book
+}
+
+/// A reader with standards.
+fn reader() -> Notebook {
+    let mut book = sheet(&[
+        ("specific_activity: \"80 Ci/mmol\",", ""),
+        (
+            "fraction: \"100 %\",",
+            "counted: Signal(read_volume: \"0.1 mL\", standards: [\"0.01 nM\", \"0.1 nM\"], noise: 12.5),",
+        ),
+        ("efficiency: \"45 %\",", ""),
+        ("fields: Counts,", "fields: Each([Signal]),"),
+        ("minutes: \"2 min\",", ""),
+        ("background: (", "/* background: ("),
+        ("mark: Point,", "*/"),
+        ("\"0.05 nM\", \"0.1 nM\", \"0.2 nM\", \"0.5 nM\", ", ""),
+        ("background: 1,", "background: 2, standards: 2,"),
+    ]);
+    let reading = Reading {
+        scale: Scale::Signal,
+        ..Reading::counts("-1.25", -1.25, 1.0)
+    };
+    let vial = book.titration().tubes[0].no;
+    let readings = vec![Count::first(vial, reading)];
+    book.record(What::Counted { readings }, at(), "ann")
+        .unwrap();
+    book
 }
 
 /// Everything, and what format 2 added: scale errors and a chosen law of binding.
-fn newest() -> Notebook {
+fn second() -> Notebook {
     let mut book = everything();
     let t = book.titration();
     let mut protocol = t.protocol.clone();
@@ -146,7 +282,7 @@ fn an_older_format_is_taken_on_with_a_copy_kept() {
         target.save(&opened.text).unwrap();
         assert_eq!(fs::read(&copy).unwrap(), bytes);
         let back = read(&fs::read(&path).unwrap()).unwrap();
-        assert_eq!(back.text.format(), 2);
+        assert_eq!(back.text.format(), 3);
         assert_eq!(back.changed, marked);
         assert_eq!(back.notebook.entries(), opened.notebook.entries());
     }
@@ -206,7 +342,7 @@ impl DigestAfter for Text {
     /// The chain over lines as they are, links left aside.
     fn digest_after(self, lines: Vec<String>) -> String {
         use sha2::{Digest, Sha256};
-        let first = String::from("(format: 2, entries: [");
+        let first = String::from("(format: 3, entries: [");
         lines.iter().fold(first, |link, line| {
             let sum = Sha256::digest(format!("{link}{line}").as_bytes());
             sum[..8].iter().map(|b| format!("{b:02x}")).collect()

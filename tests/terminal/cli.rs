@@ -217,7 +217,7 @@ fn files() -> Home {
     assert_ne!(changed, whole);
     home.write("changed.ron", changed);
     home.write("cut.ron", &whole[..whole.len() / 2]);
-    home.write("newer.ron", whole.replacen("format: 2", "format: 3", 1));
+    home.write("newer.ron", whole.replacen("format: 3", "format: 4", 1));
     home.write("other.ron", "(a: 1)\n");
     home.write("empty.ron", "");
     home.write("bytes.ron", [0xff, 0xfe, 0x00]);
@@ -264,7 +264,7 @@ fn summary_of_files_good_and_bad() {
             &["summary", "newer.ron"],
             65,
             &[],
-            &["newer.ron", "format 3", "newer rackside"],
+            &["newer.ron", "format 4", "newer rackside"],
         ),
         case(&["summary", "other.ron"], 65, &[], &["not a notebook"]),
         case(&["summary", "empty.ron"], 65, &[], &["empty"]),

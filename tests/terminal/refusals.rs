@@ -272,7 +272,7 @@ fn files_that_cannot_be() {
     home.write("picture.ron", png);
     home.write("empty.ron", "");
     home.write("cut.ron", &whole[..whole.len() / 2]);
-    home.write("newer.ron", whole.replacen("format: 2", "format: 7", 1));
+    home.write("newer.ron", whole.replacen("format: 3", "format: 7", 1));
     home.write("large.ron", vec![b' '; TOO_MANY]);
     std::fs::create_dir(home.path("folder.ron")).unwrap();
     let size = TOO_MANY.to_string();
@@ -284,7 +284,7 @@ fn files_that_cannot_be() {
         (
             "newer.ron",
             65,
-            &["format 7", "newer rackside", "reads formats up to 2"],
+            &["format 7", "newer rackside", "reads formats up to 3"],
         ),
         ("large.ron", 65, &[&size, "at most 33554432"]),
         ("nowhere.ron", 74, &["No such file"]),
