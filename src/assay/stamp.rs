@@ -1,5 +1,6 @@
 //! A moment as a person at the bench would write it: the instant and the offset of their clock.
 
+use jiff::civil::{DateTime, Time};
 use jiff::tz::Offset;
 use jiff::{Timestamp, fmt::temporal::DateTimeParser};
 use serde::{Deserialize, Deserializer, Serialize, Serializer, de};
@@ -16,7 +17,9 @@ pub struct Stamp {
 
 /// A text is not a moment in RFC 3339.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
-#[error("`{text}` is not a date and time with an offset, such as 2031-05-04T10:14:03+02:00")]
+#[error(
+    "`{text}` is not a time: write 14:03, 1403, 2031-05-04 14:03, or with an offset 2031-05-04T10:14:03+02:00"
+)]
 pub struct StampError {
     text: String,
 }
@@ -48,8 +51,38 @@ impl Stamp {
     }
 
     /// Date and time on the local clock.
-    pub fn local(&self) -> jiff::civil::DateTime {
+    pub fn local(&self) -> DateTime {
         self.offset.to_datetime(self.at)
+    }
+
+    /// A moment on the same clock as typed: `2031-05-04 14:03`, or a time of day alone, `14:03`, `14:03:25`, `1403`, `140325`. A
+    /// time of day is the first such not before `after`, or without that of this stamp's day.
+    ///
+    /// # Errors
+    /// The text is none of them.
+    pub fn on_its_clock(&self, text: &str, after: Option<DateTime>) -> Result<Stamp, StampError> {
+        let wrong = || StampError {
+            text: text.chars().take(60).collect(),
+        };
+        let text = text.trim();
+        let at = if text.contains('-') {
+            super::when::When::parse(text).map_err(|_| wrong())?.at()
+        } else {
+            let time = time_of_day(text).ok_or_else(wrong)?;
+            let base = after.unwrap_or(self.local());
+            let same_day = DateTime::from_parts(base.date(), time);
+            match after {
+                Some(after) if same_day < after => {
+                    DateTime::from_parts(base.date().tomorrow().map_err(|_| wrong())?, time)
+                }
+                _ => same_day,
+            }
+        };
+        let at = self.offset.to_timestamp(at).map_err(|_| wrong())?;
+        Ok(Stamp {
+            at,
+            offset: self.offset,
+        })
     }
 
     /// The time of day on the local clock, `10:14:03`.
@@ -66,6 +99,33 @@ impl Stamp {
             .to_datetime(self.at)
             .strftime("%Y-%m-%d %H:%M")
             .to_string()
+    }
+}
+
+/// `14:03`, `14:03:25`, `1403`, `140325`.
+fn time_of_day(text: &str) -> Option<Time> {
+    let digits: String = text.chars().filter(|c| *c != ':').collect();
+    let plain = digits.len() == text.len() && digits.bytes().all(|b| b.is_ascii_digit());
+    let parts: Vec<i8> = match (plain, digits.len()) {
+        (true, 3 | 4) => {
+            let (h, m) = digits.split_at(digits.len() - 2);
+            vec![h.parse().ok()?, m.parse().ok()?]
+        }
+        (true, 6) => {
+            let (h, rest) = digits.split_at(2);
+            let (m, s) = rest.split_at(2);
+            vec![h.parse().ok()?, m.parse().ok()?, s.parse().ok()?]
+        }
+        (true, _) => return None,
+        _ => text
+            .split(':')
+            .map(|p| p.parse().ok())
+            .collect::<Option<_>>()?,
+    };
+    match parts[..] {
+        [h, m] => Time::new(h, m, 0, 0).ok(),
+        [h, m, s] => Time::new(h, m, s, 0).ok(),
+        _ => None,
     }
 }
 
@@ -101,6 +161,19 @@ mod tests {
         assert_eq!(
             (s.clock().as_str(), s.minute().as_str()),
             ("10:14:03", "2031-05-04 10:14")
+        );
+        let at = |text: &str, after: Option<&str>| {
+            let after = after.map(|a| Stamp::parse(a).unwrap().local());
+            s.on_its_clock(text, after).map(|s| s.minute())
+        };
+        assert_eq!(at("14:03", None).unwrap(), "2031-05-04 14:03");
+        assert_eq!(at("140325", None).unwrap(), "2031-05-04 14:03");
+        assert_eq!(at("2031-05-06 14:03", None).unwrap(), "2031-05-06 14:03");
+        let evening = Some("2031-05-04T22:00:00+02:00");
+        assert_eq!(at("2230", evening).unwrap(), "2031-05-04 22:30");
+        assert_eq!(at("0:15", evening).unwrap(), "2031-05-05 00:15");
+        assert!(
+            at("25:00", None).is_err() && at("14", None).is_err() && at("1:2:3:4", None).is_err()
         );
         for bad in ["", "10:14", "2031-05-04", "2031-05-04T10:14:03"] {
             assert!(Stamp::parse(bad).is_err(), "{bad}");

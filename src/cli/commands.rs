@@ -268,7 +268,7 @@ fn take(
         },
     )?;
     say_changed(path, &opened);
-    let counts = table::readings(&text, &name, opened.notebook.titration(), recount)?;
+    let counts = table::readings(&text, &name, opened.notebook.titration(), recount, since)?;
     let n = counts.len();
     let entry = opened
         .notebook

@@ -1,33 +1,46 @@
 //! Readings from a table: CSV to one list of counts, all or none, a bad row named by its line.
 
 use super::failure::Failure;
-use crate::assay::{LevelNo, Reading, Role, Titration, Tube, TubeNo};
+use crate::assay::{
+    LevelNo, Reading, Role, Scale, Side, Stamp, Titration, Tube, TubeNo, check_reading,
+};
 use crate::notebook::Count;
 use crate::units::{parse_counts, parse_decimal};
 use csv::{ReaderBuilder, StringRecord, Trim};
 use std::collections::BTreeMap;
 
-/// The columns that may stand in a table.
-const COLUMNS: [&str; 7] = [
+/// The columns that say what was read.
+const NUMBERS: [(&str, Scale); 6] = [
+    ("counts", Scale::Counts),
+    ("cpm", Scale::Cpm),
+    ("dpm", Scale::Dpm),
+    ("net_cpm", Scale::NetCpm),
+    ("net_dpm", Scale::NetDpm),
+    ("signal", Scale::Signal),
+];
+
+/// The other columns that may stand in a table.
+const OTHERS: [&str; 8] = [
     "vial",
     "level",
     "role",
     "replicate",
-    "counts",
-    "cpm",
+    "side",
     "minutes",
+    "at",
+    "quench",
 ];
 
 /// Where the columns are.
 struct Places {
     at: BTreeMap<&'static str, usize>,
     by_vial: bool,
-    cpm: bool,
+    number: (&'static str, Scale),
 }
 
 /// The readings of a table for a titration.
 ///
-/// `source` is how the table is called in a message. With `recount`, a reading of a tube that has one is a recount.
+/// `source` is how the table is called in a message; times without an offset are taken to be on the `clock`. With `recount`, a reading of a tube that has one is a recount.
 ///
 /// # Errors
 /// The line and the column at fault, what was found and what is allowed; then nothing is taken.
@@ -36,6 +49,7 @@ pub(super) fn readings(
     source: &str,
     titration: &Titration,
     recount: bool,
+    clock: Stamp,
 ) -> Result<Vec<Count>, Failure> {
     let bad = |line: u64, what: String| {
         Failure::new(
@@ -60,7 +74,7 @@ pub(super) fn readings(
             bad(line, row_fault(&e))
         })?;
         let line = record.position().map_or(0, csv::Position::line);
-        let (tube, reading) = row(&record, &places, titration).map_err(|e| bad(line, e))?;
+        let (tube, reading) = row(&record, &places, titration, clock).map_err(|e| bad(line, e))?;
         if let Some(before) = seen.insert(tube, line) {
             return Err(bad(
                 line,
@@ -116,11 +130,12 @@ fn row_fault(e: &csv::Error) -> String {
 fn places(header: &StringRecord) -> Result<Places, String> {
     let mut at = BTreeMap::new();
     for (i, name) in header.iter().enumerate() {
-        let known = COLUMNS.into_iter().find(|c| c.eq_ignore_ascii_case(name));
+        let columns = || NUMBERS.iter().map(|(n, _)| *n).chain(OTHERS);
+        let known = columns().find(|c| c.eq_ignore_ascii_case(name));
         let Some(known) = known else {
             return Err(format!(
                 "there is no column `{name}`; allowed are {}",
-                COLUMNS.join(", ")
+                columns().collect::<Vec<_>>().join(", ")
             ));
         };
         if at.insert(known, i).is_some() {
@@ -135,16 +150,33 @@ fn places(header: &StringRecord) -> Result<Places, String> {
                 .into(),
         );
     }
-    match (at.contains_key("counts"), at.contains_key("cpm")) {
-        (true, true) => {
-            Err("both `counts` and `cpm` are there; one of them says what was read".into())
-        }
-        (false, false) => Err("a column `counts` (or `cpm`) must say what was read".into()),
-        (_, cpm) => Ok(Places { at, by_vial, cpm }),
+    let numbers: Vec<(&'static str, Scale)> = NUMBERS
+        .into_iter()
+        .filter(|(n, _)| at.contains_key(n))
+        .collect();
+    match numbers[..] {
+        [number] => Ok(Places {
+            at,
+            by_vial,
+            number,
+        }),
+        [] => Err(
+            "a column `counts` (or `cpm`, `dpm`, `net_cpm`, `net_dpm`, `signal`) must say what was read"
+                .into(),
+        ),
+        [a, b, ..] => Err(format!(
+            "both `{}` and `{}` are there; one of them says what was read",
+            a.0, b.0
+        )),
     }
 }
 
-fn row(record: &StringRecord, places: &Places, t: &Titration) -> Result<(TubeNo, Reading), String> {
+fn row(
+    record: &StringRecord,
+    places: &Places,
+    t: &Titration,
+    clock: Stamp,
+) -> Result<(TubeNo, Reading), String> {
     let field = |name: &str| {
         places
             .at
@@ -158,27 +190,44 @@ fn row(record: &StringRecord, places: &Places, t: &Titration) -> Result<(TubeNo,
         "" => t.protocol.minutes_for(tube.role),
         text => parse_decimal(text, mark).map_err(|e| format!("minutes: {e}"))?,
     };
-    let name = if places.cpm { "cpm" } else { "counts" };
+    let (name, scale) = places.number;
     let raw = field(name);
-    let value = if places.cpm {
-        parse_decimal(raw, mark)
-    } else {
+    let value = if scale == Scale::Counts {
         parse_counts(raw, mark)
+    } else {
+        parse_decimal(raw, mark)
     };
     let value = value.map_err(|e| format!("{name}: {e}"))?;
-    let scale = if places.cpm {
-        crate::assay::Scale::Cpm
-    } else {
-        crate::assay::Scale::Counts
+    let quench = match field("quench") {
+        "" => None,
+        text => Some(parse_decimal(text, mark).map_err(|e| format!("quench: {e}"))?),
+    };
+    let counted = match field("at") {
+        "" => None,
+        text => Some(moment(text, t, clock).map_err(|e| format!("at: {e}"))?),
     };
     let reading = Reading {
         scale,
         own_scale: true,
         own_minutes: !field("minutes").is_empty(),
+        quench,
+        counted,
         ..Reading::counts(raw, value, minutes)
     };
-    reading.check().map_err(|e| e.to_string())?;
+    check_reading(t, &tube, &reading, !t.kept(tube.no).is_empty()).map_err(|e| e.to_string())?;
     Ok((tube.no, reading))
+}
+
+/// A time of counting: with an offset as it stands, otherwise on the laboratory's clock; a time of day alone is the first such after
+/// the assay, or after the start of the run.
+fn moment(text: &str, t: &Titration, clock: Stamp) -> Result<Stamp, String> {
+    if let Ok(stamp) = Stamp::parse(text) {
+        return Ok(stamp);
+    }
+    let p = &t.protocol;
+    let run = p.counter.run.as_ref().map(|r| r.start.at());
+    let after = p.incubation.assayed.as_ref().map(|w| w.at()).or(run);
+    clock.on_its_clock(text, after).map_err(|e| e.to_string())
 }
 
 fn tube<'t>(
@@ -214,6 +263,7 @@ fn agrees<'t>(
     tube: &Tube,
 ) -> Result<(), (&'static str, &'t str)> {
     let (level, role, replicate) = (field("level"), field("role"), field("replicate"));
+    let side = field("side");
     let same_level = tube.level.is_some_and(|l| level.parse() == Ok(l.0));
     let columns = [
         ("level", level, same_level),
@@ -223,6 +273,11 @@ fn agrees<'t>(
             replicate,
             replicate_no(replicate) == Some(tube.replicate),
         ),
+        (
+            "side",
+            side,
+            tube.side.is_some() && side_of(side) == tube.side,
+        ),
     ];
     let other = columns
         .into_iter()
@@ -230,17 +285,47 @@ fn agrees<'t>(
     other.map_or(Ok(()), |(name, said, _)| Err((name, said)))
 }
 
-/// The tube of a level, a role and a replicate.
+/// `protein` or `ligand`.
+fn side_of(word: &str) -> Option<Side> {
+    match word.to_ascii_lowercase().as_str() {
+        "protein" => Some(Side::Protein),
+        "ligand" => Some(Side::Ligand),
+        _ => None,
+    }
+}
+
+/// The tube of a level, a role and a replicate, and of a side where there are two.
 fn place<'t>(field: &impl Fn(&str) -> &'t str, t: &Titration) -> Result<Tube, String> {
     let (level, role, replicate) = (field("level"), field("role"), field("replicate"));
-    let role = Role::from_word(role)
-        .ok_or_else(|| format!("role: `{role}` is not one of total, nonspecific, background"))?;
+    let role = Role::from_word(role).ok_or_else(|| {
+        let all: Vec<&str> = Role::ALL.iter().map(|r| r.word()).collect();
+        format!("role: `{role}` is not one of {}", all.join(", "))
+    })?;
+    let side = match field("side") {
+        "" => None,
+        word => Some(
+            side_of(word).ok_or_else(|| format!("side: `{word}` is neither protein nor ligand"))?,
+        ),
+    };
     let level_no = match (role, level) {
         (Role::Background, "") => None,
         (Role::Background, other) => {
             return Err(format!(
                 "level: `{other}`, but background has no level; leave it empty"
             ));
+        }
+        // The level of a standard is its number in the protocol.
+        (Role::Standard, text) => {
+            let n: u16 = text
+                .parse()
+                .map_err(|_| format!("level: `{text}` is not the number of a standard"))?;
+            let wanted = replicate_no(replicate);
+            return t
+                .tubes
+                .iter()
+                .find(|x| x.standard == Some(n) && Some(x.replicate) == wanted)
+                .copied()
+                .ok_or_else(|| format!("there is no standard {n} {replicate}"));
         }
         (_, text) => {
             let n: u16 = text
@@ -259,7 +344,7 @@ fn place<'t>(field: &impl Fn(&str) -> &'t str, t: &Titration) -> Result<Tube, St
         .ok_or_else(|| format!("replicate: `{replicate}` is not a letter or a number from 1"))?;
     t.tubes
         .iter()
-        .find(|x| x.role == role && x.level == level_no && x.replicate == wanted)
+        .find(|x| (x.role, x.level, x.replicate, x.side) == (role, level_no, wanted, side))
         .copied()
         .ok_or_else(|| match level_no {
             Some(l) => format!("there is no {role} {replicate} at level {l}"),

@@ -220,10 +220,10 @@ fn a_newer_format_is_refused_by_its_number() {
     let whole = text(&book([counted(1, 5.0)]));
     let newer = [
         whole.replace("(format: 3,", "(format: 4,"),
-        "(format: 3, entries: [\n(n:1, colour: Blue), // 3\n])\n".into(),
-        "(\n  format: 3,\n  things: {\"a\": [1, 2.5, None]},\n)\n".into(),
+        "(format: 4, entries: [\n(n:1, colour: Blue), // 3\n])\n".into(),
+        "(\n  format: 4,\n  things: {\"a\": [1, 2.5, None]},\n)\n".into(),
         // Cut short, which does not matter: it is not ours to judge.
-        "(format: 3, entries: [\n(n:".into(),
+        "(format: 4, entries: [\n(n:".into(),
     ];
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("newer.ron");

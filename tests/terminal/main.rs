@@ -8,6 +8,7 @@
 )]
 
 mod cli;
+mod counted;
 mod demos;
 mod edges;
 mod form;
