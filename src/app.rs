@@ -18,7 +18,7 @@ pub use form::{FieldState, Form, Kind};
 pub use layers::{Layer, LineFor, ReasonFor};
 pub use result::{fit_line, page};
 pub use sheet::Forms;
-pub use start::{Ask, Recent, Start};
+pub use start::{Ask, DEMOS, Recent, Start};
 
 use crate::analysis::Analysis;
 use crate::assay::{Lab, Stamp, Titration};

@@ -293,7 +293,7 @@ impl Sitting {
                     self.lay(opened)?;
                 }
                 Effect::Demo(name) => {
-                    let opened = match demos::find(Some(&name)).map(demos::copy) {
+                    let opened = match demos::find(Some(&name)).map(|d| demos::copy(&d)) {
                         Some(Ok(path)) => {
                             files::open(&path, &self.app.who).map_err(|e| e.to_string())
                         }

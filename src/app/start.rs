@@ -7,6 +7,26 @@ use super::{Effect, Event, Look, Message, Typed};
 use crate::assay::Lab;
 use tui_input::Input;
 
+/// The demos by name, with what each shows; a digit chooses one.
+pub const DEMOS: [(&str, &str); 7] = [
+    ("half-typed", "a rack half typed, to resume"),
+    ("finished", "a finished rack with one suspect tube"),
+    (
+        "free-counted",
+        "the free side counted, with tubes without receptor and aliquots",
+    ),
+    ("dialysis", "dialysis cells, half typed: both sides counted"),
+    ("reader", "a plate reader with blanks and standards"),
+    (
+        "short-lived",
+        "an F-18 label, half typed: counts brought back to the assay",
+    ),
+    (
+        "quenched",
+        "a quench curve, several background vials, tubes without receptor",
+    ),
+];
+
 /// A titration used lately.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub struct Recent {
@@ -116,8 +136,10 @@ impl Start {
                 }
             },
             Some(Ask::Demo) => match key {
-                Key::Char('1') => vec![Effect::Demo("half-typed".into())],
-                Key::Char('2') => vec![Effect::Demo("finished".into())],
+                Key::Char(c) => c
+                    .to_digit(10)
+                    .and_then(|d| DEMOS.get((d as usize).checked_sub(1)?))
+                    .map_or(Vec::new(), |(name, _)| vec![Effect::Demo((*name).into())]),
                 _ => Vec::new(),
             },
             Some(Ask::Lab(form)) => self.lab_key(form, key, lab),

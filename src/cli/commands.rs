@@ -58,9 +58,8 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
         } => summary(&file, format, ascii, all_laws)?,
         Command::Check { file } => return check(&file),
         Command::Demo { list: true, .. } => {
-            let lines: Vec<String> = demos::DEMOS
-                .iter()
-                .map(|d| format!("{:<12} {}\n", d.name, d.about))
+            let lines: Vec<String> = demos::all()
+                .map(|d| format!("{:<12} {} (invented)\n", d.name, d.about))
                 .collect();
             out::result(&lines.concat())?;
         }
@@ -344,7 +343,7 @@ fn check(path: &Path) -> Result<ExitCode, Failure> {
 
 fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
     let demo = demos::find(name).ok_or_else(|| {
-        let names: Vec<&str> = demos::DEMOS.iter().map(|d| d.name).collect();
+        let names: Vec<&str> = demos::all().map(|d| d.name).collect();
         let name = name.unwrap_or_default();
         Failure::new(
             Failure::USAGE,
@@ -352,7 +351,7 @@ fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
         )
     })?;
     if on_a_terminal() {
-        let path = demos::copy(demo)?;
+        let path = demos::copy(&demo)?;
         return sit(&path, sitting);
     }
     let opened = store::carried(demo.name, demo.text)?;

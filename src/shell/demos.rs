@@ -1,6 +1,7 @@
 //! The demos: invented titrations, carried in the program.
 
 use super::ShellError;
+use crate::app::DEMOS;
 use crate::store;
 use std::fs;
 use std::io::{ErrorKind, Write};
@@ -16,24 +17,29 @@ pub struct Demo {
     pub text: &'static str,
 }
 
-/// All of them; the first is the one opened without a name.
-pub const DEMOS: [Demo; 2] = [
-    Demo {
-        name: "half-typed",
-        about: "a rack half typed, to resume (invented)",
-        text: include_str!("../../demo-sessions/half-typed.ron"),
-    },
-    Demo {
-        name: "finished",
-        about: "a finished rack with one suspect tube (invented)",
-        text: include_str!("../../demo-sessions/finished.ron"),
-    },
+/// The notebooks, in the order of [`DEMOS`].
+const TEXTS: [&str; DEMOS.len()] = [
+    include_str!("../../demo-sessions/half-typed.ron"),
+    include_str!("../../demo-sessions/finished.ron"),
+    include_str!("../../demo-sessions/free-counted.ron"),
+    include_str!("../../demo-sessions/dialysis.ron"),
+    include_str!("../../demo-sessions/reader.ron"),
+    include_str!("../../demo-sessions/short-lived.ron"),
+    include_str!("../../demo-sessions/quenched.ron"),
 ];
 
+/// All of them; the first is the one opened without a name.
+pub fn all() -> impl Iterator<Item = Demo> {
+    DEMOS
+        .iter()
+        .zip(TEXTS)
+        .map(|((name, about), text)| Demo { name, about, text })
+}
+
 /// A demo by its name, or the first.
-pub fn find(name: Option<&str>) -> Option<&'static Demo> {
-    let name = name.unwrap_or(DEMOS[0].name);
-    DEMOS.iter().find(|d| d.name == name)
+pub fn find(name: Option<&str>) -> Option<Demo> {
+    let name = name.unwrap_or(DEMOS[0].0);
+    all().find(|d| d.name == name)
 }
 
 /// A fresh numbered copy of a demo in the user's data folder.

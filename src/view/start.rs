@@ -1,7 +1,7 @@
 //! The start screen.
 
 use super::{form, layers, style};
-use crate::app::{Ask, Start, keys};
+use crate::app::{Ask, DEMOS, Start, keys};
 use crate::report::CAUTION;
 use crate::units::clean;
 use ratatui::Frame;
@@ -64,12 +64,12 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, start: &Start, fine: bool) {
             layers::ask(frame, area, "the path of a titration", input, below, fine);
         }
         Some(Ask::Demo) => {
-            let lines = vec![
-                Line::from("1  a rack half typed, to resume (invented)"),
-                Line::from("2  a finished rack with one suspect tube (invented)"),
-                Line::styled("any other key leaves it", style::quiet()),
-            ];
-            layers::panel(frame, area, "a demo", lines, fine);
+            let each = DEMOS.iter().zip(1..);
+            let mut lines: Vec<Line> = each
+                .map(|((_, about), n)| Line::from(format!("{n}  {about}")))
+                .collect();
+            lines.push(Line::styled("any other key leaves it", style::quiet()));
+            layers::panel(frame, area, "a demo (all invented)", lines, fine);
         }
         Some(Ask::Lab(form)) => lab(frame, area, form, fine),
         Some(Ask::Help { top }) => {
