@@ -11,6 +11,7 @@ mod balance;
 mod choosing;
 mod conversions;
 mod counted;
+mod counted_coverage;
 mod counting;
 mod coverage;
 mod deletion;
