@@ -491,7 +491,7 @@ mod tests {
             ("\"45 %\"", "\"145 %\"", "protocol.counter.efficiency"),
             ("\"0.05 nM\"", "\"0 nM\"", "ladder.levels"),
             ("\"0.05 nM\"", "\"0,05 nM\"", "decimal comma"),
-            ("batch:", "badge:", "line 19, column 13"),
+            ("batch:", "badge:", "line 26, column 13"),
             (
                 "confidence: 0.95",
                 "confidence: 95",
