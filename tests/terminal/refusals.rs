@@ -21,7 +21,7 @@ fn protocols_that_cannot_be() {
         (
             "\"0.05 nM\",",
             "\"1e999 nM\",",
-            &["line 80", "levels", "`1e999` is too large", "finite"],
+            &["line 99", "levels", "`1e999` is too large", "finite"],
         ),
         (
             "\"80 Ci/mmol\"",
@@ -243,8 +243,8 @@ fn readings_that_cannot_be() {
             &["vial 1", "has a reading already", "--recount"],
         ),
         (
-            "vial,dpm\n2,4\n",
-            &["no column `dpm`", "vial, level", "counts"],
+            "vial,beats\n2,4\n",
+            &["no column `beats`", "vial, level", "counts"],
         ),
     ];
     for (text, said) in cases {
@@ -252,7 +252,7 @@ fn readings_that_cannot_be() {
         refused(&ran, 65, said);
         for more in ["standard input line 2", "nothing was taken"] {
             // A fault of the header is one of line 1.
-            let more = if text.contains("dpm") {
+            let more = if text.contains("beats") {
                 more.replace('2', "1")
             } else {
                 more.into()
