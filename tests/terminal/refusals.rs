@@ -41,7 +41,7 @@ fn protocols_that_cannot_be() {
         (
             "confidence: 0.95",
             "confidence: \"95 %\"",
-            &["line 69", "confidence: \"95 %\"", "float"],
+            &["line 88", "confidence: \"95 %\"", "float"],
         ),
         (
             "\"0.05 nM\",",
