@@ -138,8 +138,8 @@ fn protocols_that_cannot_be() {
             "total: 0,",
             &["ladder.total", "no total tubes", "16 nonspecific"],
         ),
-        ("total: 2,", "total: -1,", &["line 82", "total: -1"]),
-        ("total: 2,", "total: 65536,", &["line 82", "total: 65536"]),
+        ("total: 2,", "total: -1,", &["line 101", "total: -1"]),
+        ("total: 2,", "total: 65536,", &["line 101", "total: 65536"]),
         (
             "total: 2,",
             "total: 60000,",
