@@ -163,7 +163,7 @@ fn protocols_that_cannot_be() {
         (
             "activity_date: \"2031-05-04\"",
             "activity_date: \"4.5.2031\"",
-            &["line 14", "activity_date: \"4.5.2031\"", "year"],
+            &["line 14", "activity_date: \"4.5.2031\"", "2031-05-04 09:30"],
         ),
         ("operator:", "operatr:", &["operatr", "operator"]),
     ];
