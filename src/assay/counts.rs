@@ -131,15 +131,38 @@ impl<'p> Counting<'p> {
         work: &mut W,
     ) -> Result<f64, ReadingError> {
         let indicator = reading.quench.ok_or(ReadingError::NoQuench)?;
-        let e = curve
-            .efficiency(indicator)
+        let piece = curve
+            .piece(indicator)
             .map_err(|e| ReadingError::Quench(e.to_string()))?;
+        let way = piece.way(indicator);
+        let e = piece.efficiency(way);
+        let [x0, x1] = piece.at;
         work.step(|| {
             Step::new(
-                format!("efficiency from the quench curve at {indicator}"),
+                "the quench indicator, between two standards",
+                Value::new("u", way, ""),
+                "(q - x0) / (x1 - x0)",
+                [
+                    Value::new("q", indicator, ""),
+                    Value::new("x0", x0, ""),
+                    Value::new("x1", x1, ""),
+                ],
+            )
+        });
+        work.step(|| {
+            Step::new(
+                "efficiency from the quench curve (slopes of the curve at both standards)",
                 Value::new("e", e, ""),
-                "",
-                [],
+                "y0 * (1 + 2 * u) * (1 - u) ^ 2 + y1 * (3 - 2 * u) * u ^ 2 + (x1 - x0) * u * (1 - u) * (m0 * (1 - u) - m1 * u)",
+                [
+                    Value::new("y0", piece.efficiency[0], ""),
+                    Value::new("y1", piece.efficiency[1], ""),
+                    Value::new("u", way, ""),
+                    Value::new("x0", x0, ""),
+                    Value::new("x1", x1, ""),
+                    Value::new("m0", piece.slope[0], "slope"),
+                    Value::new("m1", piece.slope[1], "slope"),
+                ],
             )
         });
         Ok(e)

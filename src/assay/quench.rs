@@ -18,6 +18,35 @@ pub struct QuenchCurve {
     slope: Vec<f64>,
 }
 
+/// The curve between two neighbouring standards.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Piece {
+    /// Their indicators.
+    pub at: [f64; 2],
+    /// Their efficiencies.
+    pub efficiency: [f64; 2],
+    /// The slopes of the curve there.
+    pub slope: [f64; 2],
+}
+
+impl Piece {
+    /// How far an indicator is on the way from the first standard to the second, from 0 to 1.
+    pub fn way(&self, indicator: f64) -> f64 {
+        (indicator - self.at[0]) / (self.at[1] - self.at[0])
+    }
+
+    /// The efficiency at a share of the way: Hermite's cubic.
+    pub fn efficiency(&self, t: f64) -> f64 {
+        let width = self.at[1] - self.at[0];
+        let [from, to] = self.efficiency;
+        let u = 1.0 - t;
+        let ends = from * (1.0 + 2.0 * t) * u * u + to * (3.0 - 2.0 * t) * t * t;
+        let bends = width * t * u * (self.slope[0] * u - self.slope[1] * t);
+        // Rounding may step over a standard by its last digit.
+        (ends + bends).clamp(from.min(to), from.max(to))
+    }
+}
+
 /// Why standards make no quench curve, or an indicator has no efficiency on it.
 #[derive(Debug, Clone, Copy, PartialEq, thiserror::Error)]
 #[non_exhaustive]
@@ -155,6 +184,15 @@ impl QuenchCurve {
     /// # Errors
     /// The indicator lies outside the standards: no curve is known there.
     pub fn efficiency(&self, indicator: f64) -> Result<f64, QuenchError> {
+        let piece = self.piece(indicator)?;
+        Ok(piece.efficiency(piece.way(indicator)))
+    }
+
+    /// The piece of the curve that an indicator lies on.
+    ///
+    /// # Errors
+    /// As [`QuenchCurve::efficiency`].
+    pub fn piece(&self, indicator: f64) -> Result<Piece, QuenchError> {
         let (low, high) = self.range();
         if !(indicator >= low && indicator <= high) {
             return Err(QuenchError::Outside {
@@ -168,14 +206,11 @@ impl QuenchCurve {
             .partition_point(|x| *x <= indicator)
             .clamp(1, self.at.len() - 1)
             - 1;
-        let width = self.at[i + 1] - self.at[i];
-        let t = (indicator - self.at[i]) / width;
-        let (from, to) = (self.efficiency[i], self.efficiency[i + 1]);
-        let u = 1.0 - t;
-        let ends = from * (1.0 + 2.0 * t) * u * u + to * (3.0 - 2.0 * t) * t * t;
-        let bends = width * t * u * (self.slope[i] * u - self.slope[i + 1] * t);
-        // Rounding may step over a standard by its last digit.
-        Ok((ends + bends).clamp(from.min(to), from.max(to)))
+        Ok(Piece {
+            at: [self.at[i], self.at[i + 1]],
+            efficiency: [self.efficiency[i], self.efficiency[i + 1]],
+            slope: [self.slope[i], self.slope[i + 1]],
+        })
     }
 
     /// The lowest and the highest indicator of the standards.
