@@ -511,7 +511,7 @@ pub fn working(titration: &Titration, tube: &Tube, background: Option<Background
         return steps;
     };
     if let Some(background) = background {
-        steps.push(background.step(titration.protocol.separation.counted.is_signal()));
+        steps.extend(super::blanks::steps(titration, &background));
         measured_with(titration, tube, o, background, &mut steps);
     }
     steps

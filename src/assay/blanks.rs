@@ -35,34 +35,6 @@ impl Background {
         self.cpm
     }
 
-    /// How it is reckoned.
-    pub(super) fn step(&self, signal: bool) -> Step {
-        let unit = if signal { "signal" } else { "cpm" };
-        let gives = Value::new("b", self.cpm, unit).give_or_take(self.variance.sqrt());
-        let (what, of) = if signal {
-            ("mean of the blanks", ["signal", "readings"])
-        } else {
-            ("background", ["counts", "min"])
-        };
-        if self.scattered() {
-            return Step::new(
-                "background, vials weighed with their own scatter",
-                gives,
-                "",
-                [Value::new("between", self.between, "cpm^2 between vials")],
-            );
-        }
-        Step::new(
-            what,
-            gives,
-            "Nb / tb",
-            [
-                Value::new("Nb", self.counts, of[0]),
-                Value::new("tb", self.minutes, of[1]),
-            ],
-        )
-    }
-
     /// Whether the vials scatter more than counting alone allows.
     pub fn scattered(&self) -> bool {
         self.dispersion.is_some_and(|d| d.p < SCATTERED_BELOW) && self.between > 0.0
@@ -120,6 +92,115 @@ pub fn background(titration: &Titration, flags: bool) -> Option<Background> {
         between,
         ..plain
     })
+}
+
+/// How the background is reckoned, for the working of a tube.
+pub(super) fn steps(titration: &Titration, background: &Background) -> Vec<Step> {
+    let signal = titration.protocol.separation.counted.is_signal();
+    let (unit, of) = if signal {
+        ("signal", ["signal", "readings"])
+    } else {
+        ("cpm", ["counts", "min"])
+    };
+    let error = background.variance.sqrt();
+    let sum = |symbol, what| {
+        let (n, t) = (background.counts, background.minutes);
+        let of = [Value::new("Nb", n, of[0]), Value::new("tb", t, of[1])];
+        Step::new(what, Value::new(symbol, n / t, unit), "Nb / tb", of)
+    };
+    if !background.scattered() {
+        let what = if signal {
+            "mean of the blanks"
+        } else {
+            "background"
+        };
+        let plain = sum("b", what);
+        let gives = plain.gives.give_or_take(error);
+        return vec![Step { gives, ..plain }];
+    }
+    weighed(
+        titration,
+        background,
+        sum("b0", "background, all vials alike"),
+    )
+}
+
+/// The same where vials scatter: the index of their dispersion, the variance between them, and their mean by weight.
+fn weighed(titration: &Titration, background: &Background, plain: Step) -> Vec<Step> {
+    let rate = plain.gives.value;
+    let mut steps = vec![plain];
+    let counting = Counting::of(&titration.protocol);
+    let of_vials = titration
+        .tubes
+        .iter()
+        .filter(|t| t.role == Role::Background);
+    let vials: Vec<_> = of_vials
+        .filter_map(|t| Some((t.no, observed_in(&counting, titration, t, true)?)))
+        .collect();
+    let (mut index, mut squares) = (0.0, 0.0);
+    for (no, o) in &vials {
+        let before = index;
+        index += (o.counts - o.minutes * rate).powi(2) / (o.minutes * rate);
+        squares += o.minutes * o.minutes;
+        steps.push(Step::new(
+            format!("index of dispersion, vial {no} added"),
+            Value::new("X", index, ""),
+            "Y + (N - t * b0) ^ 2 / (t * b0)",
+            [
+                Value::new("Y", before, "so far"),
+                Value::new("N", o.counts, "counts"),
+                Value::new("t", o.minutes, "min"),
+                Value::new("b0", rate, "cpm"),
+            ],
+        ));
+    }
+    steps.push(Step::new(
+        "variance between vials",
+        Value::new("s2", background.between, "cpm^2"),
+        "b0 * (X - d) / (tb - Q / tb)",
+        [
+            Value::new("b0", rate, "cpm"),
+            Value::new("X", index, ""),
+            Value::new("d", vials.len() as f64 - 1.0, "vials less one"),
+            Value::new("tb", background.minutes, "min"),
+            Value::new("Q", squares, "sum of t^2"),
+        ],
+    ));
+    let (mut weights, mut sum) = (0.0, 0.0);
+    for (no, o) in &vials {
+        let (before, so_far) = (weights, sum);
+        let weight = 1.0 / (rate / o.minutes + background.between);
+        weights += weight;
+        sum += weight * o.counts / o.minutes;
+        let of = |first, value, unit| {
+            [
+                Value::new(first, value, unit),
+                Value::new("b0", rate, "cpm"),
+                Value::new("t", o.minutes, "min"),
+                Value::new("s2", background.between, "cpm^2"),
+            ]
+        };
+        steps.push(Step::new(
+            format!("weights, vial {no} added"),
+            Value::new("W", weights, ""),
+            "V + 1 / (b0 / t + s2)",
+            of("V", before, "so far"),
+        ));
+        let counts = [Value::new("N", o.counts, "counts")];
+        steps.push(Step::new(
+            format!("weighed rates, vial {no} added"),
+            Value::new("R", sum, ""),
+            "P + N / t / (b0 / t + s2)",
+            of("P", so_far, "so far").into_iter().chain(counts),
+        ));
+    }
+    steps.push(Step::new(
+        "background, vials weighed with their own scatter",
+        Value::new("b", background.cpm, "cpm").give_or_take(background.variance.sqrt()),
+        "R / W",
+        [Value::new("R", sum, ""), Value::new("W", weights, "")],
+    ));
+    steps
 }
 
 /// The background that the counter took off, as counts in the minutes it was counted for.
