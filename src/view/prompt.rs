@@ -2,7 +2,7 @@
 
 use super::style;
 use crate::app::{Access, Desk, Field, keys};
-use crate::assay::Scale;
+use crate::assay::{Field as Asked, Scale};
 use crate::units::{clean, fixed};
 use ratatui::Frame;
 use ratatui::layout::{Position, Rect};
@@ -77,20 +77,27 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
     let Some(tube) = app.tube() else {
         return Line::default();
     };
-    let added = tube
-        .level
-        .and_then(|l| t.level(l))
-        .map_or(String::new(), |l| format!("{}   ", clean(&l.added.text)));
+    let standards = t.protocol.separation.counted.standards();
+    let standard = tube
+        .standard
+        .and_then(|n| standards.get(usize::from(n).checked_sub(1)?));
+    let level = tube.level.and_then(|l| t.level(l)).map(|l| &l.added);
+    let holds = level
+        .or(standard)
+        .map_or(String::new(), |added| format!("{}   ", clean(&added.text)));
     let done = match t.next_unread() {
         None if width >= WIDE => "   all read or lost; PgDn: result",
         None => "   none left",
         Some(_) => "",
     };
     let again = if app.bench.again { "RECOUNT of " } else { "" };
+    let side = tube
+        .side
+        .map_or(String::new(), |s| format!("   {}", s.word().to_uppercase()));
     let text = format!(
-        " {again}vial {}   {added}{} {}{done}",
+        " {again}vial {}   {holds}{} {}{side}{done}",
         tube.no,
-        tube.role.word().to_uppercase(),
+        t.word_for(tube.role).to_uppercase(),
         tube.letter()
     );
     let gap = width
@@ -116,12 +123,20 @@ fn entry(app: &Desk) -> (String, String) {
     let typed = app.bench.line.value().to_string();
     let label = match &app.bench.field {
         Field::Vial => " go to vial / ".into(),
+        Field::Value if counter.fields.scale() == Scale::Signal => format!(" {what} > "),
         Field::Value if counter.fields.with_minutes() => format!(" {what} > "),
         Field::Value if counter.fields.scale() == Scale::Counts => {
             format!(" {what} in {minutes} min > ")
         }
         Field::Value => format!(" {what} over {minutes} min > "),
-        Field::Minutes { raw, .. } => format!(" {what} {raw} in minutes (Enter for {minutes}) > "),
+        Field::More(begun) => {
+            let so_far = begun.words(what);
+            match begun.asked {
+                Asked::Minutes => format!(" {so_far} in minutes (Enter for {minutes}) > "),
+                Asked::At => format!(" {so_far}, began at hhmm > "),
+                other => format!(" {so_far}, {} > ", other.word()),
+            }
+        }
     };
     (label, typed)
 }

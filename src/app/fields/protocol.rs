@@ -69,7 +69,7 @@ pub const PROTOCOL: &[Spec] = &[
         "atoms of label",
         "ligand.atoms",
         Kind::Text,
-        "in a labelled molecule; empty: one, or of H-3 and C-14 as the activity asks for",
+        "in a labelled molecule; empty: one, or of H-3 and C-14 what the activity takes",
     ),
     field(
         "share that can bind",
