@@ -51,10 +51,7 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
             })
             .collect(),
     };
-    let series = vec![
-        of(PointGlyph::Filled, true),
-        of(PointGlyph::Hollow, false),
-    ];
+    let series = vec![of(PointGlyph::Filled, true), of(PointGlyph::Hollow, false)];
     let level = |y, style| Curve {
         points: vec![(x.low, y), (x.high, y)],
         style,

@@ -30,7 +30,14 @@ impl Chosen {
         let nuclide = Nuclide::find(p.value("label"));
         let activity = Amount::<DpmPerFmol>::parse(p.value("specific activity"), forms.mark());
         let several = |n: &Nuclide| {
-            activity.is_ok_and(|a| a.base() > 1.02 * carrier_free(n.half_life_minutes()))
+            // Of these a molecule often has several, and their number follows from the activity.
+            let taken = if matches!(n.name(), "H-3" | "C-14") {
+                10.0
+            } else {
+                1.0
+            };
+            let one = carrier_free(n.half_life_minutes());
+            activity.is_ok_and(|a| a.base() > 1.02 * taken * one)
         };
         let blocked = p.value("blocked with");
         Chosen {
