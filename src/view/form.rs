@@ -89,6 +89,10 @@ fn parts(area: Rect) -> [Rect; 3] {
 /// A form, with lines of preview beside (ladder) or below it.
 fn step(frame: &mut Frame, area: Rect, form: &Form, extra: Vec<String>, step: Step) {
     let shown = form.visible().count();
+    let extra: Vec<String> = match step {
+        Step::Ladder => extra,
+        _ => extra.iter().flat_map(|l| indented(l, area.width)).collect(),
+    };
     let beside = step == Step::Ladder && area.width >= 76 && !extra.is_empty() && shown > 1;
     let area_of_extra = if beside {
         // What is typed keeps the columns of its name and of a number.
@@ -115,6 +119,12 @@ fn step(frame: &mut Frame, area: Rect, form: &Form, extra: Vec<String>, step: St
     };
     let lines: Vec<Line> = extra.into_iter().map(Line::from).collect();
     frame.render_widget(Paragraph::new(lines), area_of_extra);
+}
+
+/// A line below a form, broken where it has no room.
+fn indented(text: &str, width: u16) -> Vec<String> {
+    let wrapped = style::wrapped(text, usize::from(width).saturating_sub(2));
+    wrapped.into_iter().map(|l| format!("  {l}")).collect()
 }
 
 fn fields(frame: &mut Frame, area: Rect, form: &Form) {

@@ -9,9 +9,6 @@ use ratatui::layout::{Position, Rect};
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
-/// Columns from which on everything is said in full.
-const WIDE: usize = 78;
-
 /// Bars that stand as long as what they say holds.
 pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
     app.standing()
@@ -85,21 +82,22 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
     let holds = level
         .or(standard)
         .map_or(String::new(), |added| format!("{}   ", clean(&added.text)));
-    let done = match t.next_unread() {
-        None if width >= WIDE => "   all read or lost; PgDn: result",
-        None => "   none left",
-        Some(_) => "",
-    };
     let again = if app.bench.again { "RECOUNT of " } else { "" };
     let side = tube
         .side
         .map_or(String::new(), |s| format!("   {}", s.word().to_uppercase()));
-    let text = format!(
-        " {again}vial {}   {holds}{} {}{side}{done}",
+    let mut text = format!(
+        " {again}vial {}   {holds}{} {}{side}",
         tube.no,
         t.word_for(tube.role).to_uppercase(),
         tube.letter()
     );
+    if t.next_unread().is_none() {
+        let used = text.chars().count() + progress.chars().count();
+        let said = ["   all read or lost; PgDn: result", "   none left"];
+        let fits = said.iter().find(|s| used + s.len() < width);
+        text.push_str(fits.unwrap_or(&""));
+    }
     let gap = width
         .saturating_sub(text.chars().count() + progress.chars().count())
         .max(1);

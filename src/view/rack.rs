@@ -138,7 +138,7 @@ impl Table {
             .into_iter()
             .filter(|r| t.tubes.iter().any(|x| x.role == *r))
             .collect();
-        let amounts = " ".len() + 6 + 1 + 5;
+        let amounts = " ".len() + MEAN + 1 + sd_columns(t);
         let wide = |columns: &[Column]| -> usize {
             FIRST + columns.iter().map(|c| c.width).sum::<usize>() + amounts + 1
         };
@@ -269,14 +269,15 @@ impl Table {
         if let Some((mean, sd)) = amount(app, level).filter(|_| totals) {
             // Two digits of the error, which is as far as the amount means anything.
             let decimals = if sd > 0.0 {
-                (1.0 - sd.log10().floor()).clamp(0.0, 3.0) as usize
+                (1.0 - sd.log10().floor()).clamp(0.0, sd_columns(t) as f64 - 2.0) as usize
             } else {
                 2
             };
             spans.push(Span::raw(format!(
-                " {:>6} {:>5}",
+                " {:>MEAN$} {:>w$}",
                 fixed(mean, decimals),
-                fixed(sd, decimals)
+                fixed(sd, decimals),
+                w = sd_columns(t)
             )));
         }
         self.rows.push(Line::from(spans));
@@ -312,6 +313,14 @@ impl Table {
 
 /// Columns of the vial number and the concentration.
 const FIRST: usize = 10;
+
+/// Columns of an amount.
+const MEAN: usize = 6;
+
+/// Columns of its error; a concentration has more decimals than an amount in fmol.
+fn sd_columns(t: &Titration) -> usize {
+    if unit(t) == "fmol" { 5 } else { 6 }
+}
 
 /// The unit of amounts: fmol in a tube, a concentration where there is none or where it is what was read.
 fn unit(t: &Titration) -> &'static str {

@@ -89,12 +89,10 @@ fn rack(forms: &Forms) -> Vec<String> {
             cells.collect::<Vec<_>>().join(" ")
         })
         .collect();
-    let cells = if counted.is_cell() {
-        "; of a cell protein + ligand side"
-    } else {
-        ""
-    };
-    lines.push(format!("{} vials in all{cells}", tubes.len()));
+    lines.push(format!("{} vials in all", tubes.len()));
+    if counted.is_cell() {
+        lines.push("a cell: protein side + ligand side".into());
+    }
     lines
 }
 
@@ -103,16 +101,16 @@ pub(super) fn worked(forms: &Forms) -> Vec<String> {
     let mark = forms.mark();
     let typed = forms.counter.value("try a printout").to_string();
     let Ok(p) = forms.protocol() else {
-        return vec!["  the worked line stands here once protocol and counter are complete".into()];
+        return vec!["the worked line stands here once protocol and counter are complete".into()];
     };
     let mut lines = vec![match printout(&p, &typed, mark) {
-        Ok(line) => format!("  printout {line}"),
-        Err(e) => format!("  printout: {e}"),
+        Ok(line) => format!("printout {line}"),
+        Err(e) => format!("printout: {e}"),
     }];
     if let Some(d) = p.label_decayed() {
         let shown = |v: f64, digits| marked(short(v, digits), mark);
         lines.push(format!(
-            "  at the assay: {} dpm/fmol, of {} at first; levels times {}",
+            "at the assay: {} dpm/fmol, of {} at first; levels times {}",
             shown(d.activity, 5),
             shown(p.ligand.specific_activity.base(), 5),
             shown(d.concentration, 4)
