@@ -286,7 +286,10 @@ impl Forms {
         if r.errors.is_empty() {
             match ladder.lay(self.mark(), &self.counted()) {
                 Ok(_) => return Ok(ladder),
-                Err(LadderError::Ladder { field, what }) if field == "levels" => {
+                Err(LadderError::Ladder {
+                    field: "levels",
+                    what,
+                }) => {
                     r.wrong(self.levels_field(), what);
                 }
                 Err(LadderError::Ladder { field, what }) => {

@@ -80,7 +80,7 @@ impl Desk {
         {
             return self.refused(why);
         }
-        self.taken(vec![raw], reading, fields.more().collect(), now)
+        self.taken(vec![raw], reading, &fields.more().collect::<Vec<_>>(), now)
     }
 
     /// A refusal with the line left as it is.
@@ -94,14 +94,14 @@ impl Desk {
         &mut self,
         raw: Vec<String>,
         mut reading: Reading,
-        rest: Vec<Asked>,
+        rest: &[Asked],
         now: Stamp,
     ) -> Vec<Effect> {
         reading.raw = raw.join(BETWEEN);
         let Some((asked, after)) = rest.split_first() else {
             return self.keep(reading, now);
         };
-        if let Err(cause) = self.possible(&reading, &rest, now) {
+        if let Err(cause) = self.possible(&reading, rest, now) {
             let tube = self.bench.at;
             return self.refused(Rejection::Reading { tube, cause }.to_string());
         }
@@ -216,7 +216,7 @@ impl Desk {
             Err(why) => self.refused(why),
             Ok(typed) => {
                 raw.push(typed);
-                self.taken(raw, reading, rest, now)
+                self.taken(raw, reading, &rest, now)
             }
         }
     }

@@ -108,7 +108,7 @@ pub(super) fn worked(forms: &Forms) -> Vec<String> {
         Err(e) => format!("printout: {e}"),
     }];
     if let Some(d) = p.label_decayed() {
-        let shown = |v: f64, digits| marked(short(v, digits), mark);
+        let shown = |v: f64, digits| marked(&short(v, digits), mark);
         lines.push(format!(
             "at the assay: {} dpm/fmol, of {} at first; levels times {}",
             shown(d.activity, 5),
@@ -119,7 +119,7 @@ pub(super) fn worked(forms: &Forms) -> Vec<String> {
     lines
 }
 
-fn marked(text: String, mark: Mark) -> String {
+fn marked(text: &str, mark: Mark) -> String {
     text.replace('.', &mark.char().to_string())
 }
 
@@ -130,13 +130,13 @@ fn printout(p: &Protocol, typed: &str, mark: Mark) -> Result<String, String> {
         _ => parse_decimal(typed, mark),
     };
     let number = number.map_err(|e| e.to_string())?;
-    let shown = |v: f64, decimals| marked(fixed(v, decimals), mark);
+    let shown = |v: f64, decimals| marked(&fixed(v, decimals), mark);
     let (minutes, efficiency) = (p.counter.minutes.base(), p.counter.nominal_efficiency());
     let off = p.counter.subtracted.as_ref().map_or(0.0, |s| s.rate.base());
     let at = |rate: f64| held(p, rate, mark);
-    let share = marked(short(efficiency, 4), mark);
+    let share = marked(&short(efficiency, 4), mark);
     let best = if p.counter.fields.has(Field::Quench) && !p.counter.quench.is_empty() {
-        " (the best of the curve)"
+        " (the best)"
     } else {
         ""
     };
@@ -160,26 +160,26 @@ fn printout(p: &Protocol, typed: &str, mark: Mark) -> Result<String, String> {
         ),
         Scale::NetCpm => format!(
             "{typed} net cpm + {} taken off, {over} = {} counts; net {}",
-            marked(short(off, 5), mark),
+            marked(&short(off, 5), mark),
             grouped((number + off) * minutes),
             at(number)
         ),
         Scale::NetDpm => format!(
             "{typed} net dpm x {share}{best} + {} cpm taken off, {over} = {} counts; net {}",
-            marked(short(off, 5), mark),
+            marked(&short(off, 5), mark),
             grouped((number * efficiency + off) * minutes),
             at(number * efficiency)
         ),
         Scale::Signal => format!(
             "{typed} signal, blank included; 1 nM in the tube is {} nM in the volume read",
-            marked(short(per_nm(p, Seen::Bound), 4), mark)
+            marked(&short(per_nm(p, Seen::Bound), 4), mark)
         ),
     })
 }
 
 /// What a rate in cpm stands for: fmol where bound is counted, the concentration of an aliquot elsewhere.
 fn held(p: &Protocol, cpm: f64, mark: Mark) -> String {
-    let shown = |v: f64| marked(short(v, 3), mark);
+    let shown = |v: f64| marked(&short(v, 3), mark);
     match p.separation.counted {
         Counted::Free { .. } => {
             format!(
