@@ -119,7 +119,7 @@ pub const BENCH: &[Binding<Command>] = &[
         "-",
         Command::Minus,
         "take back",
-        "clear the line; on an empty line take back; on a net 0: below zero",
+        "clear the line; empty: take back the newest entry; 0-: below zero",
         true,
     ),
     row(

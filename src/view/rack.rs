@@ -19,6 +19,8 @@ pub(super) struct Table {
     width: u16,
     height: u16,
     flagged: bool,
+    /// Columns of the concentration.
+    nm: usize,
 }
 
 /// The gap before the first column of a role.
@@ -134,13 +136,15 @@ impl Table {
             .max()
             .unwrap_or(0);
         let width = if most < 5 { 6 } else { most + 2 };
+        let shown = t.levels.iter().map(|l| concentration(t, l.no).len());
+        let nm = shown.max().unwrap_or(0).max(5);
         let there: Vec<Role> = ROLES
             .into_iter()
             .filter(|r| t.tubes.iter().any(|x| x.role == *r))
             .collect();
         let amounts = " ".len() + MEAN + 1 + sd_columns(t);
         let wide = |columns: &[Column]| -> usize {
-            FIRST + columns.iter().map(|c| c.width).sum::<usize>() + amounts + 1
+            VIAL + 1 + nm + columns.iter().map(|c| c.width).sum::<usize>() + amounts + 1
         };
         let all = columns(t, &there, width);
         // A level of cells too wide for one line has one for each role, the columns of the role that has most.
@@ -152,7 +156,7 @@ impl Table {
         } else {
             (all, vec![there])
         };
-        let mut header = format!("vial {:>5}", t.protocol.display.concentration.word());
+        let mut header = format!("vial {:>nm$}", t.protocol.display.concentration.word());
         for c in &columns {
             let head = if each {
                 c.head.trim_start_matches("ns ")
@@ -178,6 +182,7 @@ impl Table {
             here: 0,
             height,
             flagged: t.has_flags(),
+            nm,
         };
         table.unlevelled(app);
         for l in t.levels_by_concentration() {
@@ -208,12 +213,16 @@ impl Table {
 
     fn vials(&mut self, app: &Desk, vials: &[&Tube], word: &str, said: &str) {
         const EACH: usize = 7;
-        let room = usize::from(self.width).saturating_sub(FIRST + 1 + said.len() + 3);
+        let room = usize::from(self.width).saturating_sub(VIAL + 1 + self.nm + 1 + said.len() + 3);
         let per_row = (room / EACH).max(1);
         for (n, some) in vials.chunks(per_row).enumerate() {
             let Some(first) = some.first() else { return };
             let word = if n == 0 { word } else { "" };
-            let mut spans = vec![Span::raw(format!("{:>4} {word:>5}", first.no))];
+            let mut spans = vec![Span::raw(format!(
+                "{:>VIAL$} {word:>w$}",
+                first.no,
+                w = self.nm
+            ))];
             for (i, x) in some.iter().enumerate() {
                 let (text, style) = cell(app, x, if i == 0 { EACH + 1 } else { EACH });
                 spans.push(Span::styled(text, style));
@@ -247,12 +256,12 @@ impl Table {
         let totals = roles.contains(&Role::Total);
         let shown = match (totals, roles) {
             (false, [role]) => head_of(*role).to_string(),
-            _ => {
-                let nm = t.level_nm(level).unwrap_or_default();
-                short(t.protocol.display.concentration.from_nm(nm), 3)
-            }
+            _ => concentration(t, level),
         };
-        let mut spans = vec![Span::raw(format!("{first:>4} {shown:>5}"))];
+        let mut spans = vec![Span::raw(format!(
+            "{first:>VIAL$} {shown:>w$}",
+            w = self.nm
+        ))];
         for c in columns {
             let role = match roles {
                 [one] => *one,
@@ -311,8 +320,14 @@ impl Table {
     }
 }
 
-/// Columns of the vial number and the concentration.
-const FIRST: usize = 10;
+/// Columns of the vial number.
+const VIAL: usize = 4;
+
+/// The label of a level at the assay, as the table has it.
+fn concentration(t: &Titration, level: LevelNo) -> String {
+    let nm = t.level_nm(level).unwrap_or_default();
+    short(t.protocol.display.concentration.from_nm(nm), 3)
+}
 
 /// Columns of an amount.
 const MEAN: usize = 6;

@@ -267,7 +267,7 @@ impl Desk {
         // A time of day says little where days go by.
         let day = reading
             .counted
-            .map_or(String::new(), |c| format!("   on {}", c.local().date()));
+            .map_or(String::new(), |c| format!(" on {}", c.local().date()));
         let count = if self.bench.again {
             Count::again(at, reading)
         } else {
@@ -278,7 +278,7 @@ impl Desk {
             return vec![Effect::Bell];
         };
         self.bench.last = Some((at, ReadingId(entry.n, 0)));
-        self.say(format!("kept   {}{day}", self.notebook.describe(&entry)));
+        self.say(format!("kept{day}   {}", self.notebook.describe(&entry)));
         let next = self.after(at);
         self.bench.go(next.unwrap_or(at));
         effects

@@ -42,9 +42,9 @@ pub const PROTOCOL: &[Spec] = &[
         &DECAY,
         &[
             "activity and levels are those of the day of the assay; no decay is computed",
-            "decayed, no ligand: levels fall, activity stays; both as of the activity date",
-            "decayed, no ligand, beside unlabelled: both fall; both as of the activity date",
-            "decayed binds as before: activity falls, levels stay; as of the activity date",
+            "activity and levels are of the activity date; a decayed molecule is no ligand",
+            "both of the activity date; beside unlabelled ligand, the decayed binds no more",
+            "both of the activity date; a decayed molecule binds as before, unlabelled",
         ],
     ),
     field(
