@@ -9,6 +9,9 @@ use ratatui::layout::{Position, Rect};
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
+/// Columns kept for what is typed in a field after the number.
+const TYPED: usize = 16;
+
 /// Bars that stand as long as what they say holds.
 pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
     app.standing()
@@ -19,7 +22,7 @@ pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let width = usize::from(area.width);
-    let (label, typed) = entry(app);
+    let (label, typed) = entry(app, width);
     let cursor = label.chars().count() + typed.chars().take(app.bench.line.visual_cursor()).count();
     let mut line = vec![
         Span::raw(label),
@@ -108,7 +111,7 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
 }
 
 /// What is asked for, with its unit, and what is typed so far.
-fn entry(app: &Desk) -> (String, String) {
+fn entry(app: &Desk, width: usize) -> (String, String) {
     let counter = &app.titration().protocol.counter;
     let mark = counter.mark.char().to_string();
     let minutes = fixed(app.offered_minutes(), 2).replace('.', &mark);
@@ -128,11 +131,22 @@ fn entry(app: &Desk) -> (String, String) {
         }
         Field::Value => format!(" {what} over {minutes} min > "),
         Field::More(begun) => {
-            let so_far = begun.words(what);
-            match begun.asked {
-                Asked::Minutes => format!(" {so_far} in minutes (Enter for {minutes}) > "),
-                Asked::At => format!(" {so_far}, began at hhmm > "),
-                other => format!(" {so_far}, {} > ", other.word()),
+            let asks = match begun.asked {
+                Asked::Minutes => format!("minutes (Enter for {minutes}) > "),
+                Asked::At => "began at hhmm > ".into(),
+                other => format!("{} > ", other.word()),
+            };
+            // What was typed before makes room for what is typed, the number last.
+            let mut parts = begun.parts(what);
+            loop {
+                let label = format!(" {}, {asks}", parts.join(", "));
+                if label.chars().count() + TYPED <= width {
+                    break label;
+                }
+                parts.pop();
+                if parts.is_empty() {
+                    break format!(" {asks}");
+                }
             }
         }
     };

@@ -50,7 +50,7 @@ fn every_field_is_walked_by_enter() {
     assert_eq!(asked(&s), Some(Field::Minutes));
     assert!(
         s.text()
-            .contains("gross cpm 30.5, quench 395 in minutes (Enter for 10.00) >")
+            .contains("gross cpm 30.5, quench 395, minutes (Enter for 10.00) >")
     );
     s.types("\n");
     let r = kept(&s);
@@ -181,6 +181,24 @@ fn a_time_that_cannot_be_is_said_before_the_minutes() {
     }
     s.types("1403\n");
     assert_eq!(asked(&s), Some(Field::Minutes));
+}
+
+#[test]
+fn what_is_typed_stays_in_sight() {
+    let mut s = with_fields("cpm, quench, minutes", &QUENCH);
+    s.types("123456789.25\n400.125\n12.5");
+    for (columns, so_far) in [
+        (120, "quench 400.125"),
+        (80, "gross cpm 123456789.25"),
+        (60, ""),
+    ] {
+        let text = s.screen(columns, 24).text();
+        let prompt = text.lines().find(|l| l.contains("(Enter for")).unwrap();
+        assert!(
+            prompt.contains(" > 12.5") && prompt.contains(so_far),
+            "{prompt}"
+        );
+    }
 }
 
 #[test]

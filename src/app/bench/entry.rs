@@ -133,7 +133,7 @@ impl Desk {
         for field in wanted {
             let with = |r: &Reading| -> Vec<Reading> {
                 match field {
-                    Asked::Minutes => [1.0 / FAR, 1.0, FAR]
+                    Asked::Minutes => [1.0, 1.0 / FAR, FAR]
                         .map(|times| Reading {
                             minutes: times * reading.minutes,
                             ..r.clone()
@@ -294,8 +294,8 @@ fn quench(text: &str, mark: Mark) -> Result<f64, String> {
 }
 
 impl Begun {
-    /// What was typed so far, each with its unit: `1203 gross cpm, 2 min, quench 410`.
-    pub fn words(&self, what: &str) -> String {
+    /// What was typed so far, each with its unit: `gross cpm 1203`, `2 min`, `quench 410`.
+    pub fn parts(&self, what: &str) -> Vec<String> {
         let mut parts = vec![format!(
             "{what} {}",
             self.raw.first().map_or("", String::as_str)
@@ -310,6 +310,6 @@ impl Begun {
         if let Some(at) = reading.counted {
             parts.push(format!("at {}", at.clock()));
         }
-        parts.join(", ")
+        parts
     }
 }
