@@ -5,6 +5,7 @@ mod marks;
 mod time;
 
 pub use entry::Begun;
+pub(super) use entry::in_a_line;
 
 use super::keys::{self, Command, Key};
 use super::layers::{Layer, LineFor};

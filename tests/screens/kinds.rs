@@ -86,6 +86,8 @@ fn a_refusal_is_said_at_its_field_and_loses_nothing() {
         "{}",
         s.said()
     );
+    // All of it is to be seen.
+    assert!(s.text().contains("which go from 380 to 410"));
     // Not yet on to the minutes, and both numbers still there.
     assert_eq!((asked(&s), line(&s)), (Some(Field::Quench), "450"));
     s.times(3, Key::Backspace).types("400\n2000\n");
@@ -118,7 +120,7 @@ fn without_a_time_a_short_lived_label_is_refused_at_the_number() {
     assert_eq!(kept(&s).value, 260.0);
     s.types("1203\n");
     assert!(
-        s.refused() && s.said().contains("no time of counting"),
+        s.refused() && s.said().contains("short-lived label, no time"),
         "{}",
         s.said()
     );

@@ -4,8 +4,9 @@ use super::Field;
 use super::time::{After, moment};
 use crate::app::{Desk, Effect};
 use crate::assay::{Field as Asked, Reading, ReadingError, ReadingId, Scale, Stamp, check_reading};
-use crate::notebook::{Count, Rejection, What, reading_in_words};
+use crate::notebook::{Count, What, reading_in_words};
 use crate::units::{Mark, NumberError, fixed, parse_counts, parse_decimal, short};
+
 use tui_input::Input;
 
 /// A reading of which something was typed and something is still wanted.
@@ -102,8 +103,7 @@ impl Desk {
             return self.keep(reading, now);
         };
         if let Err(cause) = self.possible(&reading, rest, now) {
-            let tube = self.bench.at;
-            return self.refused(Rejection::Reading { tube, cause }.to_string());
+            return self.refused(in_a_line(&cause));
         }
         self.bench.line.reset();
         self.bench.asked = None;
@@ -282,6 +282,21 @@ impl Desk {
         let next = self.after(at);
         self.bench.go(next.unwrap_or(at));
         effects
+    }
+}
+
+/// Why a reading makes no sense, in the one line that the prompt has for it; the vial stands below it.
+pub(in crate::app) fn in_a_line(cause: &ReadingError) -> String {
+    match cause {
+        ReadingError::Quench(what) => what.clone(),
+        ReadingError::NoTime => {
+            "short-lived label, no time: type `at` per vial, or the run (counter step)".into()
+        }
+        ReadingError::BelowNone { counts } => format!(
+            "lower than the background taken off allows: {} counts behind it",
+            short(*counts, 6)
+        ),
+        other => other.to_string(),
     }
 }
 
