@@ -11,11 +11,11 @@ mod result;
 mod sheet;
 mod start;
 
-pub use bench::{Bench, Field};
+pub use bench::{Begun, Bench, Field};
 pub use desk::{Analysed, Desk, Laid, Saved};
 pub use draft::Draft;
 pub use form::{FieldState, Form, Kind};
-pub use layers::{Layer, LineFor, ReasonFor};
+pub use layers::{Layer, LineFor, ReasonFor, working_lines, working_room};
 pub use result::{fit_line, page};
 pub use sheet::Forms;
 pub use start::{Ask, DEMOS, Recent, Start};

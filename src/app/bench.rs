@@ -1,30 +1,39 @@
 //! The bench: one tube at the prompt, a line being typed, and the keys of the reading loop.
 
+mod entry;
 mod marks;
+mod time;
+
+pub use entry::Begun;
+pub(super) use entry::in_a_line;
 
 use super::keys::{self, Command, Key};
 use super::layers::{Layer, LineFor};
 use super::{Desk, Effect, Message, Wide};
-use crate::assay::{Reading, ReadingId, Role, Scale, Stamp, Titration, Tube, TubeNo};
+use crate::assay::{Field as Asked, ReadingId, Role, Stamp, Titration, Tube, TubeNo};
 use crate::figure::Plot;
-use crate::notebook::{Count, What};
-use crate::units::{Mark, NumberError, fixed, parse_counts, parse_decimal};
+use crate::notebook::What;
 use tui_input::{Input, InputRequest};
 
-/// Which field of a reading is being typed.
+/// What is being typed.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Field {
     /// The number on the printout.
     Value,
-    /// The minutes, after this text and number.
-    Minutes {
-        /// The number as typed.
-        raw: String,
-        /// The number.
-        value: f64,
-    },
+    /// A further field of the vial, after what was typed of it.
+    More(Box<Begun>),
     /// A vial number to go to.
     Vial,
+}
+
+impl Field {
+    /// Which further field is asked for.
+    pub fn more(&self) -> Option<Asked> {
+        match self {
+            Field::More(begun) => Some(begun.asked),
+            Field::Value | Field::Vial => None,
+        }
+    }
 }
 
 /// The state of the bench.
@@ -70,27 +79,6 @@ impl Bench {
     }
 }
 
-/// Whether minutes typed are more than ten times, or less than a tenth of, those of the protocol.
-fn far(minutes: f64, offered: f64) -> bool {
-    !(0.1 * offered..=10.0 * offered).contains(&minutes) && minutes > 0.0
-}
-
-/// A number for a reading in the scale of the protocol.
-fn parse_value(text: &str, scale: Scale, mark: Mark) -> Result<f64, NumberError> {
-    match scale {
-        Scale::Counts => parse_counts(text, mark),
-        _ => parse_decimal(text, mark).and_then(|v| {
-            if v < 0.0 && !scale.may_be_negative() {
-                Err(NumberError::Negative {
-                    text: text.trim().into(),
-                })
-            } else {
-                Ok(v)
-            }
-        }),
-    }
-}
-
 impl Desk {
     /// The tube at the prompt.
     pub fn tube(&self) -> Option<&Tube> {
@@ -104,13 +92,15 @@ impl Desk {
     }
 
     pub(super) fn bench_key(&mut self, key: Key, now: Stamp) -> Vec<Effect> {
-        // A number whose minutes are still wanted is on the line too, and no key may drop it unseen.
-        let typing = !self.bench.line.value().is_empty()
-            || matches!(self.bench.field, Field::Minutes { .. });
+        // A number whose further fields are still wanted is on the line too, and no key may drop it unseen.
+        let typing =
+            !self.bench.line.value().is_empty() || matches!(self.bench.field, Field::More(_));
         match key {
             Key::Char(c) if c.is_ascii_digit() || matches!(c, '.' | ',' | ' ') => {
                 return self.typed(c);
             }
+            Key::Char(':') if self.bench.field.more() == Some(Asked::At) => return self.typed(':'),
+            Key::Char('-') if self.may_turn_negative() => return self.turn_negative(),
             // A letter in a number is a slip that Enter has to stumble over: dropped, it would leave another number.
             Key::Char(c) if c.is_alphabetic() && !self.bench.line.value().is_empty() => {
                 return self.typed(c);
@@ -199,6 +189,15 @@ impl Desk {
                 }
                 Vec::new()
             }
+            Command::Working => {
+                if self.analysed.is_some() {
+                    let tube = self.bench.at;
+                    self.layers.push(Layer::working(tube));
+                } else {
+                    self.refuse("fitting; a moment");
+                }
+                Vec::new()
+            }
             Command::Glyphs => {
                 self.look.fine = !self.look.fine;
                 Vec::new()
@@ -273,7 +272,7 @@ impl Desk {
             Field::Vial => self.go_to(&text),
             Field::Value if text.is_empty() => Vec::new(),
             Field::Value => self.value(text, now),
-            Field::Minutes { raw, value } => self.minutes(&raw, value, &text, now),
+            Field::More(begun) => self.more(*begun, &text, now),
         }
     }
 
@@ -344,110 +343,6 @@ impl Desk {
             self.choose(no);
         }
         Vec::new()
-    }
-
-    fn value(&mut self, raw: String, now: Stamp) -> Vec<Effect> {
-        let counter = &self.titration().protocol.counter;
-        let (fields, mark) = (counter.fields, counter.mark);
-        match parse_value(&raw, fields.scale(), mark) {
-            Err(e) => {
-                self.refuse(e.to_string());
-                vec![Effect::Bell]
-            }
-            Ok(value) if fields.with_minutes() => {
-                if let Some(why) = self.not_wanted() {
-                    self.refuse(why);
-                    return vec![Effect::Bell];
-                }
-                self.bench.line.reset();
-                self.bench.field = Field::Minutes { raw, value };
-                Vec::new()
-            }
-            Ok(value) => self.keep(raw, value, None, now),
-        }
-    }
-
-    /// Why a reading of the tube at the prompt would be refused whatever its minutes: said before they are typed.
-    fn not_wanted(&self) -> Option<String> {
-        let t = self.titration();
-        let at = self.bench.at;
-        if let Some((when, _)) = &t.closed {
-            return Some(format!(
-                "the titration was closed at {}; c opens it again",
-                when.minute()
-            ));
-        }
-        if t.lost.contains_key(&at) {
-            return Some(format!("vial {at} is lost; l takes that back"));
-        }
-        let has = t.kept(at).first().filter(|_| !self.bench.again)?;
-        Some(format!(
-            "vial {at} already has {}; + adds a recount",
-            crate::notebook::reading_in_words(&has.reading)
-        ))
-    }
-
-    fn minutes(&mut self, raw: &str, value: f64, text: &str, now: Stamp) -> Vec<Effect> {
-        let mark = self.titration().protocol.counter.mark;
-        let offered = self.offered_minutes();
-        let minutes = match text {
-            "" => Ok(None),
-            text => parse_decimal(text, mark).map(Some),
-        };
-        match minutes {
-            Err(e) => {
-                self.refuse(format!("minutes: {e}"));
-                vec![Effect::Bell]
-            }
-            // The next tube's reading typed for minutes is the slip of this field.
-            Ok(Some(m)) if far(m, offered) && self.bench.asked.as_deref() != Some(text) => {
-                self.bench.line.reset();
-                self.bench.asked = Some(text.into());
-                self.refuse(format!(
-                    "{text} minutes is far from {}; type it again to keep it",
-                    fixed(offered, 2)
-                ));
-                vec![Effect::Bell]
-            }
-            Ok(minutes) => {
-                let shown = if text.is_empty() {
-                    fixed(offered, 2).replace('.', &mark.char().to_string())
-                } else {
-                    text.into()
-                };
-                self.keep(format!("{raw} / {shown}"), value, minutes, now)
-            }
-        }
-    }
-
-    /// Keeps a reading of the tube at the prompt; without minutes of its own it has those of the protocol.
-    fn keep(&mut self, raw: String, value: f64, minutes: Option<f64>, now: Stamp) -> Vec<Effect> {
-        let counted = minutes.unwrap_or_else(|| self.offered_minutes());
-        let scale = self.titration().protocol.counter.fields.scale();
-        let reading = Reading {
-            scale,
-            own_minutes: minutes.is_some(),
-            ..Reading::counts(raw, value, counted)
-        };
-        let at = self.bench.at;
-        let count = if self.bench.again {
-            Count::again(at, reading)
-        } else {
-            Count::first(at, reading)
-        };
-        let Some((entry, effects)) = self.record(
-            What::Counted {
-                readings: vec![count],
-            },
-            now,
-        ) else {
-            return vec![Effect::Bell];
-        };
-        self.bench.last = Some((at, ReadingId(entry.n, 0)));
-        self.say(format!("kept   {}", self.notebook.describe(&entry)));
-        let next = self.after(at);
-        self.bench.go(next.unwrap_or(at));
-        effects
     }
 
     /// The next tube in counting order that wants a reading, from the one after `at` around to the start.

@@ -1,6 +1,6 @@
 //! A titration on the bench: the notebook, the walk around it, and what is said of it.
 
-use super::bench::Bench;
+use super::bench::{Bench, in_a_line};
 use super::form::{Did, Form};
 use super::keys::{self, Key, ResultCommand};
 use super::layers::{Layer, LineFor};
@@ -431,6 +431,7 @@ impl Desk {
                     Rejection::Closed { at, .. } => {
                         format!("the titration was closed at {at}; c opens it again")
                     }
+                    Rejection::Reading { cause, .. } => in_a_line(cause),
                     other => other.to_string(),
                 });
                 None

@@ -26,6 +26,8 @@ pub struct Spec {
     pub kind: Kind,
     /// One line of help.
     pub help: &'static str,
+    /// One line of help for each option of a choice, in its place; empty where `help` is for all.
+    pub each: &'static [&'static str],
 }
 
 /// A field with what is typed in it.
@@ -41,12 +43,23 @@ pub struct FieldState {
     pub fixed: bool,
     /// The value as a whole was just reached: typing puts another in its place, an arrow begins to edit it.
     pub whole: bool,
+    /// It does not apply to what is typed elsewhere: it is not shown, and nothing is read from it.
+    pub hidden: bool,
 }
 
 impl FieldState {
     /// What is typed.
     pub fn value(&self) -> &str {
         self.input.value()
+    }
+
+    /// The line of help for it as it stands.
+    pub fn help(&self) -> &'static str {
+        let Kind::Choice(options) = self.spec.kind else {
+            return self.spec.help;
+        };
+        let at = options.iter().position(|o| *o == self.value()).unwrap_or(0);
+        self.spec.each.get(at).unwrap_or(&self.spec.help)
     }
 }
 
@@ -86,9 +99,48 @@ impl Form {
                 error: None,
                 fixed: false,
                 whole: false,
+                hidden: false,
             })
             .collect();
         Form { fields, at: 0 }
+    }
+
+    /// What a field says: what is typed in it, nothing where it does not apply.
+    pub fn says(&self, name: &str) -> &str {
+        if self.shows(name) {
+            self.value(name)
+        } else {
+            ""
+        }
+    }
+
+    /// Whether a field of this name is in sight.
+    pub fn shows(&self, name: &str) -> bool {
+        self.fields.iter().any(|f| f.spec.name == name && !f.hidden)
+    }
+
+    /// Hides the fields that `hidden` says, and moves the cursor off one of them.
+    pub(super) fn hide(&mut self, hidden: impl Fn(&FieldState) -> bool) {
+        for f in &mut self.fields {
+            f.hidden = hidden(f);
+        }
+        if self.current().is_some_and(|f| f.hidden) {
+            let next = self.next().or_else(|| self.previous());
+            self.at = next.unwrap_or(self.at);
+        }
+    }
+
+    /// The fields in sight with their places.
+    pub fn visible(&self) -> impl DoubleEndedIterator<Item = (usize, &FieldState)> {
+        self.fields.iter().enumerate().filter(|(_, f)| !f.hidden)
+    }
+
+    fn next(&self) -> Option<usize> {
+        self.visible().map(|(i, _)| i).find(|i| *i > self.at)
+    }
+
+    fn previous(&self) -> Option<usize> {
+        self.visible().map(|(i, _)| i).rev().find(|i| *i < self.at)
     }
 
     /// What is typed in a field, without blanks at its ends; empty for a name the form does not have.
@@ -109,13 +161,25 @@ impl Form {
         self.fields.get(self.at)
     }
 
-    /// Forgets all errors and sets these, each `(name or path, what)`.
+    /// Forgets all errors and sets these, each `(name or path, what)`. An error belongs to the field of that name, or to the one whose path
+    /// is the longest that it lies at; the first of several is shown.
     pub fn set_errors(&mut self, errors: &[(String, String)]) {
         for f in &mut self.fields {
-            f.error = errors
-                .iter()
-                .find(|(at, _)| at == f.spec.name || lies_at(at, f.spec.path))
-                .map(|(_, what)| what.clone());
+            f.error = None;
+        }
+        for (at, what) in errors {
+            let named = self.fields.iter().position(|f| f.spec.name == at);
+            let lies = || {
+                let all = self.fields.iter().enumerate();
+                all.filter(|(_, f)| lies_at(at, f.spec.path))
+                    .max_by_key(|(_, f)| f.spec.path.len())
+                    .map(|(i, _)| i)
+            };
+            if let Some(f) = named.or_else(lies).and_then(|i| self.fields.get_mut(i)) {
+                // What stands in the way has to be seen.
+                f.hidden = false;
+                f.error.get_or_insert_with(|| what.clone());
+            }
         }
     }
 
@@ -146,19 +210,18 @@ impl Form {
     }
 
     fn take(&mut self, key: Key) -> Did {
-        let last = self.fields.len().saturating_sub(1);
-        match key {
-            Key::Up | Key::BackTab => {
-                self.at = self.at.saturating_sub(1);
+        match (key, self.next()) {
+            (Key::Up | Key::BackTab, _) => {
+                self.at = self.previous().unwrap_or(self.at);
                 return Did::Moved;
             }
-            Key::Down | Key::Tab => {
-                self.at = (self.at + 1).min(last);
+            (Key::Down | Key::Tab, next) => {
+                self.at = next.unwrap_or(self.at);
                 return Did::Moved;
             }
-            Key::Enter if self.at >= last => return Did::Through,
-            Key::Enter => {
-                self.at += 1;
+            (Key::Enter, None) => return Did::Through,
+            (Key::Enter, Some(next)) => {
+                self.at = next;
                 return Did::Moved;
             }
             _ => {}

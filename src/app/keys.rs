@@ -37,6 +37,8 @@ pub enum Command {
     Plot,
     /// Rack and plot, plot alone, table of tubes.
     View,
+    /// How the amounts of a tube are made, step by step.
+    Working,
     /// Braille or plain characters.
     Glyphs,
     /// Shows the keys.
@@ -117,7 +119,7 @@ pub const BENCH: &[Binding<Command>] = &[
         "-",
         Command::Minus,
         "take back",
-        "clear the line; on an empty line take back the newest entry",
+        "clear the line; empty: take back the newest entry; 0-: below zero",
         true,
     ),
     row(
@@ -214,6 +216,14 @@ pub const BENCH: &[Binding<Command>] = &[
         Command::View,
         "",
         "rack and plot, plot alone, table of all tubes",
+        false,
+    ),
+    row(
+        &[Key::Char('s')],
+        "s",
+        Command::Working,
+        "",
+        "the tube at the prompt step by step: formulas, numbers, units",
         false,
     ),
     row(

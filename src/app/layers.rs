@@ -54,6 +54,15 @@ pub enum Layer {
     },
     /// The laws of binding side by side, one to be chosen by its digit.
     Laws,
+    /// How the amounts of a tube are made, step by step.
+    Working {
+        /// Which tube.
+        tube: TubeNo,
+        /// The first line shown.
+        top: usize,
+        /// A vial number being typed.
+        vial: String,
+    },
     /// The keys, from a line down.
     Help {
         /// The first line shown.
@@ -65,10 +74,34 @@ pub enum Layer {
     LeaveUnsaved,
 }
 
+/// Lines of a working that a terminal of so many rows shows: the border takes two.
+pub fn working_room(rows: u16) -> usize {
+    usize::from(rows).saturating_sub(2).max(1)
+}
+
+/// The working of a tube, in the width of the terminal: the border and its margin take six columns.
+pub fn working_lines(desk: &Desk, tube: TubeNo) -> Vec<String> {
+    let t = desk.titration();
+    let (Some(done), Some(tube)) = (&desk.analysed, t.tube(tube)) else {
+        return Vec::new();
+    };
+    let width = usize::from(desk.look.columns).saturating_sub(6);
+    crate::report::working::lines(t, &done.analysis, tube, width)
+}
+
 /// The longest line of words.
 const MOST_WORDS: usize = 200;
 
 impl Layer {
+    /// The working of a tube from its first step.
+    pub fn working(tube: TubeNo) -> Layer {
+        Layer::Working {
+            tube,
+            top: 0,
+            vial: String::new(),
+        }
+    }
+
     /// An empty line of words.
     pub fn line(what: LineFor) -> Layer {
         Layer::Line {
@@ -102,6 +135,10 @@ impl Desk {
                 }
             },
             Some(Layer::Laws) => self.law_key(key, now),
+            Some(Layer::Working { .. }) => {
+                self.working_key(key);
+                Vec::new()
+            }
             Some(Layer::Help { top }) => {
                 let lines = match self.step {
                     Step::Result => keys::result_help(self.look.columns),
@@ -132,6 +169,47 @@ impl Desk {
                     Vec::new()
                 }
             },
+        }
+    }
+
+    fn working_key(&mut self, key: Key) {
+        let Some(Layer::Working { tube, .. }) = self.layers.last() else {
+            return;
+        };
+        let room = working_room(self.look.rows);
+        let last = working_lines(self, *tube).len().saturating_sub(room);
+        let Some(Layer::Working { tube, top, vial }) = self.layers.last_mut() else {
+            return;
+        };
+        match key {
+            Key::Up => *top = top.saturating_sub(1),
+            Key::Down => *top = (*top + 1).min(last),
+            Key::Char(' ') => {
+                *top = if *top >= last {
+                    0
+                } else {
+                    (*top + room).min(last)
+                }
+            }
+            Key::Char(c) if c.is_ascii_digit() && vial.len() < 6 => vial.push(c),
+            Key::Backspace => {
+                vial.pop();
+            }
+            Key::Enter if !vial.is_empty() => {
+                let typed = std::mem::take(vial);
+                let no = TubeNo(typed.parse().unwrap_or(0));
+                if self.notebook.titration().tube(no).is_some() {
+                    (*tube, *top) = (no, 0);
+                    self.message = Default::default();
+                } else {
+                    self.refuse(format!("there is no vial {typed}"));
+                }
+            }
+            Key::Esc | Key::Enter | Key::Char('-' | 's' | 'q') => {
+                self.layers.pop();
+                self.message = Default::default();
+            }
+            _ => {}
         }
     }
 

@@ -2,18 +2,25 @@
 
 mod lab;
 mod read;
+mod shown;
+#[cfg(test)]
+mod tests;
+mod texts;
 mod write;
 
 pub(super) use lab::{lab_form, lab_key, read_lab};
 
-use super::fields::{self, BLANKS, LAID, LAWS, MADE, MARKS, READING, SITES, STICKS, UNITS};
+use super::fields::{
+    self, BLANKS, COUNTED, DECAY, LAID, LAWS, MADE, MARKS, READING, SITES, STICKS, UNITS,
+};
 use super::form::{Did, Form};
 use super::keys::Key;
 use super::{Step, Typed};
-use crate::assay::{Dilution, Lab, Ladder, LadderError, Level, Levels, Protocol, Sheet};
+use crate::assay::{Counted, Dilution, Lab, Ladder, LadderError, Level, Levels, Protocol, Sheet};
 use crate::units::Mark;
-use read::{Reader, exceptions, list, read_protocol};
-use write::{counter_value, cv_fields, follow_mark, protocol_value};
+use read::{Reader, read_counted, read_protocol};
+use texts::{exceptions, few, list};
+use write::{counter_value, cv_fields, follow_mark, kind_of, protocol_value};
 
 /// What stands in the way, each with the name or the path of its field.
 pub type Errors = Vec<(String, String)>;
@@ -27,13 +34,17 @@ pub struct Forms {
     pub ladder: Form,
     /// The counter.
     pub counter: Form,
+    /// Which side is counted of a titration that is open, whose vials are laid.
+    laid: Option<usize>,
 }
 
 impl Forms {
     /// Empty forms with the lab's defaults.
     pub fn fresh(lab: &Lab) -> Forms {
         let protocol = Form::new(fields::PROTOCOL, |s| match s.name {
+            "what is counted" => COUNTED[0].into(),
             "operator" => lab.operator.clone(),
+            "decay" => DECAY[0].into(),
             "blocked with" => "same".into(),
             "nonspecific sticks to" => STICKS[0].into(),
             "fraction counted" => "100 %".into(),
@@ -46,7 +57,7 @@ impl Forms {
             "number of levels" => "8".into(),
             "solutions made" => MADE[0].into(),
             "total tubes" | "nonspecific tubes" => "2".into(),
-            "background vials" => "1".into(),
+            "background vials" | "of each standard" => "1".into(),
             _ => String::new(),
         });
         let counter = Form::new(fields::COUNTER, |s| match s.name {
@@ -61,11 +72,14 @@ impl Forms {
             "try a printout" => "2406".into(),
             name => cv_fields(name, lab.cv_prior, &lab.dilution_error, lab.mark),
         });
-        Forms {
+        let mut forms = Forms {
             protocol,
             ladder,
             counter,
-        }
+            laid: None,
+        };
+        forms.arrange();
+        forms
     }
 
     /// The forms of a titration that is open, as it stands.
@@ -79,11 +93,14 @@ impl Forms {
                 .join(" ")
         });
         let counter = Form::new(fields::COUNTER, |s| counter_value(p, s.name));
-        Forms {
+        let mut forms = Forms {
             protocol,
             ladder,
             counter,
-        }
+            laid: Some(kind_of(&p.separation.counted)),
+        };
+        forms.arrange();
+        forms
     }
 
     /// The form of a step.
@@ -106,10 +123,15 @@ impl Forms {
 
     /// Takes a key in the form of a step. Where another decimal mark is chosen, the numbers of that form follow it.
     pub(super) fn key(&mut self, step: Step, key: Key) -> Did {
-        let before = self.mark();
+        let (before, reader) = (self.mark(), self.is_reader());
         let did = self.of_step_mut(step).key(key);
         let mark = self.mark();
         follow_mark(&mut self.counter, before, mark);
+        follow_mark(&mut self.protocol, before, mark);
+        if self.is_reader() != reader {
+            self.follow_instrument();
+        }
+        self.arrange();
         did
     }
 
@@ -189,8 +211,21 @@ impl Forms {
         if probe.title.is_empty() {
             probe.title = "?".into();
         }
-        if let Err(e) = probe.check() {
+        let checked = match self.laid {
+            Some(_) => probe.check(),
+            None => probe.check_new(),
+        };
+        if let Err(e) = checked {
             errors.push((e.field, e.what));
+        }
+        let now = kind_of(&protocol.separation.counted);
+        // Cells are two vials each, and a reader has standards: a rack of one is not one of the other.
+        if self
+            .laid
+            .is_some_and(|was| was != now && (was > 1 || now > 1))
+        {
+            let what = "the vials of this rack are laid for another way; begin a new titration";
+            errors.push(("what is counted".into(), what.into()));
         }
         if errors.is_empty() {
             Ok(protocol)
@@ -229,10 +264,14 @@ impl Forms {
         };
         let (total, nonspecific) = (r.whole("total tubes"), r.whole("nonspecific tubes"));
         let background = r.whole("background vials");
-        let except = exceptions(&r.text("exceptions")).unwrap_or_else(|e| {
-            r.wrong("exceptions", e);
-            Vec::new()
-        });
+        let except = r.read("exceptions", |t, _| exceptions(t), Vec::new());
+        let no_receptor = r.read("receptor-free tubes", |t, _| few(t), Default::default());
+        let added = r.read("added counted", |t, _| few(t), Default::default());
+        let standards = if r.form.shows("of each standard") {
+            r.whole("of each standard")
+        } else {
+            1
+        };
         let ladder = Ladder {
             levels,
             dilution,
@@ -240,25 +279,31 @@ impl Forms {
             nonspecific,
             except,
             background,
-            no_receptor: Default::default(),
-            added: Default::default(),
-            standards: 1,
+            no_receptor,
+            added,
+            standards,
         };
         if r.errors.is_empty() {
-            match ladder.lay(self.mark(), &crate::assay::Counted::Bound) {
+            match ladder.lay(self.mark(), &self.counted()) {
                 Ok(_) => return Ok(ladder),
+                Err(LadderError::Ladder {
+                    field: "levels",
+                    what,
+                }) => {
+                    r.wrong(self.levels_field(), what);
+                }
                 Err(LadderError::Ladder { field, what }) => {
-                    let at = if field == "levels" {
-                        self.levels_field()
-                    } else {
-                        field
-                    };
-                    r.wrong(at, what);
+                    r.wrong(&format!("ladder.{field}"), what);
                 }
                 Err(e) => r.wrong("list of levels", e.to_string()),
             }
         }
         Err(r.errors)
+    }
+
+    /// Which side is counted, as far as it is typed.
+    pub fn counted(&self) -> Counted {
+        read_counted(&mut Reader::new(&self.protocol, self.mark()))
     }
 
     /// The field that an error of the levels belongs to.
@@ -304,6 +349,7 @@ impl Forms {
 
     /// Marks every field in error; `open` is the rack of a titration that is open.
     pub fn check(&mut self, open: Option<&[Level]>) {
+        self.arrange();
         let mut errors = self.protocol().err().unwrap_or_default();
         let ladder = match open {
             Some(levels) => self.levels(levels).err(),
@@ -313,66 +359,5 @@ impl Forms {
         self.protocol.set_errors(&errors);
         self.ladder.set_errors(&errors);
         self.counter.set_errors(&errors);
-    }
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn a_protocol_survives_its_forms() {
-        let t = Sheet::parse(Sheet::EXAMPLE).unwrap().titration().unwrap();
-        let forms = Forms::of(&t.protocol, &t.levels);
-        assert_eq!(forms.protocol().unwrap(), t.protocol);
-        assert_eq!(forms.levels(&t.levels).unwrap(), t.levels);
-    }
-
-    #[test]
-    fn a_value_out_of_its_limits_is_said_while_others_are_missing() {
-        let mut forms = Forms::fresh(&Lab::default());
-        let field = forms
-            .counter
-            .fields
-            .iter_mut()
-            .find(|f| f.spec.name == "efficiency")
-            .unwrap();
-        field.input = tui_input::Input::new("72".into());
-        forms.check(None);
-        let field = forms
-            .counter
-            .fields
-            .iter()
-            .find(|f| f.spec.name == "efficiency")
-            .unwrap();
-        let error = field.error.clone().unwrap();
-        assert!(error.contains("`72`") && error.contains("100 %"), "{error}");
-    }
-
-    #[test]
-    fn fresh_forms_say_what_is_needed() {
-        let mut forms = Forms::fresh(&Lab::default());
-        forms.check(None);
-        let needed: Vec<&str> = forms
-            .protocol
-            .fields
-            .iter()
-            .filter(|f| f.error.is_some())
-            .map(|f| f.spec.name)
-            .collect();
-        assert_eq!(
-            needed,
-            [
-                "title",
-                "ligand",
-                "label",
-                "specific activity",
-                "preparation",
-                "volume",
-                "unlabelled"
-            ]
-        );
-        assert_eq!(forms.counter.errors(), 1);
-        assert_eq!(forms.ladder.errors(), 2);
     }
 }

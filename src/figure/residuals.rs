@@ -18,7 +18,7 @@ const TWO: f64 = 2.0;
 /// Columns from level to level that let the two roles of a level stand side by side.
 const ROLES_APART: f64 = 2.5;
 
-/// `(counts - expected) / sqrt(variance)` of every tube with a reading against the label added, totals filled and nonspecific
+/// `(counts - expected) / sqrt(variance)` of every tube with a reading against the label added, totals filled and all others
 /// hollow; a residual is in standard deviations, so that a bar would say nothing.
 ///
 /// Tubes of one level stand side by side, a column apart, as far as levels are far enough from each other.
@@ -35,13 +35,13 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
     let room = plot_columns(columns, &y);
     let x = Axis::log(widened(&fit.tubes, &added), Room::Columns(room));
     let places = side_by_side(&fit.tubes, &added, &x, room);
-    let of = |glyph, role| Series {
+    let of = |glyph, totals| Series {
         glyph,
         points: fit
             .tubes
             .iter()
             .zip(&places)
-            .filter(|(t, _)| t.role == role)
+            .filter(|(t, x)| (t.role == Role::Total) == totals && x.is_finite())
             .map(|(t, x)| Point {
                 x: *x,
                 y: t.residual(),
@@ -51,10 +51,7 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
             })
             .collect(),
     };
-    let series = vec![
-        of(PointGlyph::Filled, Role::Total),
-        of(PointGlyph::Hollow, Role::Nonspecific),
-    ];
+    let series = vec![of(PointGlyph::Filled, true), of(PointGlyph::Hollow, false)];
     let level = |y, style| Curve {
         points: vec![(x.low, y), (x.high, y)],
         style,
@@ -67,11 +64,17 @@ pub(super) fn residuals(titration: &Titration, fit: &Fit, columns: usize, rows: 
     let [filled, hollow] =
         [PointGlyph::Filled, PointGlyph::Hollow].map(|g| g.symbol(Glyphs::Braille));
     let x_label = format!("added {}", unit.word());
+    let more = |t: &FittedTube| !matches!(t.role, Role::Total | Role::Nonspecific);
+    let (others, short) = if fit.tubes.iter().any(more) {
+        ("others", "others")
+    } else {
+        ("nonspecific", "nonsp")
+    };
     let x_label = fitting(
         columns,
         [
-            format!("{x_label}   {filled} total  {hollow} nonspecific"),
-            format!("{x_label}  {filled}total {hollow}nonsp"),
+            format!("{x_label}   {filled} total  {hollow} {others}"),
+            format!("{x_label}  {filled}total {hollow}{short}"),
             x_label,
         ],
     );

@@ -39,7 +39,7 @@ fn draw_wide(frame: &mut Frame, area: Rect, app: &Desk) {
         Wide::Plot => plot::draw(frame, area, app),
         Wide::Tubes => tubes::draw(frame, area, app),
         Wide::RackAndPlot => {
-            let table = rack::Table::of(app, area.height);
+            let table = rack::Table::of(app, area.height, area.width);
             let left = area.width.saturating_sub(table.width() + 1);
             if left < NARROWEST_PLOT {
                 table.draw(frame, area);

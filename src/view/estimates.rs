@@ -227,8 +227,13 @@ fn amounts(app: &Desk, no: TubeNo) -> Option<String> {
     let done = app.analysed.as_ref()?;
     let r = done.analysis.tubes.iter().find(|t| t.tube.no == no)?;
     let unit = app.titration().protocol.display.concentration;
-    let m = r.measured?;
     let show = |nm: f64| significant(unit.from_nm(nm), 3);
+    let Some(m) = r.measured else {
+        // An aliquot of what is added, a ligand side, a standard: what it holds.
+        let l = r.label?;
+        let (nm, sd) = (show(l.nm), show(l.sd_nm));
+        return Some(format!(" vial {no}   label {nm} sd {sd}   {}", unit.word()));
+    };
     let specific = r
         .specific_nm
         .map_or(String::new(), |s| format!("   specific {}", show(s)));

@@ -1,9 +1,10 @@
 //! The forms of the walk.
 
+mod preview;
+
 use super::{layers, style, walk};
-use crate::app::{Desk, Draft, FieldState, Form, Forms, Kind, Message, Step};
-use crate::assay::{Ladder, Role};
-use crate::units::{Mark, clean, fixed, grouped, parse_counts, parse_decimal, short};
+use crate::app::{Desk, Draft, FieldState, Form, Kind, Message, Step};
+use crate::units::clean;
 use ratatui::Frame;
 use ratatui::layout::{Constraint, Layout, Position, Rect};
 use ratatui::style::Style;
@@ -14,11 +15,13 @@ use ratatui::widgets::Paragraph;
 const VALUE: usize = 24;
 /// The widest value before what is wrong with it.
 const WIDEST: usize = 30;
+/// The fewest columns of a form beside its rack.
+const LEFT: u16 = 40;
 
 pub(super) fn draw_draft(frame: &mut Frame, area: Rect, draft: &Draft, fine: bool) {
     let [title, body, foot] = parts(area);
     walk::draw_draft(frame, title, draft);
-    let preview = preview(draft);
+    let preview = preview::of(draft);
     step(frame, body, draft.form(), preview, draft.step);
     self::foot(
         frame,
@@ -60,7 +63,7 @@ pub(super) fn draw_desk(frame: &mut Frame, area: Rect, app: &Desk) {
             .iter()
             .map(|l| format!("level {}   {}", l.no, clean(&l.line().value)))
             .collect(),
-        Step::Counter => vec![worked(forms)],
+        Step::Counter => preview::worked(forms),
         _ => Vec::new(),
     };
     step(frame, body, form, extra, app.step);
@@ -85,15 +88,30 @@ fn parts(area: Rect) -> [Rect; 3] {
 
 /// A form, with lines of preview beside (ladder) or below it.
 fn step(frame: &mut Frame, area: Rect, form: &Form, extra: Vec<String>, step: Step) {
-    let beside =
-        step == Step::Ladder && area.width >= 76 && !extra.is_empty() && form.fields.len() > 1;
+    let shown = form.visible().count();
+    let extra: Vec<String> = match step {
+        Step::Ladder => extra,
+        _ => extra.iter().flat_map(|l| indented(l, area.width)).collect(),
+    };
+    let beside = step == Step::Ladder && area.width >= 76 && !extra.is_empty() && shown > 1;
     let area_of_extra = if beside {
-        let [left, right] =
-            Layout::horizontal([Constraint::Min(46), Constraint::Length(32)]).areas(area);
+        // What is typed keeps the columns of its name and of a number.
+        let widest = extra.iter().map(|l| l.chars().count() as u16).max();
+        let right = widest
+            .unwrap_or(0)
+            .clamp(32, area.width.saturating_sub(LEFT));
+        let [left, _, right] = Layout::horizontal([
+            Constraint::Min(LEFT),
+            Constraint::Length(1),
+            Constraint::Length(right),
+        ])
+        .areas(area);
         fields(frame, left, form);
         right
     } else {
-        let rows = (form.fields.len() as u16 + 1).min(area.height);
+        let least = (area.height / 2).max(1);
+        let rows =
+            (shown as u16 + 1).min(area.height.saturating_sub(extra.len() as u16).max(least));
         let [top, below] =
             Layout::vertical([Constraint::Length(rows), Constraint::Min(0)]).areas(area);
         fields(frame, top, form);
@@ -103,15 +121,21 @@ fn step(frame: &mut Frame, area: Rect, form: &Form, extra: Vec<String>, step: St
     frame.render_widget(Paragraph::new(lines), area_of_extra);
 }
 
+/// A line below a form, broken where it has no room.
+fn indented(text: &str, width: u16) -> Vec<String> {
+    let wrapped = style::wrapped(text, usize::from(width).saturating_sub(2));
+    wrapped.into_iter().map(|l| format!("  {l}")).collect()
+}
+
 fn fields(frame: &mut Frame, area: Rect, form: &Form) {
     let room = usize::from(area.height).max(1);
-    let top = (form.at + 1 + room / 3)
+    let shown: Vec<(usize, &FieldState)> = form.visible().collect();
+    let at = shown.iter().position(|(i, _)| *i == form.at).unwrap_or(0);
+    let top = (at + 1 + room / 3)
         .saturating_sub(room)
-        .min(form.fields.len().saturating_sub(room));
-    let lines: Vec<Line> = form
-        .fields
-        .iter()
-        .enumerate()
+        .min(shown.len().saturating_sub(room));
+    let lines: Vec<Line> = shown
+        .into_iter()
         .skip(top)
         .take(room)
         .map(|(i, f)| field(f, i == form.at, usize::from(area.width)))
@@ -122,7 +146,7 @@ fn fields(frame: &mut Frame, area: Rect, form: &Form) {
         .and_then(|f| cursor(f, usize::from(area.width)));
     if let Some(column) = column {
         let x = area.x + (column as u16).min(area.width.saturating_sub(1));
-        frame.set_cursor_position(Position::new(x, area.y + (form.at - top) as u16));
+        frame.set_cursor_position(Position::new(x, area.y + (at - top) as u16));
     }
 }
 
@@ -193,7 +217,7 @@ fn foot(frame: &mut Frame, area: Rect, form: &Form, message: &Message, fine: boo
     let glyph = if fine { "─" } else { "-" };
     let width = usize::from(area.width);
     let current = form.current();
-    let help = current.map_or("", |f| f.spec.help);
+    let help = current.map_or("", FieldState::help);
     let error = current.and_then(|f| f.error.as_deref());
     let (said, weight) = match (message.text.is_empty(), error) {
         (false, _) if message.refusal => (clean(&message.text), style::strong()),
@@ -214,89 +238,4 @@ fn foot(frame: &mut Frame, area: Rect, form: &Form, message: &Message, fine: boo
         Line::styled(format!(" {hints}"), style::quiet()),
     ];
     frame.render_widget(Paragraph::new(lines), area);
-}
-
-fn preview(draft: &Draft) -> Vec<String> {
-    match draft.step {
-        Step::Ladder => match draft.forms.ladder() {
-            Ok(ladder) => rack(&ladder, draft.forms.mark()),
-            Err(_) => vec![
-                "the rack is shown here".into(),
-                "once the fields are complete".into(),
-            ],
-        },
-        Step::Counter => vec![worked(&draft.forms)],
-        _ => Vec::new(),
-    }
-}
-
-/// The rack that a ladder lays: a line a level with its vial numbers.
-fn rack(ladder: &Ladder, mark: Mark) -> Vec<String> {
-    let Ok((levels, tubes)) = ladder.lay(mark, &crate::assay::Counted::Bound) else {
-        return Vec::new();
-    };
-    let vials = |role: Role, level| {
-        let numbers: Vec<u32> = tubes
-            .iter()
-            .filter(|t| t.role == role && t.level == level)
-            .map(|t| t.no.0)
-            .collect();
-        match numbers.as_slice() {
-            [] => "-".to_string(),
-            [one] => one.to_string(),
-            [first, .., last] => format!("{first}-{last}"),
-        }
-    };
-    let mut lines = vec![format!(
-        "{:>3} {:>10} {:>8} {:>8}",
-        "", "", "total", "nonsp"
-    )];
-    lines.push(format!(
-        "{:>14} {:>8}",
-        "background",
-        vials(Role::Background, None)
-    ));
-    lines.extend(levels.iter().map(|l| {
-        let at = Some(l.no);
-        format!(
-            "{:>3} {:>10} {:>8} {:>8}",
-            l.no,
-            clean(&l.added.text),
-            vials(Role::Total, at),
-            vials(Role::Nonspecific, at)
-        )
-    }));
-    lines.push(format!("{} vials in all", tubes.len()));
-    lines
-}
-
-/// The one worked line that proves the unit of what is typed: counts typed as cpm are a twofold error nothing can catch.
-fn worked(forms: &Forms) -> String {
-    let mark = forms.mark();
-    let typed = forms.counter.value("try a printout").to_string();
-    let Ok(p) = forms.protocol() else {
-        return "  the worked line stands here once protocol and counter are complete".into();
-    };
-    let minutes = p.counter.minutes.base();
-    let per_cpm = 1.0 / p.counts_per_fmol();
-    let shown = |v: f64, decimals: usize| fixed(v, decimals).replace('.', &mark.char().to_string());
-    let cpm = match p.counter.fields.scale() {
-        crate::assay::Scale::Counts => parse_counts(&typed, mark).map(|n| (n / minutes, n)),
-        _ => parse_decimal(&typed, mark).map(|r| (r, r * minutes)),
-    };
-    match (cpm, p.counter.fields.scale()) {
-        (Err(e), _) => format!("  printout: {e}"),
-        (Ok((cpm, _)), crate::assay::Scale::Counts) => format!(
-            "  printout {typed} counts in {} min = {} cpm = {} fmol, background included",
-            shown(minutes, 2),
-            shown(cpm, 1),
-            short(cpm * per_cpm, 3)
-        ),
-        (Ok((cpm, counts)), _) => format!(
-            "  printout {typed} cpm, {} min = {} counts = {} fmol, background included",
-            shown(minutes, 2),
-            grouped(counts),
-            short(cpm * per_cpm, 3)
-        ),
-    }
 }

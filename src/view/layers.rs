@@ -1,8 +1,8 @@
 //! What lies over the bench.
 
 use super::style;
-use crate::app::{Desk, Layer, LineFor, ReasonFor, Step, keys};
-use crate::assay::Reason;
+use crate::app::{Desk, Layer, LineFor, ReasonFor, Step, keys, working_lines, working_room};
+use crate::assay::{Reason, TubeNo};
 use crate::notebook::reading_in_words;
 use crate::report::{judged, values};
 use crate::units::clean;
@@ -35,6 +35,9 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             ask(frame, area, &title, input, below, fine);
         }
         Some(Layer::Laws) => laws(frame, area, app),
+        Some(Layer::Working { tube, top, vial }) => {
+            working(frame, area, app, *tube, *top, vial);
+        }
         Some(Layer::Help { top }) => help(frame, area, app, *top),
         Some(Layer::Close) => {
             let (title, text) = match app.titration().closed {
@@ -199,6 +202,25 @@ fn laws(frame: &mut Frame, area: Rect, app: &Desk) {
         lines,
         app.look.fine,
     );
+}
+
+/// The working of a tube, from a line down.
+fn working(frame: &mut Frame, area: Rect, app: &Desk, tube: TubeNo, top: usize, vial: &str) {
+    let all = working_lines(app, tube);
+    let room = working_room(area.height);
+    let over = all.len().saturating_sub(room);
+    let title = if !vial.is_empty() {
+        format!("vial {vial}_   Enter shows its working")
+    } else if app.message.refusal {
+        clean(&app.message.text)
+    } else if over > 0 {
+        "Up Down Space move   digits, Enter: another vial   Esc closes".into()
+    } else {
+        "digits, Enter: another vial   Esc closes".into()
+    };
+    let lines = all.into_iter().skip(top.min(over)).take(room);
+    let lines = lines.map(Line::from).collect();
+    panel(frame, area, &title, lines, app.look.fine);
 }
 
 fn help(frame: &mut Frame, area: Rect, app: &Desk, top: u16) {

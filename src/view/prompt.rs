@@ -2,15 +2,15 @@
 
 use super::style;
 use crate::app::{Access, Desk, Field, keys};
-use crate::assay::Scale;
+use crate::assay::{Field as Asked, Scale};
 use crate::units::{clean, fixed};
 use ratatui::Frame;
 use ratatui::layout::{Position, Rect};
 use ratatui::text::{Line, Span};
 use ratatui::widgets::Paragraph;
 
-/// Columns from which on everything is said in full.
-const WIDE: usize = 78;
+/// Columns kept for what is typed in a field after the number.
+const TYPED: usize = 16;
 
 /// Bars that stand as long as what they say holds.
 pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
@@ -22,7 +22,7 @@ pub(super) fn bars(app: &Desk) -> Vec<Line<'static>> {
 
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let width = usize::from(area.width);
-    let (label, typed) = entry(app);
+    let (label, typed) = entry(app, width);
     let cursor = label.chars().count() + typed.chars().take(app.bench.line.visual_cursor()).count();
     let mut line = vec![
         Span::raw(label),
@@ -77,22 +77,30 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
     let Some(tube) = app.tube() else {
         return Line::default();
     };
-    let added = tube
-        .level
-        .and_then(|l| t.level(l))
-        .map_or(String::new(), |l| format!("{}   ", clean(&l.added.text)));
-    let done = match t.next_unread() {
-        None if width >= WIDE => "   all read or lost; PgDn: result",
-        None => "   none left",
-        Some(_) => "",
-    };
+    let standards = t.protocol.separation.counted.standards();
+    let standard = tube
+        .standard
+        .and_then(|n| standards.get(usize::from(n).checked_sub(1)?));
+    let level = tube.level.and_then(|l| t.level(l)).map(|l| &l.added);
+    let holds = level
+        .or(standard)
+        .map_or(String::new(), |added| format!("{}   ", clean(&added.text)));
     let again = if app.bench.again { "RECOUNT of " } else { "" };
-    let text = format!(
-        " {again}vial {}   {added}{} {}{done}",
+    let side = tube
+        .side
+        .map_or(String::new(), |s| format!("   {}", s.word().to_uppercase()));
+    let mut text = format!(
+        " {again}vial {}   {holds}{} {}{side}",
         tube.no,
-        tube.role.word().to_uppercase(),
+        t.word_for(tube.role).to_uppercase(),
         tube.letter()
     );
+    if t.next_unread().is_none() {
+        let used = text.chars().count() + progress.chars().count();
+        let said = ["   all read or lost; PgDn: result", "   none left"];
+        let fits = said.iter().find(|s| used + s.len() < width);
+        text.push_str(fits.unwrap_or(&""));
+    }
     let gap = width
         .saturating_sub(text.chars().count() + progress.chars().count())
         .max(1);
@@ -103,7 +111,7 @@ fn next(app: &Desk, width: usize) -> Line<'static> {
 }
 
 /// What is asked for, with its unit, and what is typed so far.
-fn entry(app: &Desk) -> (String, String) {
+fn entry(app: &Desk, width: usize) -> (String, String) {
     let counter = &app.titration().protocol.counter;
     let mark = counter.mark.char().to_string();
     let minutes = fixed(app.offered_minutes(), 2).replace('.', &mark);
@@ -116,12 +124,31 @@ fn entry(app: &Desk) -> (String, String) {
     let typed = app.bench.line.value().to_string();
     let label = match &app.bench.field {
         Field::Vial => " go to vial / ".into(),
+        Field::Value if counter.fields.scale() == Scale::Signal => format!(" {what} > "),
         Field::Value if counter.fields.with_minutes() => format!(" {what} > "),
         Field::Value if counter.fields.scale() == Scale::Counts => {
             format!(" {what} in {minutes} min > ")
         }
         Field::Value => format!(" {what} over {minutes} min > "),
-        Field::Minutes { raw, .. } => format!(" {what} {raw} in minutes (Enter for {minutes}) > "),
+        Field::More(begun) => {
+            let asks = match begun.asked {
+                Asked::Minutes => format!("minutes (Enter for {minutes}) > "),
+                Asked::At => "began at hhmm > ".into(),
+                other => format!("{} > ", other.word()),
+            };
+            // What was typed before makes room for what is typed, the number last.
+            let mut parts = begun.parts(what);
+            loop {
+                let label = format!(" {}, {asks}", parts.join(", "));
+                if label.chars().count() + TYPED <= width {
+                    break label;
+                }
+                parts.pop();
+                if parts.is_empty() {
+                    break format!(" {asks}");
+                }
+            }
+        }
     };
     (label, typed)
 }

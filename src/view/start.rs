@@ -137,7 +137,7 @@ fn lab(frame: &mut Frame, area: Rect, form: &crate::app::Form, fine: bool) {
         .collect();
     let current = form.current();
     lines.push(Line::default());
-    lines.push(Line::from(current.map_or("", |f| f.spec.help)));
+    lines.push(Line::from(current.map_or("", crate::app::FieldState::help)));
     let wrong = current.and_then(|f| f.error.as_deref()).unwrap_or_default();
     lines.push(Line::styled(clean(wrong), style::strong()));
     lines.push(Line::styled(

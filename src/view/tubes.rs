@@ -2,7 +2,7 @@
 
 use super::style;
 use crate::app::Desk;
-use crate::assay::observed;
+use crate::assay::{Side, Titration, Tube, observed};
 use crate::report::values;
 use crate::units::{fixed, short, significant};
 use ratatui::Frame;
@@ -14,8 +14,14 @@ use ratatui::widgets::Paragraph;
 pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let t = app.titration();
     let unit = t.protocol.display.concentration;
+    let signal = t.protocol.separation.counted.is_signal();
+    let (read, over) = if signal {
+        ("signal", "")
+    } else {
+        ("counts", "min")
+    };
     let head = format!(
-        " vial  added {:<13} counts    min     bound       sd    free  specific",
+        " vial  added {:<13} {read:>6} {over:>6}     bound       sd    free  specific",
         unit.word()
     );
     let head = Line::styled(head, style::quiet());
@@ -39,8 +45,9 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
         }
         let added = t
             .added_nm(tube)
+            .or_else(|| t.standard_nm(tube))
             .map_or("-".into(), |nm| short(unit.from_nm(nm), 3));
-        let role = format!("{} {}", tube.role, tube.letter());
+        let role = role(t, tube);
         // The newest analysis may be of a moment ago; the readings themselves are always of now.
         let counts = observed(t, tube.no, true).or_else(|| observed(t, tube.no, false));
         let r = results
@@ -55,13 +62,19 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             tube.no,
             added,
             role,
-            counts.map_or(if lost { "lost" } else { "." }.into(), |o| fixed(
-                o.counts, 0
-            )),
-            counts.map_or(String::new(), |o| fixed(o.minutes, 2)),
+            counts.map_or(if lost { "lost" } else { "." }.into(), |o| {
+                super::rack::shown(t, o)
+            }),
+            counts
+                .filter(|_| !signal)
+                .map_or(String::new(), |o| fixed(o.minutes, 2)),
             amount(m.map(|m| m.bound_nm)),
             amount(m.map(|m| m.bound_sd_nm)),
-            number(r.and_then(|r| r.free_nm)),
+            number(r.and_then(|r| match tube.side {
+                // What the ligand side holds is free.
+                Some(Side::Ligand) => r.label.map(|l| l.nm),
+                _ => r.free_nm,
+            })),
             amount(r.and_then(|r| r.specific_nm)),
         );
         lines.push(Line::styled(
@@ -76,4 +89,20 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
     let mut shown = vec![head];
     shown.extend(lines.into_iter().skip(top).take(room));
     frame.render_widget(Paragraph::new(shown), area);
+}
+
+/// Role, replicate and side in thirteen columns.
+fn role(t: &Titration, tube: &Tube) -> String {
+    let word = t.word_for(tube.role);
+    match tube.side {
+        None => format!("{word} {}", tube.letter()),
+        Some(side) => {
+            let short = if word.len() > 5 { "nonsp" } else { word };
+            let side = match side {
+                Side::Protein => "prot",
+                Side::Ligand => "lig",
+            };
+            format!("{short} {} {side}", tube.letter())
+        }
+    }
 }

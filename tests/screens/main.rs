@@ -4,6 +4,7 @@
 mod bench;
 mod house;
 mod keys;
+mod kinds;
 mod modes;
 mod page;
 mod plots;

@@ -222,7 +222,7 @@ fn what_is_typed_or_pasted_is_tamed_before_it_is_kept() {
     s.types("n").types("a\u{202e}b\u{1b}c\n");
     assert!(matches!(s.newest(), What::Noted { text, .. } if text == "abc"));
     let mut s = Sitting::at_start(Vec::new());
-    s.types("n");
+    s.types("n\n");
     s.happen(Event::Paste(HOSTILE.into()));
     let title = s.draft().forms.protocol.value("title");
     tame("the title", title);
@@ -386,7 +386,9 @@ fn a_title_in_wide_characters_leaves_the_walk_in_sight() {
         assert!(first.ends_with("TUBES  result"), "{first}");
     }
     // The cursor stands behind what is typed, however wide it is.
-    s.times(3, Key::PageUp).press(Key::Ctrl('u'));
+    s.times(3, Key::PageUp)
+        .times(1, Key::Down)
+        .press(Key::Ctrl('u'));
     s.types("\u{6f22}\u{5b57}");
-    assert_eq!(s.screen(80, 24).cursor, Some((24 + 4, 1)));
+    assert_eq!(s.screen(80, 24).cursor, Some((24 + 4, 2)));
 }

@@ -1,5 +1,9 @@
 //! Every screen of the program, each reached by keys as a person would reach it.
 
+mod kinds;
+
+pub use kinds::*;
+
 use crate::sitting::{Sitting, demo, digest, example, noon, opened};
 use rackside::app::keys::Key;
 use rackside::app::{Access, Event, Laid, Recent};
@@ -74,13 +78,15 @@ pub fn start() -> Vec<Scene> {
 }
 
 /// What is typed in the protocol of the example, field by field; a choice that stands is an empty text.
-pub const PROTOCOL: [&str; 27] = [
+pub const PROTOCOL: [&str; 29] = [
+    "",
     "OB-31 binding to retina membranes, batch 9",
     "J. Example",
     "OB-31",
     "H-3",
     "80 Ci/mmol",
-    "2031-05-04",
+    "",
+    "",
     "invented 12",
     "retina membranes",
     "9",
@@ -105,12 +111,11 @@ pub const PROTOCOL: [&str; 27] = [
 ];
 
 /// The ladder of the example, written as a list.
-pub const LADDER: [&str; 10] = [
+pub const LADDER: [&str; 9] = [
     "2",
-    "",
-    "",
-    "",
     "0.05 nM 0.1 nM 0.2 nM 0.5 nM 1 nM 2 nM 5 nM 10 nM",
+    "",
+    "",
     "",
     "",
     "",
@@ -119,9 +124,10 @@ pub const LADDER: [&str; 10] = [
 ];
 
 /// The counter of the example.
-pub const COUNTER: [&str; 14] = [
+pub const COUNTER: [&str; 15] = [
     "counter 2",
     "45 %",
+    "",
     "",
     "",
     "",
@@ -171,10 +177,10 @@ pub fn draft() -> Vec<Scene> {
             s.press(Key::PageUp);
         }),
         made("draft_protocol_top", drafted(), |s| {
-            s.times(1, Key::PageUp).times(30, Key::Up);
+            s.times(1, Key::PageUp).times(40, Key::Up);
         }),
         made("draft_protocol_error", fresh(), |s| {
-            fill(s, &PROTOCOL[..4]);
+            fill(s, &PROTOCOL[..5]);
             s.types("80 Ci");
         }),
         made("draft_ladder_fresh", drafted(), |_| {}),
@@ -182,7 +188,7 @@ pub fn draft() -> Vec<Scene> {
             fill(s, &["", "50 pM", "10 nM"]);
         }),
         made("draft_ladder_list", drafted(), |s| {
-            fill(s, &LADDER[..8]);
+            fill(s, &LADDER[..5]);
             s.types("3: 3+0; 8: 2+4");
         }),
         made("draft_ladder_error", drafted(), |s| {
@@ -194,12 +200,12 @@ pub fn draft() -> Vec<Scene> {
         }),
         made("draft_counter_worked", drafted(), |s| {
             fill(s, &LADDER);
-            fill(s, &COUNTER[..13]);
+            fill(s, &COUNTER[..14]);
             s.types("4812");
         }),
         made("draft_counter_cpm", drafted(), |s| {
             fill(s, &LADDER);
-            fill(s, &["counter 2", "45 %", "3"]);
+            fill(s, &["counter 2", "45 %", "cpm"]);
         }),
         made("draft_file", complete(), |_| {}),
         made("draft_file_refused", complete(), |s| {
@@ -415,7 +421,7 @@ pub fn forms() -> Vec<Scene> {
             s.times(3, Key::PageUp);
         }),
         made("forms_protocol_end", done(), |s| {
-            s.times(3, Key::PageUp).times(30, Key::Down);
+            s.times(3, Key::PageUp).times(40, Key::Down);
         }),
         made("forms_ladder", done(), |s| {
             s.times(2, Key::PageUp);
@@ -538,6 +544,8 @@ pub fn all() -> Vec<Scene> {
         start(),
         draft(),
         bench(),
+        kinds(),
+        draft_kinds(),
         plots(),
         popups(),
         bars(),

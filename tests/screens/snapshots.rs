@@ -24,6 +24,16 @@ fn the_bench() {
 }
 
 #[test]
+fn racks_of_every_kind() {
+    hold(scenes::kinds());
+}
+
+#[test]
+fn drafts_of_every_kind() {
+    hold(scenes::draft_kinds());
+}
+
+#[test]
 fn the_plots() {
     hold(scenes::plots());
 }

@@ -27,7 +27,9 @@ fn keys_alone_give_the_titration_of_the_sheet() {
         Some("ob-31-binding-to-retina-membranes-batch-9.ron")
     );
     s.types("\n");
-    assert_eq!(*created(&s), example(&[]));
+    // Without decay to compute, no activity date is asked for.
+    let undated = example(&[("activity_date: \"2031-05-04\",", "")]);
+    assert_eq!(*created(&s), undated);
     assert_eq!((s.desk().step, s.entries()), (Step::Tubes, 1));
     assert_eq!(s.desk().notebook.entries()[0].who, WHO);
     // Leaving leads back to where it began.
@@ -40,11 +42,14 @@ fn a_ladder_of_equal_ratios_with_exceptions() {
     let mut s = scenes::drafted();
     fill(
         &mut s,
-        &["", "50 pM", "5 nM", "5", "", "2", "3", "1", "3: 3+0", "2"],
+        &[
+            "", "50 pM", "5 nM", "5", "2", "3", "1", "3: 3+0", "", "", "2",
+        ],
     );
     fill(&mut s, &COUNTER);
     s.types("\n");
     let sheet = example(&[
+        ("activity_date: \"2031-05-04\",", ""),
         (
             r#"List(["0.05 nM", "0.1 nM", "0.2 nM", "0.5 nM", "1 nM", "2 nM", "5 nM", "10 nM"])"#,
             r#"Geometric(lowest: "50 pM", highest: "5 nM", number: 5)"#,
@@ -62,8 +67,8 @@ fn a_ladder_of_equal_ratios_with_exceptions() {
 fn errors_stand_beside_their_fields() {
     let mut s = Sitting::at_start(Vec::new());
     s.types("n");
-    fill(&mut s, &PROTOCOL[..4]);
-    s.types("80 Ci\n2031-5-4\n");
+    fill(&mut s, &PROTOCOL[..5]);
+    s.types("80 Ci\n2\n2031-5-4\n");
     let text = s.text();
     let line = |name: &str| text.lines().find(|l| l.contains(name)).unwrap().to_string();
     assert!(
@@ -97,7 +102,7 @@ fn an_untouched_draft_is_left_at_once_and_another_after_a_question() {
     let mut s = Sitting::at_start(Vec::new());
     s.types("n").press(Key::Esc);
     assert!(matches!(s.app.scene, Scene::Start(_)));
-    s.types("nX").press(Key::Esc);
+    s.types("n\nX").press(Key::Esc);
     assert!(s.draft().leaving);
     s.types("n");
     assert_eq!(s.draft().forms.protocol.value("title"), "X");
@@ -110,7 +115,7 @@ fn an_untouched_draft_is_left_at_once_and_another_after_a_question() {
 fn numbers_follow_the_decimal_mark() {
     let mut s = scenes::drafted();
     fill(&mut s, &LADDER);
-    fill(&mut s, &COUNTER[..6]);
+    fill(&mut s, &COUNTER[..7]);
     s.types("2");
     let value = |s: &Sitting| s.draft().forms.counter.value("its factor").to_string();
     assert_eq!(value(&s), "0,7");
@@ -219,7 +224,9 @@ fn looking_at_the_forms_is_no_correction() {
 fn a_change_typed_back_is_no_correction() {
     let mut s = Sitting::demo("finished");
     let before = s.entries();
-    s.times(3, Key::PageUp).types("!");
+    s.times(3, Key::PageUp).press(Key::Down);
+    s.press(Key::End);
+    s.types("!");
     s.press(Key::Backspace);
     there_and_back(&mut s, &[Key::PageDown; 3]);
     assert_eq!((s.desk().step, s.entries()), (Step::Tubes, before));
@@ -390,7 +397,7 @@ fn another_decimal_mark_is_one_correction_among_others() {
         ),
     ]);
     let mut s = Sitting::at(opened(t));
-    s.times(1, Key::PageUp).times(6, Key::Down).types("2");
+    s.times(1, Key::PageUp).times(7, Key::Down).types("2");
     s.press(Key::PageDown);
     s.types("the printouts have commas\n");
     let p = &s.desk().titration().protocol;
@@ -425,7 +432,7 @@ proptest! {
         let mut wanted = t.protocol.clone();
         wanted.title = "another".into();
         let mut s = Sitting::at(opened(t));
-        s.times(3, Key::PageUp).press(Key::Ctrl('u'));
+        s.times(3, Key::PageUp).times(1, Key::Down).press(Key::Ctrl('u'));
         s.types("another").times(3, Key::PageDown);
         s.types("a better name\n");
         let What::Amended { protocol, .. } = s.newest() else {

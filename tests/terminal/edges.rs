@@ -216,7 +216,7 @@ fn a_vanished_terminal_leaves_no_process_and_burns_nothing() {
     for (line, sign, keys, then) in [
         ("rackside open rack.ron", "pKd", "314", "314"),
         ("rackside", "33 of 33", "", "33 of 33"),
-        ("rackside", "33 of 33", "nHalf typed", "Half typed"),
+        ("rackside", "33 of 33", "n\rHalf typed", "Half typed"),
     ] {
         // The shell outlives the program, so that it can say how it ended and what it cost.
         let line = format!("trap : HUP; {line}; echo $? >code; times >times");

@@ -1,14 +1,15 @@
 //! What is typed, read.
 
-use super::super::fields::{BLANKS, LAWS, SITES, STICKS, UNITS};
+use super::super::fields::{BLANKS, COUNTED, DECAY, LAWS, SITES, STICKS, UNITS};
 use super::super::form::Form;
 use super::Errors;
+use super::texts::{list, quench, receptor_amount, run, scale_errors, taken_off};
 use crate::assay::{
-    BackgroundVials, BlankKind, Counter, CvPrior, Display, DisplayUnit, Except, Fields, Incubation,
-    Ligand, Model, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount, ScaleErrors,
-    Separation, SitesUnit, Sticks, Unlabelled, When,
+    BackgroundVials, BlankKind, Carrier, Counted, Counter, CvPrior, Display, DisplayUnit, Field,
+    Fields, Incubation, Ligand, Model, Nonspecific, Numbers, Protocol, Receptor, ReceptorAmount,
+    ScaleErrors, Separation, SitesUnit, Sticks, Unlabelled, When,
 };
-use crate::units::{Amount, Dimension, Fraction, Mark, Measure, NanoMolar, Typed, parse_decimal};
+use crate::units::{Amount, Dimension, Fraction, Mark, Measure, Typed, parse_decimal};
 
 /// A reader of one form that gathers what is wrong.
 pub(super) struct Reader<'f> {
@@ -31,19 +32,49 @@ impl<'f> Reader<'f> {
     }
 
     pub(super) fn text(&self, name: &str) -> String {
-        self.form.value(name).to_string()
+        self.form.says(name).to_string()
     }
 
     pub(super) fn needed(&mut self, name: &str) -> String {
         let text = self.text(name);
-        if text.is_empty() {
+        if text.is_empty() && self.form.shows(name) {
             self.wrong(name, "needed");
         }
         text
     }
 
+    /// A text in a reading of its own; the stand-in where it cannot be read.
+    pub(super) fn read<T>(
+        &mut self,
+        name: &str,
+        read: impl Fn(&str, Mark) -> Result<T, String>,
+        stand_in: T,
+    ) -> T {
+        match read(self.form.says(name), self.mark) {
+            Ok(found) => found,
+            Err(e) => {
+                self.wrong(name, e);
+                stand_in
+            }
+        }
+    }
+
+    /// A moment; `needed` where it has to be given.
+    fn when(&mut self, name: &str) -> Option<When> {
+        match self.needed(name).as_str() {
+            "" => None,
+            text => match When::parse(text) {
+                Ok(at) => Some(at),
+                Err(e) => {
+                    self.wrong(name, e.to_string());
+                    None
+                }
+            },
+        }
+    }
+
     pub(super) fn maybe<D: Dimension>(&mut self, name: &str) -> Option<Amount<D>> {
-        let text = self.form.value(name);
+        let text = self.form.says(name);
         if text.is_empty() {
             return None;
         }
@@ -56,13 +87,14 @@ impl<'f> Reader<'f> {
         }
     }
 
-    /// An amount that is needed; a stand-in where it is wrong, which the errors keep from being used.
+    /// An amount that is needed where it applies; a stand-in where it is wrong, which the errors keep from being used.
     pub(super) fn amount<D: Dimension>(&mut self, name: &str) -> Amount<D> {
-        if self.form.value(name).is_empty() {
-            self.wrong(name, "needed");
+        if !self.form.shows(name) {
+            return Amount::unset();
         }
+        self.needed(name);
         self.maybe(name).unwrap_or(Typed {
-            text: String::new(),
+            text: "?".into(),
             value: Measure::of(1.0),
         })
     }
@@ -71,6 +103,7 @@ impl<'f> Reader<'f> {
         let text = self.text(name);
         match text.parse() {
             Ok(n) => n,
+            Err(_) if !self.form.shows(name) => 0,
             Err(_) if text.is_empty() => {
                 self.wrong(name, "needed");
                 0
@@ -85,25 +118,22 @@ impl<'f> Reader<'f> {
     pub(super) fn choice(&self, name: &str, options: &[&str]) -> usize {
         options
             .iter()
-            .position(|o| *o == self.form.value(name))
+            .position(|o| *o == self.form.says(name))
             .unwrap_or(0)
     }
 }
 
 pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
-    let amount = receptor_amount(&a.text("amount per tube"), a.mark).unwrap_or_else(|e| {
-        a.wrong("amount per tube", e);
-        ReceptorAmount::Unknown
-    });
-    let activity_date = match a.form.value("activity date") {
+    let amount = a.read("amount per tube", receptor_amount, ReceptorAmount::Unknown);
+    let decay = [
+        None,
+        Some(Carrier::CarrierFree),
+        Some(Carrier::ProductInert),
+        Some(Carrier::ProductBinds),
+    ][a.choice("decay", &DECAY)];
+    let atoms = match a.text("atoms of label").as_str() {
         "" => None,
-        text => match When::parse(text) {
-            Ok(date) => Some(date),
-            Err(e) => {
-                a.wrong("activity date", e.to_string());
-                None
-            }
-        },
+        _ => Some(a.whole("atoms of label")),
     };
     let unlabelled = match a.text("blocked with") {
         same if same.is_empty() || same.eq_ignore_ascii_case("same") => Unlabelled::SameLigand,
@@ -119,15 +149,24 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
     };
     let concentration = [DisplayUnit::nM, DisplayUnit::pM, DisplayUnit::uM]
         [a.choice("show concentrations", &UNITS)];
-    let sites = if a.choice("show sites", &SITES) == 0 {
-        SitesUnit::PerAmount
-    } else {
-        SitesUnit::InTube
-    };
+    let sites = [
+        SitesUnit::PerAmount,
+        SitesUnit::PerMillionCells,
+        SitesUnit::InTube,
+    ][a.choice("show sites", &SITES)];
+    // A reader's signal is not asked for, and is typed all the same.
     let fields = Fields::parse(b.form.value("typed per vial")).unwrap_or_else(|e| {
         b.wrong("typed per vial", e.to_string());
         Fields::default()
     });
+    let counted = read_counted(a);
+    let quench = b.read("quench standards", quench, Vec::new());
+    // With a quench curve every vial has its own efficiency.
+    let efficiency = if fields.has(Field::Quench) && !quench.is_empty() {
+        b.maybe("efficiency").unwrap_or(Amount::unset())
+    } else {
+        b.amount("efficiency")
+    };
     let blank = [
         BlankKind::Scintillant,
         BlankKind::ScintillantAndFilter,
@@ -140,11 +179,11 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             name: a.needed("ligand"),
             label: a.needed("label"),
             specific_activity: a.amount("specific activity"),
-            activity_date,
-            decay: None,
-            half_life: None,
-            atoms: None,
-            bindable: None,
+            activity_date: a.when("activity date"),
+            decay,
+            half_life: a.maybe("half-life"),
+            atoms,
+            bindable: a.maybe("share that can bind"),
             lot: a.text("lot"),
         },
         receptor: Receptor {
@@ -157,7 +196,7 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             volume: a.amount("volume"),
             temperature: a.maybe("temperature"),
             time: a.maybe("incubation time"),
-            assayed: None,
+            assayed: a.when("tubes separated"),
             buffer: a.text("buffer"),
             vehicle: a.maybe("vehicle"),
         },
@@ -167,8 +206,8 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             concentration: a.amount("unlabelled"),
         },
         separation: Separation {
-            counted: crate::assay::Counted::Bound,
-            added_counted: None,
+            counted,
+            added_counted: a.maybe("aliquot of added"),
             fraction: a
                 .maybe("fraction counted")
                 .unwrap_or(Separation::default().fraction),
@@ -179,11 +218,11 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
         },
         counter: Counter {
             name: b.text("counter"),
-            efficiency: b.amount("efficiency"),
-            quench: Vec::new(),
-            dead_time: None,
-            subtracted: None,
-            run: None,
+            efficiency,
+            quench,
+            dead_time: b.maybe("dead time"),
+            subtracted: b.read("taken off", taken_off, None),
+            run: b.read("run", run, None),
             fields,
             minutes: b.amount("minutes per tube"),
             background: BackgroundVials {
@@ -200,14 +239,56 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
     }
 }
 
+/// Which side is counted, with what belongs to it.
+pub(super) fn read_counted(a: &mut Reader) -> Counted {
+    match a.choice("what is counted", &COUNTED) {
+        1 => Counted::Free {
+            aliquot: a.amount("aliquot counted"),
+        },
+        2 => Counted::BothSides {
+            protein_aliquot: a.amount("protein aliquot"),
+            ligand_aliquot: a.amount("ligand aliquot"),
+            protein_after: a.maybe("protein side at end"),
+            ligand_volume: a.maybe("ligand side filled"),
+        },
+        3 => Counted::Signal {
+            read_volume: a.maybe("volume read"),
+            standards: standards(a),
+            noise: noise(a),
+        },
+        _ => Counted::Bound,
+    }
+}
+
+/// The standards of a reader; one as a stand-in where they are wrong.
+fn standards(a: &mut Reader) -> Vec<Amount<crate::units::NanoMolar>> {
+    let stand_in = || {
+        vec![Typed {
+            text: "?".into(),
+            value: Measure::of(1.0),
+        }]
+    };
+    if a.needed("standards").is_empty() {
+        return stand_in();
+    }
+    a.read("standards", list, stand_in())
+}
+
+fn noise(a: &mut Reader) -> Option<f64> {
+    let read = |text: &str, mark| match text {
+        "" => Ok(None),
+        text => parse_decimal(text, mark)
+            .map(Some)
+            .map_err(|e| e.to_string()),
+    };
+    a.read("noise of a blank", read, None)
+}
+
 pub(super) fn numbers(b: &mut Reader) -> Numbers {
     let cv_prior = prior(b);
     let usual = Numbers::default();
     let dilution_error = b.maybe("dilution error").unwrap_or(usual.dilution_error);
-    let scale_errors = scale_errors(b.form.value("shared errors"), b.mark).unwrap_or_else(|e| {
-        b.wrong("shared errors", e);
-        ScaleErrors::default()
-    });
+    let scale_errors = b.read("shared errors", scale_errors, ScaleErrors::default());
     let model = [
         None,
         Some(Model::OneClass),
@@ -226,36 +307,6 @@ pub(super) fn numbers(b: &mut Reader) -> Numbers {
     }
 }
 
-/// `stock 3 %; specific activity 4 %`: a name and a share, with semicolons or a comma and a blank between.
-pub(super) fn scale_errors(text: &str, mark: Mark) -> Result<ScaleErrors, String> {
-    let mut errors = ScaleErrors::default();
-    let parts = text.split(';').flat_map(|p| p.split(", "));
-    for part in parts.map(str::trim).filter(|p| !p.is_empty()) {
-        let at = part
-            .find(|c: char| c.is_ascii_digit())
-            .unwrap_or(part.len());
-        let (name, share) = part.split_at(at);
-        let place = match name.trim() {
-            "stock" => &mut errors.stock,
-            "specific activity" => &mut errors.specific_activity,
-            "efficiency" => &mut errors.efficiency,
-            "volume" => &mut errors.volume,
-            "protein" => &mut errors.protein,
-            _ => {
-                return Err(format!(
-                    "`{part}`: write a name and its error, e.g. stock 3 %; names are stock, specific activity, \
-                     efficiency, volume, protein"
-                ));
-            }
-        };
-        let read = Typed::parse(share, mark).map_err(|e| format!("{}: {e}", name.trim()))?;
-        if place.replace(read).is_some() {
-            return Err(format!("{} is given twice", name.trim()));
-        }
-    }
-    Ok(errors)
-}
-
 pub(super) fn share(a: &Typed<Fraction>) -> f64 {
     a.base()
 }
@@ -263,7 +314,7 @@ pub(super) fn share(a: &Typed<Fraction>) -> f64 {
 /// What is known of the tube CV; nothing where its field is empty.
 pub(super) fn prior(b: &mut Reader) -> Option<CvPrior> {
     let centre = share(&b.maybe("tube CV")?);
-    let sd_ln = match b.form.value("its factor") {
+    let sd_ln = match b.form.says("its factor") {
         "" => CvPrior::COMMON.sd_ln,
         text => match parse_decimal(text, b.mark) {
             Ok(v) => v,
@@ -274,141 +325,4 @@ pub(super) fn prior(b: &mut Reader) -> Option<CvPrior> {
         },
     };
     Some(CvPrior { centre, sd_ln })
-}
-
-/// `50 ug protein`, `2.5e5 cells`, `2 mg tissue`, `unknown` or nothing.
-pub(super) fn receptor_amount(text: &str, mark: Mark) -> Result<ReceptorAmount, String> {
-    let text = text.trim();
-    if text.is_empty() || text.eq_ignore_ascii_case("unknown") {
-        return Ok(ReceptorAmount::Unknown);
-    }
-    let amount = |word: &str| text.strip_suffix(word).map(str::trim);
-    if let Some(t) = amount("protein") {
-        return Typed::parse(t, mark)
-            .map(ReceptorAmount::Protein)
-            .map_err(|e| e.to_string());
-    }
-    if let Some(t) = amount("tissue") {
-        return Typed::parse(t, mark)
-            .map(ReceptorAmount::Tissue)
-            .map_err(|e| e.to_string());
-    }
-    if let Some(t) = amount("cells") {
-        return Typed::parse(t, mark)
-            .map(ReceptorAmount::Cells)
-            .map_err(|e| e.to_string());
-    }
-    Err(format!(
-        "`{text}`: write e.g. 50 ug protein, 2.5e5 cells, 2 mg tissue or unknown"
-    ))
-}
-
-/// Concentrations with blanks or semicolons between; one without a unit takes the next unit in the list.
-pub(super) fn list(text: &str, mark: Mark) -> Result<Vec<Amount<NanoMolar>>, String> {
-    let words: Vec<&str> = text
-        .split(|c: char| c.is_whitespace() || c == ';')
-        .filter(|w| !w.is_empty())
-        .collect();
-    let is_unit = |w: &str| w.starts_with(|c: char| c.is_alphabetic() || c == 'µ');
-    let mut levels = Vec::new();
-    for (i, word) in words.iter().enumerate().filter(|(_, w)| !is_unit(w)) {
-        let bare = word
-            .chars()
-            .all(|c| c.is_ascii_digit() || matches!(c, '.' | ',' | 'e' | 'E' | '-' | '+'));
-        let unit = if bare {
-            words[i + 1..]
-                .iter()
-                .find(|w| is_unit(w))
-                .copied()
-                .unwrap_or("")
-        } else {
-            ""
-        };
-        let whole = if unit.is_empty() {
-            word.to_string()
-        } else {
-            format!("{word} {unit}")
-        };
-        levels.push(Typed::parse(&whole, mark).map_err(|e| e.to_string())?);
-    }
-    if levels.is_empty() {
-        Err("needed: concentrations with a unit, e.g. 0.1 0.2 0.5 nM".into())
-    } else {
-        Ok(levels)
-    }
-}
-
-/// `3: 3+0; 8: 2+4`.
-pub(super) fn exceptions(text: &str) -> Result<Vec<Except>, String> {
-    let wrong = |part: &str| {
-        format!(
-            "`{}`: write level: total + nonspecific, e.g. 3: 3+0; 8: 2+4",
-            part.trim()
-        )
-    };
-    text.split(';')
-        .filter(|p| !p.trim().is_empty())
-        .map(|part| {
-            let (level, tubes) = part.split_once(':').ok_or_else(|| wrong(part))?;
-            let (total, nonspecific) = tubes.split_once('+').ok_or_else(|| wrong(part))?;
-            let number = |t: &str| t.trim().parse().map_err(|_| wrong(part));
-            Ok(Except {
-                level: number(level)?,
-                total: number(total)?,
-                nonspecific: number(nonspecific)?,
-            })
-        })
-        .collect()
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn levels_share_the_unit_behind_them() {
-        let texts =
-            |s: &str| list(s, Mark::Point).map(|l| l.iter().map(|a| a.base()).collect::<Vec<_>>());
-        assert_eq!(
-            texts("0.05 0.1 nM 1; 2 uM").unwrap(),
-            [0.05, 0.1, 1000.0, 2000.0]
-        );
-        assert_eq!(texts("50pM 1nM").unwrap(), [0.05, 1.0]);
-        assert!(texts("0.1 0.2").is_err() && texts("").is_err() && texts("0.1 mL").is_err());
-    }
-
-    #[test]
-    fn exceptions_as_typed() {
-        let e = exceptions("3: 3+0; 8:2 + 4").unwrap();
-        assert_eq!((e[0].level, e[0].total, e[0].nonspecific), (3, 3, 0));
-        assert_eq!((e[1].level, e[1].total, e[1].nonspecific), (8, 2, 4));
-        assert!(exceptions("3 3 0").is_err());
-    }
-
-    #[test]
-    fn errors_that_all_tubes_share() {
-        let of = |s: &str| scale_errors(s, Mark::Point);
-        let e = of("stock 3 %; specific activity 0.04, volume 1 %").unwrap();
-        let shares: Vec<_> = e.all().iter().map(|(_, e)| e.map(|e| e.base())).collect();
-        assert_eq!(shares, [Some(0.03), Some(0.04), None, Some(0.01), None]);
-        assert!(of("").unwrap().none());
-        assert!(of("stok 3 %").unwrap_err().contains("names are stock"));
-        assert!(
-            of("stock").is_err()
-                && of("stock 3 %; stock 2 %").is_err()
-                && of("stock 3,5 %").is_err()
-        );
-        assert!(scale_errors("stock 3,5 %; volume 1 %", Mark::Comma).is_ok());
-    }
-
-    #[test]
-    fn an_amount_of_receptor_as_people_write_it() {
-        let of = |s: &str| receptor_amount(s, Mark::Point);
-        assert_eq!(of("unknown"), Ok(ReceptorAmount::Unknown));
-        assert!(
-            matches!(of("50 ug protein"), Ok(ReceptorAmount::Protein(m)) if (m.base() - 0.05).abs() < 1e-15)
-        );
-        assert!(matches!(of("2.5e5 cells"), Ok(ReceptorAmount::Cells(n)) if n.base() == 2.5e5));
-        assert!(of("50 ug").is_err() && of("50 mL protein").is_err());
-    }
 }

@@ -1,11 +1,12 @@
 //! A protocol as it is typed.
 
-use super::super::fields::{BLANKS, LAWS, MARKS, SITES, STICKS};
+use super::super::fields::{BLANKS, COUNTED, DECAY, LAWS, MARKS, SITES, STICKS};
 use super::super::form::Form;
 use crate::assay::{
-    BlankKind, CvPrior, Model, Protocol, ReceptorAmount, ScaleErrors, SitesUnit, Sticks, Unlabelled,
+    BlankKind, Carrier, Counted, CvPrior, Model, Protocol, ReceptorAmount, ScaleErrors, SitesUnit,
+    Sticks, Unlabelled,
 };
-use crate::units::{Fraction, Mark, Typed, short};
+use crate::units::{Amount, Dimension, Fraction, Mark, Typed, short};
 use tui_input::Input;
 
 /// The shortest text of 6 to 17 digits that is read as what was written, if one is.
@@ -34,7 +35,9 @@ pub(super) fn percent(v: f64, mark: Mark) -> String {
 
 /// Numbers of a form in another decimal mark than the one they were written in.
 pub(super) fn follow_mark(form: &mut Form, from: Mark, to: Mark) {
-    const NUMBERS: [&str; 6] = [
+    const NUMBERS: [&str; 8] = [
+        "noise of a blank",
+        "quench standards",
         "tube CV",
         "its factor",
         "dilution error",
@@ -66,6 +69,59 @@ pub(super) fn text<T: ToString>(value: Option<&T>) -> String {
     value.map_or(String::new(), ToString::to_string)
 }
 
+/// A list of amounts, as typed.
+fn each<D: Dimension>(amounts: &[Amount<D>]) -> String {
+    let texts: Vec<&str> = amounts.iter().map(|a| a.text.as_str()).collect();
+    texts.join(" ")
+}
+
+/// The place of a way of counting among the choices.
+pub(super) fn kind_of(counted: &Counted) -> usize {
+    match counted {
+        Counted::Bound => 0,
+        Counted::Free { .. } => 1,
+        Counted::BothSides { .. } => 2,
+        Counted::Signal { .. } => 3,
+    }
+}
+
+/// What belongs to one way of counting alone.
+fn counted_value(counted: &Counted, mark: Mark, name: &str) -> String {
+    match (counted, name) {
+        (_, "what is counted") => COUNTED[kind_of(counted)].into(),
+        (Counted::Free { aliquot }, "aliquot counted") => aliquot.to_string(),
+        (
+            Counted::BothSides {
+                protein_aliquot,
+                ligand_aliquot,
+                protein_after,
+                ligand_volume,
+            },
+            name,
+        ) => match name {
+            "protein aliquot" => protein_aliquot.to_string(),
+            "ligand aliquot" => ligand_aliquot.to_string(),
+            "protein side at end" => text(protein_after.as_ref()),
+            "ligand side filled" => text(ligand_volume.as_ref()),
+            _ => String::new(),
+        },
+        (
+            Counted::Signal {
+                read_volume,
+                standards,
+                noise,
+            },
+            name,
+        ) => match name {
+            "volume read" => text(read_volume.as_ref()),
+            "standards" => each(standards),
+            "noise of a blank" => noise.map_or(String::new(), |n| number(n, mark)),
+            _ => String::new(),
+        },
+        _ => String::new(),
+    }
+}
+
 pub(super) fn protocol_value(p: &Protocol, name: &str) -> String {
     let (blocked, ki) = match &p.nonspecific.unlabelled {
         Unlabelled::SameLigand => ("same".to_string(), String::new()),
@@ -77,7 +133,18 @@ pub(super) fn protocol_value(p: &Protocol, name: &str) -> String {
         "ligand" => p.ligand.name.clone(),
         "label" => p.ligand.label.clone(),
         "specific activity" => p.ligand.specific_activity.to_string(),
+        "decay" => DECAY[match p.ligand.decay {
+            None => 0,
+            Some(Carrier::CarrierFree) => 1,
+            Some(Carrier::ProductInert) => 2,
+            Some(Carrier::ProductBinds) => 3,
+        }]
+        .into(),
         "activity date" => text(p.ligand.activity_date.as_ref()),
+        "tubes separated" => text(p.incubation.assayed.as_ref()),
+        "half-life" => text(p.ligand.half_life.as_ref()),
+        "atoms of label" => text(p.ligand.atoms.as_ref()),
+        "share that can bind" => text(p.ligand.bindable.as_ref()),
         "lot" => p.ligand.lot.clone(),
         "preparation" => p.receptor.preparation.clone(),
         "batch" => p.receptor.batch.clone(),
@@ -91,6 +158,7 @@ pub(super) fn protocol_value(p: &Protocol, name: &str) -> String {
             STICKS[usize::from(p.nonspecific.sticks == Sticks::ToFilter)].into()
         }
         "fraction counted" => p.separation.fraction.to_string(),
+        "aliquot of added" => text(p.separation.added_counted.as_ref()),
         "separation" => p.separation.method.clone(),
         "filter and soak" => p.separation.filter.clone(),
         "washes" => p.separation.washes.clone(),
@@ -100,8 +168,13 @@ pub(super) fn protocol_value(p: &Protocol, name: &str) -> String {
         "buffer" => p.incubation.buffer.clone(),
         "vehicle" => text(p.incubation.vehicle.as_ref()),
         "show concentrations" => p.display.concentration.word().into(),
-        "show sites" => SITES[usize::from(p.display.sites == SitesUnit::InTube)].into(),
-        _ => String::new(),
+        "show sites" => SITES[match p.display.sites {
+            SitesUnit::PerAmount => 0,
+            SitesUnit::PerMillionCells => 1,
+            SitesUnit::InTube => 2,
+        }]
+        .into(),
+        name => counted_value(&p.separation.counted, p.counter.mark, name),
     }
 }
 
@@ -111,6 +184,22 @@ pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
         "counter" => c.name.clone(),
         "efficiency" => c.efficiency.to_string(),
         "typed per vial" => c.fields.to_string(),
+        "quench standards" => {
+            let one = |s: &crate::assay::QuenchStandard| {
+                format!("{} {}", number(s.indicator, c.mark), s.efficiency)
+            };
+            c.quench.iter().map(one).collect::<Vec<_>>().join("; ")
+        }
+        "taken off" => c.subtracted.as_ref().map_or(String::new(), |s| {
+            let rate = s.rate.to_string();
+            s.minutes
+                .as_ref()
+                .map_or(rate, |m| format!("{} counted {m}", s.rate))
+        }),
+        "run" => c.run.as_ref().map_or(String::new(), |r| {
+            format!("{}, changer {}", r.start, r.changer)
+        }),
+        "dead time" => text(c.dead_time.as_ref()),
         "minutes per tube" => c.minutes.to_string(),
         "background minutes" => c.background.minutes.to_string(),
         "background vial" => BLANKS[match c.background.blank {
