@@ -16,13 +16,13 @@ fn protocol(home: &Home, changes: &[(&str, &str)]) {
 fn opened(changes: &[(&str, &str)]) -> Home {
     let home = Home::new();
     protocol(&home, changes);
-    made(home.run(&["new", "rack.ron", "--from", "protocol.ron"]));
+    made(&home.run(&["new", "rack.ron", "--from", "protocol.ron"]));
     home
 }
 
 /// A run that did what it was asked for.
 #[track_caller]
-fn made(ran: Ran) {
+fn made(ran: &Ran) {
     assert_eq!(ran.code, 0, "{ran:?}");
 }
 
@@ -120,7 +120,7 @@ fn a_table_of_net_readings() {
         "fields: Each([NetCpm]), subtracted: (rate: \"25 cpm\")",
     );
     let home = opened(&[net]);
-    made(take(&home, "vial,net_cpm\n33,1.7\n1,90.5\n2,-1.5\n"));
+    made(&take(&home, "vial,net_cpm\n33,1.7\n1,90.5\n2,-1.5\n"));
     assert_eq!(tube(&home, 33)["counts"], 267.0);
     assert_eq!(
         (
@@ -133,7 +133,7 @@ fn a_table_of_net_readings() {
     assert_eq!(low.code, 65);
     assert!(low.err.contains("lower than the background"), "{low:?}");
     // dpm of the same vial: 45 % of them counted.
-    made(take(&home, "vial,dpm\n3,100\n"));
+    made(&take(&home, "vial,dpm\n3,100\n"));
     assert_eq!(tube(&home, 3)["counts"], 90.0);
 }
 
@@ -146,7 +146,7 @@ fn sides_and_standards_in_a_table() {
     );
     let home = opened(&[cells]);
     let table = "level,role,replicate,side,counts\n,background,a,,250\n1,total,a,protein,900\n1,total,a,ligand,400\n";
-    made(take(&home, table));
+    made(&take(&home, table));
     assert_eq!(tube(&home, 1)["counts"], 900.0);
     assert_eq!(tube(&home, 2)["counts"], 400.0);
     // Bound is the difference of the two sides: (450 - 25) less (200 - 25) cpm in 0.1 mL, at 0.45 x 177.6 cpm to the fmol.
@@ -172,7 +172,7 @@ fn sides_and_standards_in_a_table() {
         ("background: 1,", "background: 3, standards: 2,"),
     ]);
     let table = "level,role,replicate,signal\n,background,a,100\n,background,b,104\n,background,c,96\n1,standard,a,150\n2,standard,b,600\n1,total,a,300\n";
-    made(take(&home, table));
+    made(&take(&home, table));
     assert_eq!(tube(&home, 1)["counts"], 300.0);
     // Gain: (50 + 500) over (0.01 + 0.1) is 5000 to the nM.
     let bound = tube(&home, 1)["bound_nm"].as_f64().unwrap();
@@ -194,7 +194,9 @@ fn protocols_that_cannot_be() {
     let activity = |text: &'static str| ("\"80 Ci/mmol\"", text);
     let counted = |text: &'static str| ("fraction: \"100 %\",", text);
     let fields = |text: &'static str| ("fields: Counts", text);
-    let cases: &[(&[(&str, &str)], &[&str])] = &[
+    /// Lines changed, and what is said of them.
+    type Case<'c> = (&'c [(&'c str, &'c str)], &'c [&'c str]);
+    let cases: &[Case] = &[
         (
             &[decay, assayed],
             &[
