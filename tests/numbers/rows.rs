@@ -275,8 +275,7 @@ fn scarce<I: Isotherm>(of_law: &[f64]) {
         &I::from_ln(&of_law),
         ns,
         &[
-            ("\"80 Ci/mmol\"", "\"8e7 Ci/mmol\""),
-            ("label: \"H-3\"", "label: \"hot\", half_life: \"1 s\""),
+            ("\"0.5 mL\"", "\"500 L\""),
             ("sticks: ToPreparation", "sticks: ToFilter"),
             ("unlabelled: SameLigand", "unlabelled: Other(name: \"x\")"),
             ("dilution_error: \"2 %\"", "dilution_error: \"0\""),

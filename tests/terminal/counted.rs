@@ -228,6 +228,10 @@ fn protocols_that_cannot_be() {
             &["ligand.label", "`Xx-99`", "H-3, C-14", "half-life"],
         ),
         (
+            &[("label: \"H-3\"", "label: \"F-18\"")],
+            &["ligand.decay", "F-18", "1.83 h"],
+        ),
+        (
             &[("\"45 %\"", "\"145 %\"")],
             &["counter.efficiency", "145 %", "at most 100 %"],
         ),

@@ -1,6 +1,6 @@
 //! Label, separation and counter: whether counts can be turned into amounts with them.
 
-use super::super::ligand::MOST_ATOMS;
+use super::super::ligand::{MOST_ATOMS, SHORT_LIVED};
 use super::super::{Counted, Protocol, Sticks};
 use super::{Checks, ProtocolError};
 use crate::assay::quench::QuenchCurve;
@@ -14,7 +14,7 @@ fn wrong(field: &str, what: impl Into<String>) -> ProtocolError {
 
 impl Protocol {
     /// Whether a titration that is not open yet can have this protocol: what [`Protocol::check`] asks, that a nuclide is one
-    /// whose half-life is known, and that the activity is one it can have. Older titrations may name their label as they like.
+    /// whose half-life is known, that decay is computed where it matters, and that the activity is one the nuclide can have. Older titrations may name their label as they like.
     ///
     /// # Errors
     /// The first field at fault.
@@ -23,10 +23,20 @@ impl Protocol {
         if self.separation.counted.is_signal() {
             return Ok(());
         }
-        match self.ligand.half_life_minutes() {
-            Some(half_life) => self.check_activity(half_life),
-            None => Err(self.unknown_nuclide()),
+        let Some(half_life) = self.ligand.half_life_minutes() else {
+            return Err(self.unknown_nuclide());
+        };
+        if half_life < SHORT_LIVED && self.ligand.decay.is_none() {
+            return Err(wrong(
+                "ligand.decay",
+                format!(
+                    "needed for {}, half of which is gone in {} h: say what becomes of a molecule when its label decays",
+                    self.ligand.label,
+                    short(half_life / 60.0, 3)
+                ),
+            ));
         }
+        self.check_activity(half_life)
     }
 
     fn unknown_nuclide(&self) -> ProtocolError {
