@@ -5,6 +5,7 @@ mod json_judged;
 pub mod judged;
 mod text;
 pub mod values;
+pub mod working;
 
 pub use json::json;
 pub use text::{CAUTION, Page, text};
