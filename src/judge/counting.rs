@@ -92,7 +92,8 @@ pub struct Times {
     pub spent: f64,
     /// The same minutes at their best split: for each tube, and for the background.
     pub best: [f64; 2],
-    /// The counting error of one tube as it was counted and at the best split, as shares of the net rate.
+    /// The counting error of one tube, as shares of the net rate: where all vials are counted alike in the minutes they had, and at the
+    /// best split.
     pub errors: [f64; 2],
 }
 
@@ -310,7 +311,7 @@ fn times(t: &Titration, vials: &[Vial], background: Background) -> Option<Times>
     let b = background.cpm();
     let counts: f64 = lowest.iter().map(|v| v.observed.counts).sum();
     let minutes: f64 = lowest.iter().map(|v| v.observed.minutes).sum();
-    let (gross, each) = (counts / minutes, minutes / lowest.len() as f64);
+    let gross = counts / minutes;
     let net = gross - b;
     if net <= 0.0 {
         return None;
@@ -322,7 +323,7 @@ fn times(t: &Titration, vials: &[Vial], background: Background) -> Option<Times>
     let spent = tubes + background.minutes;
     let wanted = minutes_for(WANTED_ERROR, net, b);
     let best = best_split(n * gross, b, spent);
-    let now = (gross / each + background.variance).sqrt();
+    let now = (gross * n / tubes + background.variance).sqrt();
     Some(Times {
         level,
         net_cpm: net,

@@ -5,41 +5,58 @@ use super::counting::{BLANK_SDS, variance_nm};
 use super::groups::Vial;
 use super::line::{Line, quadratic, weighted_line};
 use crate::assay::{
-    Background, Counted, LevelNo, Made, Role, Side, Titration, TubeNo, calibration,
+    Background, Counted, LevelNo, Made, Role, Side, Titration, TubeNo, calibration, per_nm,
+    seen_as, volume_shift,
 };
 use crate::binding::{Hill, OneClass, TwoClasses};
-use crate::fit::{Fit, Model, RackEvidence, f_upper_tail, t_two_sided};
+use crate::fit::{Fit, Model, RackEvidence, f_upper_tail, t_quantile, t_two_sided};
 use std::collections::BTreeMap;
 
 /// The chance below which something is remarked on.
 const REMARKED_BELOW: f64 = 0.05;
+/// Where a single value is told from another, in standard deviations: the normal distribution's 2.5 %.
+const ONE_FAR: f64 = 1.959963984540054;
 
 /// A mean and its standard deviation.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Mean {
     /// The mean.
     pub value: f64,
-    /// The standard deviation of the mean; none for a single value without an error of its own.
-    pub sd: Option<f64>,
+    /// The standard deviation of the mean.
+    pub sd: f64,
     /// Of how many.
     pub of: usize,
 }
 
 impl Mean {
-    /// Of values, with the standard deviation of their scatter over the root of their number.
-    fn of(values: &[f64]) -> Option<Mean> {
+    /// Of values, each with a standard deviation of its own. That of the mean is from their scatter, or from their own where that is more:
+    /// a few values may agree by chance.
+    fn of(values: &[(f64, f64)]) -> Option<Mean> {
         let n = values.len() as f64;
         if values.is_empty() {
             return None;
         }
-        let value = values.iter().sum::<f64>() / n;
-        let squares: f64 = values.iter().map(|v| (v - value).powi(2)).sum();
-        let sd = (values.len() > 1).then(|| (squares / (n - 1.0) / n).sqrt());
+        let value = values.iter().map(|v| v.0).sum::<f64>() / n;
+        let squares: f64 = values.iter().map(|v| (v.0 - value).powi(2)).sum();
+        let own = values.iter().map(|v| v.1 * v.1).sum::<f64>().sqrt() / n;
+        let scatter = (squares / (n - 1.0).max(1.0) / n).sqrt();
         Some(Mean {
             value,
-            sd,
+            sd: own.max(scatter),
             of: values.len(),
         })
+    }
+
+    /// Whether the mean is above (true) or below (false) a value by more than chance, two-sided at 5 % by Student's t; `None` where
+    /// it is not told from it.
+    pub fn told_from(self, value: f64) -> Option<bool> {
+        let df = (self.of as f64 - 1.0).max(1.0);
+        let far = if self.of == 1 {
+            ONE_FAR
+        } else {
+            t_quantile(0.975, df)?
+        };
+        ((self.value - value).abs() > far * self.sd).then_some(self.value > value)
     }
 }
 
@@ -190,14 +207,20 @@ pub fn label_found(
 ) -> LabelFound {
     let used: Vec<&Vial> = vials.iter().filter(|v| !v.suspect).collect();
     let added = added(titration, &used, fit);
-    let differences: Vec<f64> = added.iter().map(AddedLevel::difference).collect();
+    let differences: Vec<(f64, f64)> = added
+        .iter()
+        .map(|a| (a.difference(), a.sd_nm / a.nominal_nm))
+        .collect();
     let without_receptor = without_receptor(titration, &used, &added);
-    let found: Vec<f64> = without_receptor.iter().map(|l| l.over_added).collect();
+    let found: Vec<(f64, f64)> = without_receptor
+        .iter()
+        .map(|l| (l.over_added, l.sd))
+        .collect();
     let cells = cells(titration, &used);
-    let shares: Vec<f64> = cells.iter().map(|c| c.share).collect();
+    let shares: Vec<(f64, f64)> = cells.iter().map(|c| (c.share, c.sd)).collect();
     let proportional = [Role::Nonspecific, Role::NoReceptor]
         .into_iter()
-        .filter_map(|role| proportional(titration, &used, fit?, role));
+        .filter_map(|role| proportional(titration, &used, background, fit?, role));
     LabelFound {
         added_difference: Mean::of(&differences),
         added,
@@ -399,19 +422,28 @@ fn bent(points: &[[f64; 3]]) -> Option<(f64, f64, f64)> {
 /// Whether bound goes with free to the first power: `bound = a free^(1 + g)`, with the chance of `g`.
 ///
 /// Means of levels are fitted as they are, not their logarithms, which few counts would bias and none would not have. Their
-/// covariance is that of the tubes as the whole fit has it and that of the dilution steps, which the tubes of a level, and in a serial
-/// dilution the levels, have in common; known but for a factor, which the residuals give.
-fn proportional(t: &Titration, used: &[&Vial], fit: &Fit, role: Role) -> Option<Proportional> {
+/// covariance is that of the tubes as the whole fit has it, that of the background, which all have in common, and that of the dilution
+/// steps, which the tubes of a level, and in a serial dilution the levels, have in common; known but for a factor, which the
+/// residuals give.
+fn proportional(
+    t: &Titration,
+    used: &[&Vial],
+    background: Background,
+    fit: &Fit,
+    role: Role,
+) -> Option<Proportional> {
     let counted = &t.protocol.separation.counted;
     let (mut free, mut bound, mut variance, mut levels) = (vec![], vec![], vec![], vec![]);
+    let mut by_background = vec![];
     for (level, vials) in by_level(t, used, role) {
-        let (mut f, mut b, mut v2, mut n) = (0.0, 0.0, 0.0, 0.0);
+        let (mut f, mut b, mut v2, mut g, mut n) = (0.0, 0.0, 0.0, 0.0, 0.0);
         for v in vials {
             let fitted = fit.tubes.iter().find(|x| x.tube == v.tube.no && x.used);
             if let (Some(m), Some(x)) = (v.measured, fitted) {
                 f += m.free_nm;
                 b += m.bound_nm;
                 v2 += variance_nm(t, x);
+                g += leans_on_background(t, used, fit, v);
                 n += 1.0;
             }
         }
@@ -419,6 +451,7 @@ fn proportional(t: &Titration, used: &[&Vial], fit: &Fit, role: Role) -> Option<
             free.push(f / n);
             bound.push(b / n);
             variance.push(v2 / (n * n));
+            by_background.push(g / n);
             levels.push(level);
         }
     }
@@ -437,7 +470,8 @@ fn proportional(t: &Titration, used: &[&Vial], fit: &Fit, role: Role) -> Option<
         nalgebra::DMatrix::from_fn(n, n, |i, j| {
             let own = if i == j { variance[i] } else { 0.0 };
             let leans = by_label(i, expected[i]) * by_label(j, expected[j]);
-            own + s_d * s_d * leans * shared(i, j)
+            let common = background.variance * by_background[i] * by_background[j];
+            own + common + s_d * s_d * leans * shared(i, j)
         })
     })?;
     let df = (free.len() - 2) as f64;
@@ -448,6 +482,18 @@ fn proportional(t: &Titration, used: &[&Vial], fit: &Fit, role: Role) -> Option<
         p: t_two_sided(line.exponent / line.se, df)?,
         levels: free.len(),
     })
+}
+
+/// How much more bound a vial, or a cell, would show were the background one less, in nM.
+fn leans_on_background(t: &Titration, used: &[&Vial], fit: &Fit, v: &Vial) -> f64 {
+    let gain = fit.estimate("gain").map_or(1.0, |e| e.value);
+    let of = |v: &Vial| {
+        let k = seen_as(&t.protocol, &v.tube).map_or(f64::INFINITY, |s| per_nm(&t.protocol, s));
+        v.observed.minutes / (v.observed.signal_minutes * k * gain)
+    };
+    let other = t.other_side(&v.tube).map(|o| o.no);
+    let other = used.iter().find(|x| Some(x.tube.no) == other);
+    (of(v) - other.map_or(0.0, |x| of(x))) / volume_shift(&t.protocol)
 }
 
 /// How many dilution steps the solutions of two levels have in common.
@@ -465,4 +511,33 @@ fn shared_steps(t: &Titration, a: LevelNo, b: LevelNo) -> usize {
     };
     let of_b = steps(b);
     steps(a).iter().filter(|l| of_b.contains(l)).count()
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// Means 0.5, 1.5 and 4.5 of two values each that are one apart: within the pairs 1.5 is left on three degrees of freedom, and the
+    /// contrast 1, -2, 1 of the means brings 2 x 2^2 / 6 = 4/3, so that F is 8/3 (by hand). Weights of all points together and the
+    /// unit of x do not matter.
+    #[test]
+    fn a_quadratic_term_by_hand() {
+        for (unit, weight) in [(1.0, 1.0), (0.02, 1.0), (1.0, 7.0)] {
+            let at = |x: f64, y: f64| [x * unit, y, weight];
+            let points = [
+                at(0.0, 0.0),
+                at(0.0, 1.0),
+                at(1.0, 1.0),
+                at(1.0, 2.0),
+                at(2.0, 4.0),
+                at(2.0, 5.0),
+            ];
+            let (f, p, term) = bent(&points).unwrap();
+            assert!((f - 8.0 / 3.0).abs() < 1e-12, "{f}");
+            assert_eq!(p, f_upper_tail(f, [1.0, 3.0]).unwrap());
+            // y = 0.5 + x^2 goes through the means.
+            assert!((term * unit * unit - 1.0).abs() < 1e-12, "{term}");
+            assert!(bent(&points[..4]).is_none());
+        }
+    }
 }

@@ -13,8 +13,6 @@ use crate::units::{Nuclide, fixed, short, significant};
 
 /// As many vials or levels are named; of more, the rest is a number.
 const MOST_NAMED: usize = 12;
-/// A mean is told from zero where it is as many standard deviations from it.
-const TOLD_SDS: f64 = 2.0;
 
 /// A name and what was found.
 type Line = (&'static str, String);
@@ -137,13 +135,14 @@ fn errors(c: &CountStatistics, signal: bool) -> String {
     let mut of: Vec<(f64, TubeNo)> = c
         .vials
         .iter()
+        .filter(|v| v.standing != CountStanding::Background)
         .filter_map(|v| v.relative_error.map(|e| (e, v.tube)))
         .collect();
     of.sort_by(|a, b| a.0.total_cmp(&b.0));
     let what = if signal {
         "that of the blank alone, one sd"
     } else {
-        "counting alone, one sd"
+        "counting alone, one sd, of vials above background"
     };
     match (of.get(of.len() / 2), of.last()) {
         (Some((median, _)), Some((most, tube))) => format!(
@@ -253,7 +252,7 @@ fn time(t: &Titration, times: &Times) -> String {
         )
     };
     format!(
-        "{} of the net rate of a total tube at {} takes {} min, {}; the {} min of this rack, best parted for it: {}, {} in place of {}",
+        "{} of the net rate of a total tube at {} takes {} min, {}; the {} min of this rack with all vials alike are best parted for it into {}: {} in place of {}",
         percent(WANTED_ERROR, 1),
         level(t, times.level),
         minutes(times.wanted),
@@ -301,24 +300,32 @@ fn decay(t: &Titration) -> Vec<Line> {
     let mut lines = Vec::new();
     if let (Some(d), Some(aged)) = (p.label_decayed(), p.aged_minutes()) {
         let stated = &p.ligand.specific_activity;
-        lines.push((
-            "specific activity",
-            format!(
-                "{stated} stated {} before the assay, {} of the label left: {} dpm/fmol at the assay",
-                duration(aged),
-                percent(d.left, 4),
-                significant(d.activity, 4)
-            ),
-        ));
-        let why = match p.ligand.decay {
-            Some(Carrier::CarrierFree) => "carrier-free: what has decayed is no ligand",
-            Some(Carrier::ProductInert) => "what has decayed no longer binds",
-            Some(Carrier::ProductBinds) | None => "what has decayed binds as before",
-        };
-        lines.push((
-            "ligand left",
-            format!("{} of every level ({why})", percent(d.concentration, 4)),
-        ));
+        let activity = significant(d.activity, 4);
+        if aged.abs() < 1.0 {
+            lines.push((
+                "specific activity",
+                format!("{stated}, stated for the time of the assay: {activity} dpm/fmol"),
+            ));
+        } else {
+            let when = if aged > 0.0 { "before" } else { "after" };
+            lines.push((
+                "specific activity",
+                format!(
+                    "{stated} stated for {} {when} the assay, {} of the label at it: {activity} dpm/fmol",
+                    duration(aged.abs()),
+                    percent(d.left, 4)
+                ),
+            ));
+            let why = match p.ligand.decay {
+                Some(Carrier::CarrierFree) => "carrier-free: what has decayed is no ligand",
+                Some(Carrier::ProductInert) => "what has decayed no longer binds",
+                Some(Carrier::ProductBinds) | None => "what has decayed binds as before",
+            };
+            lines.push((
+                "ligand left",
+                format!("{} of every level ({why})", percent(d.concentration, 4)),
+            ));
+        }
     }
     if p.ligand.decay.is_some() && !p.separation.counted.is_signal() {
         lines.push(("counts", brought(t)));
@@ -392,7 +399,7 @@ fn added(lines: &mut Vec<Line>, t: &Titration, found: &LabelFound) {
         lines.push((name, one(a)));
     }
     if let Some(mean) = found.added_difference {
-        let said = match told(mean, 0.0) {
+        let said = match mean.told_from(0.0) {
             Some(true) => ": more label than is written",
             Some(false) => {
                 ": label lost before the tubes, to walls or pipettes, or less than is written"
@@ -410,23 +417,18 @@ fn added(lines: &mut Vec<Line>, t: &Titration, found: &LabelFound) {
     }
 }
 
-/// Whether a mean is told from a value, and on which side of it.
-fn told(mean: Mean, from: f64) -> Option<bool> {
-    let sd = mean.sd?;
-    ((mean.value - from).abs() > TOLD_SDS * sd).then_some(mean.value > from)
-}
-
 fn mean_words(mean: Mean, of: impl Fn(f64) -> String) -> String {
-    let sd = mean.sd.map_or(String::new(), |sd| {
-        format!(", sd of the mean {}", percent(sd, 2))
-    });
-    format!("{}{sd},", of(mean.value))
+    format!(
+        "{}, sd of the mean {},",
+        of(mean.value),
+        percent(mean.sd, 2)
+    )
 }
 
 fn again(lines: &mut Vec<Line>, t: &Titration, found: &LabelFound) {
     let three = |share: f64| percent(share, 3);
     if let Some(mean) = found.found {
-        let lost = match told(mean, 1.0) {
+        let lost = match mean.told_from(1.0) {
             Some(false) => "; the rest went to walls or filter",
             _ => "",
         };
@@ -530,9 +532,6 @@ fn proportional(p: &Proportional) -> String {
         p_words(p.p),
         p.levels
     );
-    if p.holds() {
-        format!("{tubes}: in proportion to free; {power}")
-    } else {
-        format!("{tubes}: NOT in proportion to free; {power}")
-    }
+    let not = if p.holds() { "in" } else { "NOT in" };
+    format!("{not} proportion to free in {tubes}: {power}")
 }

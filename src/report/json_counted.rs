@@ -90,7 +90,7 @@ pub(super) struct JsonLabel {
 #[derive(Serialize)]
 struct JsonMean {
     mean: f64,
-    sd: Option<f64>,
+    sd: f64,
     of: usize,
 }
 
