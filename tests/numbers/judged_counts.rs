@@ -6,11 +6,14 @@ use crate::simulate::cells;
 use crate::simulate::rack::{BACKGROUND_CPM, each};
 use rackside::analysis::{Analysis, analyse};
 use rackside::assay::{
-    Background, Counted, Kept, Reading, ReadingId, Role, Scale, Seen, Side, Titration, Tube,
+    Background, Counted, Kept, Reading, ReadingId, Role, Scale, Seen, Side, Stamp, Titration, Tube,
     background, label, measured, observed_in, per_nm,
 };
+use rackside::figure::Glyphs;
 use rackside::fit::{Fit, fit_rack, t_quantile};
 use rackside::judge::{CountStanding, LabelFound, Vial, count_statistics, label_found, limits_for};
+use rackside::notebook::{Count, Notebook, What};
+use rackside::report::{Page, text};
 use rackside::units::{Dimension, Mark, Measure, Typed};
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
@@ -625,5 +628,108 @@ fn every_kind_is_judged() {
         let value: serde_json::Value = serde_json::from_str(&text).unwrap();
         assert!(value["counting"].is_object() && value["label"].is_object());
         println!();
+    }
+}
+
+/// The page of every kind: no wider than 80 columns, its heads and units those of the instrument, every parameter of the fit on it.
+#[test]
+fn pages_of_every_kind() {
+    let at = Stamp::parse("2031-05-04T10:14:00+00:00").unwrap();
+    for (name, json, wanted, unwanted) in [
+        (
+            "free",
+            include_str!("data/kinds/free.json"),
+            &["bound: added less free as counted", "aliquot"][..],
+            &["signal"][..],
+        ),
+        (
+            "dialysis",
+            include_str!("data/kinds/dialysis_shift.json"),
+            &[
+                "total a P",
+                "total a F",
+                "28 of 28 cells used",
+                "volume shift",
+            ],
+            &["tubes used"],
+        ),
+        (
+            "reader",
+            include_str!("data/kinds/reader.json"),
+            &[
+                "signal  reads",
+                "blank a",
+                "gain",
+                "fitted to signals",
+                "standards",
+            ],
+            &["cpm", "gross counts", "decay", "efficiency"],
+        ),
+        (
+            "no_receptor",
+            include_str!("data/kinds/no_receptor.json"),
+            &["ns filter", "no recept. a", "added a", " counted "],
+            &["signal"],
+        ),
+        (
+            "decay",
+            include_str!("data/kinds/decay.json"),
+            &[
+                "half-life 109.77 min",
+                "brought to the assay by the time that each was counted",
+            ],
+            &["no decay"],
+        ),
+        (
+            "quench",
+            include_str!("data/kinds/quench.json"),
+            &["quench curve", "dead time"],
+            &[],
+        ),
+    ] {
+        let t = kind(json);
+        let mut book = Notebook::open(
+            t.protocol.clone(),
+            t.levels.clone(),
+            t.tubes.clone(),
+            at,
+            "nobody",
+        )
+        .unwrap();
+        let each = t.tubes.iter().flat_map(|x| {
+            t.kept(x.no).iter().enumerate().map(|(i, k)| Count {
+                tube: x.no,
+                reading: k.reading.clone(),
+                again: i > 0,
+            })
+        });
+        let readings = each.collect();
+        book.record(What::Counted { readings }, at, "nobody")
+            .unwrap();
+        let a = analyse(book.titration());
+        let page = text(&Page {
+            notebook: &book,
+            analysis: &a,
+            digest: "0123456789abcdef",
+            changed: &[],
+            version: "0",
+            glyphs: Glyphs::Ascii,
+        });
+        println!("{page}");
+        for line in page.lines() {
+            assert!(line.chars().count() <= 80, "{name}: {line}");
+        }
+        let flat = page.split_whitespace().collect::<Vec<_>>().join(" ");
+        for words in wanted {
+            assert!(
+                page.contains(words) || flat.contains(words),
+                "{name}: no `{words}`\n{page}"
+            );
+        }
+        // The protocol's own lines may name what this rack has not.
+        let head = page.split("\nProtocol -").next().unwrap();
+        for words in unwanted {
+            assert!(!head.contains(words), "{name}: `{words}`\n{page}");
+        }
     }
 }

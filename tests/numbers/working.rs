@@ -403,7 +403,9 @@ fn the_printed_numbers_give_the_printed_result() {
                 let symbol = step.gives.symbol;
                 let start = format!("   {symbol} = {}", step.formula);
                 // A value taken as it is has nothing to be put in.
-                if step.formula.is_empty() || (step.of.len() == 1 && step.formula == symbol) {
+                if step.formula.is_empty()
+                    || (step.of.len() == 1 && step.formula == step.of[0].symbol)
+                {
                     continue;
                 }
                 // A formula may come twice, for two readings or the two sides of a cell: in their order.

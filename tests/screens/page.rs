@@ -47,6 +47,7 @@ fn no_line_is_wider_than_80_columns() {
     };
     let serial = [
         ("dilution: EachFromStock", "dilution: Serial"),
+        ("label: \"H-3\"", "label: \"I-125\""),
         ("80 Ci/mmol", "2000 Ci/mmol"),
         ("\"0.05 nM\"", "\"0.01234 nM\""),
         ("\"10 nM\"", "\"7.768 nM\""),
