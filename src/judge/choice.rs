@@ -112,7 +112,7 @@ pub fn choose(titration: &Titration, compared: &Compared) -> Choice {
     let depleted = compared
         .one
         .fit()
-        .and_then(|one| depletion(one))
+        .and_then(depletion)
         .filter(|d| !d.holds());
     let mut verdicts: Vec<Verdict> = compared
         .rivals

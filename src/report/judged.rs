@@ -193,9 +193,7 @@ pub fn remarks(t: &Titration, analysis: &Analysis) -> Vec<String> {
     let mut said = Vec::new();
     for s in &analysis.suspects.tubes {
         let side = if s.residual > 0.0 { "above" } else { "below" };
-        let name = t
-            .tube(s.tube)
-            .map_or(String::new(), |x| role_of(x.role).into());
+        let name = t.tube(s.tube).map_or(String::new(), |x| role_of(x.role));
         said.push(format!(
             "look at vial {}{name}: {} sd {side} what the others expect, {}",
             s.tube.0,

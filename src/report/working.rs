@@ -75,15 +75,15 @@ fn step_lines(n: usize, step: &Step, width: usize) -> Vec<String> {
 
 /// What comes out: `2380.7 +- 34.9 cpm`.
 fn result(v: &Value) -> String {
-    said(v, short(v.value, DIGITS_OUT))
+    said(v, &short(v.value, DIGITS_OUT))
 }
 
 /// What goes in: `b 25.3 +- 1.6 cpm`.
 fn put_in(v: &Value) -> String {
-    format!("{} {}", v.symbol, said(v, short(v.value, DIGITS_IN)))
+    format!("{} {}", v.symbol, said(v, &short(v.value, DIGITS_IN)))
 }
 
-fn said(v: &Value, number: String) -> String {
+fn said(v: &Value, number: &str) -> String {
     let sd =
         v.sd.map_or(String::new(), |sd| format!(" +- {}", short(sd, DIGITS_SD)));
     format!("{number}{sd} {}", v.unit).trim_end().into()
