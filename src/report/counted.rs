@@ -277,7 +277,11 @@ pub fn label(t: &Titration, analysis: &Analysis) -> Vec<Line> {
         standards(&mut lines, t, s);
     }
     for p in &found.proportional {
-        lines.push(("nonspecific", proportional(p)));
+        let name = match p.role {
+            Role::NoReceptor => "without receptor",
+            _ => "nonspecific",
+        };
+        lines.push((name, proportional(p)));
     }
     lines
 }
@@ -311,7 +315,7 @@ fn decay(t: &Titration) -> Vec<Line> {
             lines.push((
                 "specific activity",
                 format!(
-                    "{stated} stated for {} {when} the assay, {} of the label at it: {activity} dpm/fmol",
+                    "{stated} stated for {} {when} the assay; {} of the label by then: {activity} dpm/fmol",
                     duration(aged.abs()),
                     percent(d.left, 4)
                 ),
@@ -532,6 +536,6 @@ fn proportional(p: &Proportional) -> String {
         p_words(p.p),
         p.levels
     );
-    let not = if p.holds() { "in" } else { "NOT in" };
+    let not = if p.holds() { "in" } else { "not in" };
     format!("{not} proportion to free in {tubes}: {power}")
 }

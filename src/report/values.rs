@@ -121,13 +121,13 @@ pub fn beside_isotherm(fit: &Fit) -> Vec<Beside> {
     };
     let apart = fit.estimate("ns_filter").is_some();
     let of_ns = if apart {
-        "to the preparation"
+        "(to the preparation)"
     } else {
         "bound per free"
     };
     [
         one("ns", "ns", "", of_ns),
-        one("ns_filter", "ns filter", "", "to the filter"),
+        one("ns_filter", "ns filter", "", "(to the filter)"),
         one("background_cpm", "background", "cpm", ""),
         one("blank_signal", "blank", "signal", ""),
         one("gain", "gain", "signal/nM", "in the volume read"),
