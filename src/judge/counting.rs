@@ -7,6 +7,7 @@ use crate::assay::{
     volume_shift,
 };
 use crate::fit::{Fit, FittedTube};
+use std::collections::BTreeMap;
 
 /// The counting error that times are worked out for, one standard deviation over the net rate.
 pub const WANTED_ERROR: f64 = 0.01;
@@ -256,32 +257,28 @@ pub(super) fn variance_nm(t: &Titration, tube: &FittedTube) -> f64 {
 }
 
 fn specific(t: &Titration, vials: &[Vial], fit: &Fit) -> Vec<LevelSpecific> {
-    let of = |level: LevelNo, role: Role| {
-        let mut bound = Vec::new();
-        let mut variance = Vec::new();
-        for v in vials {
-            let fitted = fit.tubes.iter().find(|x| x.tube == v.tube.no && x.used);
-            if let (true, Some(m), Some(x)) = (
-                v.tube.level == Some(level) && v.tube.role == role,
-                v.measured,
-                fitted,
-            ) {
-                bound.push(m.bound_nm);
-                variance.push(variance_nm(t, x));
-            }
+    let fitted: BTreeMap<TubeNo, &FittedTube> = fit
+        .tubes
+        .iter()
+        .filter(|x| x.used)
+        .map(|x| (x.tube, x))
+        .collect();
+    let mut of: BTreeMap<(LevelNo, Role), (Vec<f64>, Vec<f64>)> = BTreeMap::new();
+    for v in vials {
+        let (level, m, x) = (v.tube.level, v.measured, fitted.get(&v.tube.no));
+        if let (Some(level), Some(m), Some(x)) = (level, m, x) {
+            let (bound, variance) = of.entry((level, v.tube.role)).or_default();
+            bound.push(m.bound_nm);
+            variance.push(variance_nm(t, x));
         }
-        (bound, variance)
-    };
+    }
     let one = |level: LevelNo| {
-        let (totals, _) = of(level, Role::Total);
-        let (others, variance) = of(level, Role::Nonspecific);
-        if totals.is_empty() || others.is_empty() {
-            return None;
-        }
+        let (totals, _) = of.get(&(level, Role::Total))?;
+        let (others, variance) = of.get(&(level, Role::Nonspecific))?;
         Some(LevelSpecific {
             level,
-            difference_nm: mean(&totals) - mean(&others),
-            critical_nm: critical_specific(mean(&variance), totals.len(), others.len()),
+            difference_nm: mean(totals) - mean(others),
+            critical_nm: critical_specific(mean(variance), totals.len(), others.len()),
             tubes: [totals.len(), others.len()],
         })
     };

@@ -9,7 +9,7 @@ use crate::assay::{
     seen_as, volume_shift,
 };
 use crate::binding::{Hill, OneClass, TwoClasses};
-use crate::fit::{Fit, Model, RackEvidence, f_upper_tail, t_quantile, t_two_sided};
+use crate::fit::{Fit, FittedTube, Model, RackEvidence, f_upper_tail, t_quantile, t_two_sided};
 use std::collections::BTreeMap;
 
 /// The chance below which something is remarked on.
@@ -191,13 +191,6 @@ pub struct LabelFound {
     pub proportional: Vec<Proportional>,
 }
 
-impl LabelFound {
-    /// Whether there is anything to say.
-    pub fn is_empty(&self) -> bool {
-        *self == LabelFound::default()
-    }
-}
-
 /// What became of the label; vials of which every reading is flagged are left out.
 pub fn label_found(
     titration: &Titration,
@@ -235,17 +228,22 @@ pub fn label_found(
 
 /// Vials of a role by their level, from the lowest concentration up.
 fn by_level<'a>(t: &Titration, used: &[&'a Vial], role: Role) -> Vec<(LevelNo, Vec<&'a Vial>)> {
-    let of = |level: LevelNo| -> Vec<&'a Vial> {
-        let those = used.iter().copied();
-        those
-            .filter(|v| v.tube.role == role && v.tube.level == Some(level))
-            .collect()
-    };
+    let mut of: BTreeMap<LevelNo, Vec<&'a Vial>> = BTreeMap::new();
+    for v in used.iter().copied().filter(|v| v.tube.role == role) {
+        if let Some(level) = v.tube.level {
+            of.entry(level).or_default().push(v);
+        }
+    }
     let levels = t.levels_by_concentration().into_iter();
     levels
-        .map(|l| (l.no, of(l.no)))
-        .filter(|(_, v)| !v.is_empty())
+        .filter_map(|l| Some((l.no, of.remove(&l.no)?)))
         .collect()
+}
+
+/// The tubes that a fit uses, by their number.
+fn fitted_tubes(fit: &Fit) -> BTreeMap<TubeNo, &FittedTube> {
+    let used = fit.tubes.iter().filter(|x| x.used);
+    used.map(|x| (x.tube, x)).collect()
 }
 
 fn added(t: &Titration, used: &[&Vial], fit: Option<&Fit>) -> Vec<AddedLevel> {
@@ -435,11 +433,11 @@ fn proportional(
     let counted = &t.protocol.separation.counted;
     let (mut free, mut bound, mut variance, mut levels) = (vec![], vec![], vec![], vec![]);
     let mut by_background = vec![];
+    let fitted = fitted_tubes(fit);
     for (level, vials) in by_level(t, used, role) {
         let (mut f, mut b, mut v2, mut g, mut n) = (0.0, 0.0, 0.0, 0.0, 0.0);
         for v in vials {
-            let fitted = fit.tubes.iter().find(|x| x.tube == v.tube.no && x.used);
-            if let (Some(m), Some(x)) = (v.measured, fitted) {
+            if let (Some(m), Some(x)) = (v.measured, fitted.get(&v.tube.no)) {
                 f += m.free_nm;
                 b += m.bound_nm;
                 v2 += variance_nm(t, x);
@@ -460,7 +458,8 @@ fn proportional(
     } else {
         t.protocol.numbers.dilution_error.base()
     };
-    let shared = |i: usize, j: usize| shared_steps(t, levels[i], levels[j]) as f64;
+    let ways = ways(t, &levels);
+    let shared = |i: usize, j: usize| shared_steps(&ways[i], &ways[j]) as f64;
     let by_label = |i: usize, expected: f64| match counted {
         Counted::Free { .. } => free[i],
         _ => expected,
@@ -496,21 +495,27 @@ fn leans_on_background(t: &Titration, used: &[&Vial], fit: &Fit, v: &Vial) -> f6
     (of(v) - other.map_or(0.0, |x| of(x))) / volume_shift(&t.protocol)
 }
 
-/// How many dilution steps the solutions of two levels have in common.
-fn shared_steps(t: &Titration, a: LevelNo, b: LevelNo) -> usize {
-    let steps = |mut at: LevelNo| {
-        let mut way = vec![at];
-        while let Some(Made::FromLevel(from)) = t.level(at).map(|l| l.made) {
-            if way.contains(&from) {
-                break;
-            }
-            way.push(from);
-            at = from;
+/// The steps that made the solutions of levels: for each, the levels on its way from the stock, the first from it first.
+fn ways(t: &Titration, levels: &[LevelNo]) -> Vec<Vec<LevelNo>> {
+    let made: BTreeMap<LevelNo, Made> = t.levels.iter().map(|l| (l.no, l.made)).collect();
+    let way = |level: &LevelNo| {
+        let mut way = vec![*level];
+        // A ladder that goes in a circle is refused when it is laid; no way is longer than it has levels.
+        while let (Some(Made::FromLevel(from)), true) = (
+            way.last().and_then(|at| made.get(at)),
+            way.len() < made.len(),
+        ) {
+            way.push(*from);
         }
+        way.reverse();
         way
     };
-    let of_b = steps(b);
-    steps(a).iter().filter(|l| of_b.contains(l)).count()
+    levels.iter().map(way).collect()
+}
+
+/// How many dilution steps two solutions have in common: ways from the stock part once.
+fn shared_steps(a: &[LevelNo], b: &[LevelNo]) -> usize {
+    a.iter().zip(b).take_while(|(x, y)| x == y).count()
 }
 
 #[cfg(test)]
