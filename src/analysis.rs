@@ -7,7 +7,8 @@ use crate::assay::{
 use crate::binding::Sticking;
 use crate::fit::{Compared, Fit, Model, Outcome, compare, fit_model};
 use crate::judge::{
-    Choice, Soundness, Suspects, asked_for, choose, soundness, supported_at, suspects,
+    Choice, CountStatistics, LabelFound, Soundness, Suspects, Vial, asked_for, choose,
+    count_statistics, label_found, soundness, supported_at, suspects,
 };
 
 /// One tube with what its counts say.
@@ -51,6 +52,10 @@ pub struct Analysis {
     pub suspects: Suspects,
     /// Numbers to judge the shown fit by; `None` without one.
     pub soundness: Option<Soundness>,
+    /// What the counts can tell; `None` before a background is counted.
+    pub counting: Option<CountStatistics>,
+    /// What became of the label; `None` before a background is counted.
+    pub label: Option<LabelFound>,
 }
 
 impl Analysis {
@@ -166,7 +171,7 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
         let of = |flags| observed_in(&counting, titration, tube, flags);
         of(true).or_else(|| of(false))
     };
-    let tubes = titration
+    let tubes: Vec<TubeResult> = titration
         .tubes
         .iter()
         .map(|tube| {
@@ -197,6 +202,9 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
             }
         })
         .collect();
+    let vials: Vec<Vial> = tubes.iter().filter_map(vial).collect();
+    let counting = blank.map(|b| count_statistics(titration, &vials, b, outcome.fit()));
+    let label = blank.map(|b| label_found(titration, &vials, b, outcome.fit()));
     Analysis {
         tubes,
         background: blank,
@@ -206,5 +214,19 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
         choice,
         suspects,
         soundness,
+        counting,
+        label,
     }
+}
+
+/// A tube as those who judge without a fit take it; none that has no reading.
+fn vial(of: &TubeResult) -> Option<Vial> {
+    Some(Vial {
+        tube: of.tube,
+        added_nm: of.added_nm,
+        observed: of.observed?,
+        label: of.label,
+        measured: of.measured,
+        suspect: of.suspect.is_some(),
+    })
 }

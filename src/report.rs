@@ -1,6 +1,8 @@
 //! What leaves the bench: a summary to read and one for programs.
 
+pub mod counted;
 mod json;
+mod json_counted;
 mod json_judged;
 pub mod judged;
 mod text;

@@ -78,7 +78,7 @@ pub(super) enum Command {
     },
     /// Print the result
     #[command(
-        after_help = "Examples:\n  rackside summary rack.ron\n  rackside summary rack.ron --format json | head\n  rackside summary rack.ron --all-laws"
+        after_help = "Examples:\n  rackside summary rack.ron\n  rackside summary rack.ron --format json | head\n  rackside summary rack.ron --all-laws\n  rackside summary rack.ron --working 12"
     )]
     Summary {
         /// The titration
@@ -92,6 +92,9 @@ pub(super) enum Command {
         /// Two classes and Hill with their intervals too, whether or not they are supported
         #[arg(long)]
         all_laws: bool,
+        /// After the page, the working of one vial, or of every tube: from the printout to bound and free, step by step
+        #[arg(long, value_name = "VIAL", num_args = 0..=1)]
+        working: Option<Option<u32>>,
     },
     /// Say whether a file is whole and as rackside wrote it
     #[command(after_help = "Example:\n  rackside check rack.ron")]

@@ -5,7 +5,7 @@ use super::failure::Failure;
 use super::{out, table};
 use crate::analysis::analyse_with;
 use crate::app::{Look, Wide};
-use crate::assay::{Lab, PlotGlyphs, Sheet};
+use crate::assay::{Lab, PlotGlyphs, Sheet, Titration, Tube, TubeNo};
 use crate::figure::{Glyphs, Plot};
 use crate::notebook::{Notebook, What};
 use crate::report::{self, Page};
@@ -19,6 +19,9 @@ use std::fs;
 use std::io::{self, IsTerminal, Read};
 use std::path::Path;
 use std::process::ExitCode;
+
+/// The width of what is printed.
+const PAGE_WIDTH: usize = 80;
 
 pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
     let Some(command) = args.command else {
@@ -55,7 +58,16 @@ pub(super) fn run(args: Args) -> Result<ExitCode, Failure> {
             format,
             ascii,
             all_laws,
-        } => summary(&file, format, ascii, all_laws)?,
+            working,
+        } => {
+            let look = Printed {
+                format,
+                ascii,
+                all_laws,
+                working,
+            };
+            summary(&file, &look)?;
+        }
         Command::Check { file } => return check(&file),
         Command::Demo { list: true, .. } => {
             let lines: Vec<String> = demos::all()
@@ -293,31 +305,63 @@ fn take(
     Ok(())
 }
 
-fn page(
-    opened: &store::Opened,
+/// How a summary is asked for.
+struct Printed {
     format: Format,
     ascii: bool,
     all_laws: bool,
-) -> Result<String, Failure> {
+    working: Option<Option<u32>>,
+}
+
+fn page(opened: &store::Opened, look: &Printed) -> Result<String, Failure> {
     let t = opened.notebook.titration();
-    let analysis = analyse_with(t, all_laws);
-    match format {
-        Format::Json => report::json(t, &analysis).map_err(|e| Failure::new(1, e.to_string())),
-        Format::Text => Ok(report::text(&Page {
-            notebook: &opened.notebook,
-            analysis: &analysis,
-            digest: opened.text.digest(),
-            changed: &opened.changed,
-            version: env!("CARGO_PKG_VERSION"),
-            glyphs: glyphs(ascii),
-        })),
+    let of = working_of(t, look)?;
+    let analysis = analyse_with(t, look.all_laws);
+    if look.format == Format::Json {
+        return report::json(t, &analysis).map_err(|e| Failure::new(1, e.to_string()));
+    }
+    let mut text = report::text(&Page {
+        notebook: &opened.notebook,
+        analysis: &analysis,
+        digest: opened.text.digest(),
+        changed: &opened.changed,
+        version: env!("CARGO_PKG_VERSION"),
+        glyphs: glyphs(look.ascii),
+    });
+    for tube in of {
+        text.push('\n');
+        for line in report::working::lines(t, &analysis, tube, PAGE_WIDTH) {
+            text.push_str(&line);
+            text.push('\n');
+        }
+    }
+    Ok(text)
+}
+
+/// The tubes whose working is asked for.
+fn working_of<'t>(t: &'t Titration, look: &Printed) -> Result<Vec<&'t Tube>, Failure> {
+    let Some(asked) = look.working else {
+        return Ok(Vec::new());
+    };
+    if look.format == Format::Json {
+        return Err(Failure::new(
+            Failure::USAGE,
+            "--working is of the page and not of JSON",
+        ));
+    }
+    match asked {
+        None => Ok(t.tubes.iter().collect()),
+        Some(no) => t
+            .tube(TubeNo(no))
+            .map(|tube| vec![tube])
+            .ok_or_else(|| Failure::new(Failure::USAGE, format!("there is no vial {no}"))),
     }
 }
 
-fn summary(path: &Path, format: Format, ascii: bool, all_laws: bool) -> Result<(), Failure> {
+fn summary(path: &Path, look: &Printed) -> Result<(), Failure> {
     let opened = store::open(path)?;
     say_changed(path, &opened);
-    out::result(&page(&opened, format, ascii, all_laws)?)
+    out::result(&page(&opened, look)?)
 }
 
 fn check(path: &Path) -> Result<ExitCode, Failure> {
@@ -355,5 +399,11 @@ fn demo(name: Option<&str>, sitting: Sitting) -> Result<(), Failure> {
         return sit(&path, sitting);
     }
     let opened = store::carried(demo.name, demo.text)?;
-    out::result(&page(&opened, Format::Text, sitting.ascii, false)?)
+    let look = Printed {
+        format: Format::Text,
+        ascii: sitting.ascii,
+        all_laws: false,
+        working: None,
+    };
+    out::result(&page(&opened, &look)?)
 }

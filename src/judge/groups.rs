@@ -1,8 +1,25 @@
 //! Tubes that should read the same: those of one level and role.
 
-use crate::assay::{LevelNo, Role, TubeNo};
+use crate::assay::{Label, LevelNo, Measured, Observed, Role, Tube, TubeNo};
 use crate::fit::Fit;
 use std::collections::BTreeMap;
+
+/// A vial that is read, with what its counts say before any fit.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Vial {
+    /// Which vial.
+    pub tube: Tube,
+    /// Label added in nM at the time of the assay, or what a standard holds; none for background.
+    pub added_nm: Option<f64>,
+    /// Its counts.
+    pub observed: Observed,
+    /// The label in it as counted.
+    pub label: Option<Label>,
+    /// Bound and free.
+    pub measured: Option<Measured>,
+    /// Every reading of it is flagged.
+    pub suspect: bool,
+}
 
 /// Replicates that the fit uses, with their residuals in standard deviations.
 #[derive(Debug, Clone, PartialEq)]

@@ -1,5 +1,6 @@
 //! The summary for programs. Its keys are stable and documented in the README.
 
+use super::json_counted::{self, JsonCounting, JsonLabel};
 use super::json_judged::{JsonModel, JsonSoundness, JsonSuspects, models, soundness, suspects};
 use super::values;
 use crate::analysis::{Analysis, TubeResult};
@@ -24,6 +25,8 @@ struct Summary<'a> {
     models: Vec<JsonModel>,
     suspects: JsonSuspects,
     soundness: Option<JsonSoundness>,
+    counting: Option<JsonCounting>,
+    label: Option<JsonLabel>,
     left_out: Vec<String>,
 }
 
@@ -33,9 +36,14 @@ struct JsonTube {
     level: Option<u16>,
     role: &'static str,
     replicate: String,
+    side: Option<&'static str>,
+    standard: Option<u16>,
     added_nm: Option<f64>,
     counts: Option<f64>,
     minutes: Option<f64>,
+    signal_minutes: Option<f64>,
+    counted_nm: Option<f64>,
+    counted_sd_nm: Option<f64>,
     bound_nm: Option<f64>,
     bound_sd_nm: Option<f64>,
     free_nm: Option<f64>,
@@ -112,6 +120,8 @@ pub fn json(titration: &Titration, analysis: &Analysis) -> Result<String, serde_
         models: models(titration, analysis),
         suspects: suspects(analysis),
         soundness: soundness(analysis),
+        counting: json_counted::counting(analysis),
+        label: json_counted::label(titration, analysis),
         left_out: values::left_out(&titration.protocol),
     };
     let mut text = serde_json::to_string_pretty(&summary)?;
@@ -128,9 +138,14 @@ fn tube(titration: &Titration, analysis: &Analysis, t: &TubeResult) -> JsonTube 
         level: t.tube.level.map(|l| l.0),
         role: t.tube.role.word(),
         replicate: t.tube.letter(),
+        side: t.tube.side.map(json_counted::side),
+        standard: t.tube.standard,
         added_nm: t.added_nm,
         counts: t.observed.map(|o| o.counts),
         minutes: t.observed.map(|o| o.minutes),
+        signal_minutes: t.observed.map(|o| o.signal_minutes),
+        counted_nm: t.label.map(|l| l.nm),
+        counted_sd_nm: t.label.map(|l| l.sd_nm),
         bound_nm: t.measured.map(|m| m.bound_nm),
         bound_sd_nm: t.measured.map(|m| m.bound_sd_nm),
         free_nm: t.measured.map(|m| m.free_nm),

@@ -2,7 +2,8 @@
 
 use crate::analysis::Analysis;
 use crate::assay::{
-    DisplayUnit, Protocol, ReceptorAmount, SitesScale, sites_by_amount, sites_shown,
+    Counted, DisplayUnit, Protocol, ReceptorAmount, Side, SitesScale, Titration, sites_by_amount,
+    sites_shown,
 };
 use crate::fit::{End, Estimate, Fit};
 use crate::units::significant;
@@ -100,16 +101,61 @@ pub fn kd(protocol: &Protocol, fit: &Fit) -> Named {
     isotherm(protocol, fit).swap_remove(0)
 }
 
+/// A parameter beside those of the isotherm.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub struct Beside {
+    /// What it is called.
+    pub name: &'static str,
+    /// Its estimate and interval.
+    pub shown: Shown,
+    /// What it is, in a word or two.
+    pub after: &'static str,
+}
+
+/// The parameters of a fit that are not of the isotherm, those that it has.
+pub fn beside_isotherm(fit: &Fit) -> Vec<Beside> {
+    let one = |of: &'static str, name: &'static str, unit: &str, after: &'static str| {
+        let e = fit.estimate(of)?;
+        let shown = shown(e, |v| v, unit, true);
+        Some(Beside { name, shown, after })
+    };
+    let apart = fit.estimate("ns_filter").is_some();
+    let of_ns = if apart {
+        "(to the preparation)"
+    } else {
+        "bound per free"
+    };
+    [
+        one("ns", "ns", "", of_ns),
+        one("ns_filter", "ns filter", "", "(to the filter)"),
+        one("background_cpm", "background", "cpm", ""),
+        one("blank_signal", "blank", "signal", ""),
+        one("gain", "gain", "signal/nM", "in the volume read"),
+    ]
+    .into_iter()
+    .flatten()
+    .collect()
+}
+
 /// Nonspecific bound per free, dimensionless.
 pub fn ns(fit: &Fit) -> Shown {
     fit.estimate("ns")
         .map_or_else(nothing, |e| shown(e, |v| v, "", true))
 }
 
-/// Background in cpm.
-pub fn background(fit: &Fit) -> Shown {
-    fit.estimate("background_cpm")
-        .map_or_else(nothing, |e| shown(e, |v| v, "cpm", true))
+/// How many tubes go through the assay; a dialysis cell is one.
+pub fn through_assay(t: &Titration) -> usize {
+    let assayed = t.tubes.iter().filter(|x| x.role.assayed());
+    assayed.filter(|x| x.side != Some(Side::Ligand)).count()
+}
+
+/// What those are called.
+pub fn tubes_word(protocol: &Protocol) -> &'static str {
+    if protocol.separation.counted.is_cell() {
+        "cells"
+    } else {
+        "tubes"
+    }
 }
 
 fn nothing() -> Shown {
@@ -186,7 +232,8 @@ pub fn decimals(analysis: &Analysis, unit: DisplayUnit) -> usize {
 
 /// What the intervals allow for beyond the readings, and what they leave out.
 pub fn left_out(protocol: &Protocol) -> Vec<String> {
-    let (given, exact) = shared_errors(protocol);
+    let (given, mut exact) = shared_errors(protocol);
+    exact.extend(also_exact(protocol));
     let mut said = Vec::new();
     if !given.is_empty() {
         said.push(format!("allowed for: {}", given.join(", ")));
@@ -194,14 +241,54 @@ pub fn left_out(protocol: &Protocol) -> Vec<String> {
     if !exact.is_empty() {
         said.push(format!("taken as exact: {}", exact.join(", ")));
     }
-    said.push("no decay computed".into());
+    if !protocol.separation.counted.is_signal() {
+        let decay = if protocol.label_decayed().is_some() {
+            "decay of the label computed from the activity date to the assay"
+        } else if protocol.count_half_life().is_some() {
+            "decay of the label computed from the assay on; specific activity and levels are taken as those of the assay"
+        } else {
+            "no decay computed"
+        };
+        said.push(decay.into());
+    }
     said
+}
+
+/// What numbers rest on beside the errors that can be given, and what has none.
+fn also_exact(protocol: &Protocol) -> Vec<&'static str> {
+    let counter = &protocol.counter;
+    let kind: &[&str] = match &protocol.separation.counted {
+        Counted::Bound => &[],
+        Counted::Free { .. } => &["aliquot"],
+        Counted::BothSides {
+            protein_after: Some(_),
+            ..
+        } => &["aliquots", "volume shift"],
+        Counted::BothSides { .. } => &["aliquots", "no volume shift"],
+        Counted::Signal { .. } => &["standards", "volume read"],
+    };
+    let mut exact = kind.to_vec();
+    let some = [
+        (
+            protocol.separation.added_counted.is_some(),
+            "share of the added aliquot",
+        ),
+        (protocol.ligand.bindable.is_some(), "bindable share"),
+        (counter.dead_time.is_some(), "dead time"),
+        (counter.subtracted.is_some(), "rate taken off"),
+        (protocol.count_half_life().is_some(), "half-life and times"),
+    ];
+    exact.extend(some.iter().filter(|(has, _)| *has).map(|(_, word)| *word));
+    exact
 }
 
 /// The same in the room of a screen.
 pub fn left_out_in_short(protocol: &Protocol) -> String {
     let (given, exact) = shared_errors(protocol);
     match (given.len(), exact.as_slice()) {
+        (0, _) if protocol.separation.counted.is_signal() => {
+            "stock, standards, volume taken as exact".into()
+        }
         (0, _) => "stock, efficiency, volume taken as exact".into(),
         (_, []) => "errors of scale allowed for".into(),
         (_, exact) => format!("{} exact", exact.join(", ")),
@@ -212,14 +299,19 @@ pub fn left_out_in_short(protocol: &Protocol) -> String {
 fn shared_errors(protocol: &Protocol) -> (Vec<String>, Vec<&'static str>) {
     let amount = sites_by_amount(protocol).is_some();
     let (mut given, mut exact) = (Vec::new(), Vec::new());
+    let signal = protocol.separation.counted.is_signal();
     for (name, error) in protocol.numbers.scale_errors.all() {
+        // A reader's gain takes the place of both.
+        if signal && matches!(name, "specific activity" | "efficiency") {
+            continue;
+        }
         match error {
             Some(e) => given.push(format!("{name} {e}")),
             None if name == "protein" && !amount => {}
-            None => exact.push(if name == "protein" {
-                amount_word(protocol)
-            } else {
-                name
+            None => exact.push(match name {
+                "protein" => amount_word(protocol),
+                "efficiency" if !protocol.counter.quench.is_empty() => "quench curve",
+                other => other,
             }),
         }
     }

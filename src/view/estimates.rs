@@ -81,13 +81,7 @@ fn line(name: &str, shown: &Shown, after: &str) -> Line<'static> {
 }
 
 fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<'static>> {
-    let of = app
-        .titration()
-        .tubes
-        .iter()
-        .filter(|t| t.level.is_some())
-        .count();
-    let background = values::background(fit);
+    let of = values::through_assay(app.titration());
     let by_hand = if protocol.numbers.model.is_some() {
         ", chosen"
     } else {
@@ -115,11 +109,12 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
         .find(|whole| whole.len() <= width);
     let model = fits.unwrap_or(model);
     let mut lines = parameters(&values::isotherm(protocol, fit));
-    lines.push(line(
-        "ns",
-        &values::ns(fit),
-        &format!("   background {}", background.value),
-    ));
+    // Nonspecific binding with its interval, the others behind it as they have room.
+    let mut others = String::new();
+    for beside in values::beside_isotherm(fit).into_iter().skip(1) {
+        others.push_str(&format!("   {} {}", beside.name, beside.shown.value));
+    }
+    lines.push(line("ns", &values::ns(fit), &others));
     lines.push(Line::from(model));
     lines
 }

@@ -13,15 +13,6 @@ use ratatui::backend::TestBackend;
 use ratatui::buffer::Buffer;
 use std::sync::{Arc, Mutex, PoisonError};
 
-/// The demos as they are shipped.
-pub const DEMOS: [(&str, &str); 2] = [
-    (
-        "half-typed",
-        include_str!("../../demo-sessions/half-typed.ron"),
-    ),
-    ("finished", include_str!("../../demo-sessions/finished.ron")),
-];
-
 /// The clock, which stands still.
 pub fn noon() -> Stamp {
     Stamp::parse("2031-05-04T12:00:00+02:00").unwrap()
@@ -43,8 +34,8 @@ pub fn look(columns: u16, rows: u16) -> Look {
 
 /// The notebook of a demo.
 pub fn demo(name: &str) -> Notebook {
-    let (_, text) = DEMOS.iter().find(|(n, _)| *n == name).unwrap();
-    store::carried(name, text).unwrap().notebook
+    let demo = rackside::shell::demos::find(Some(name)).unwrap();
+    store::carried(name, demo.text).unwrap().notebook
 }
 
 /// A notebook with nothing but its opening.

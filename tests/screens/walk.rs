@@ -1,7 +1,7 @@
 //! The walk: a titration typed through its forms, and an open one corrected.
 
 use crate::scenes::{self, COUNTER, LADDER, PROTOCOL, fill};
-use crate::sitting::{DEMOS, Sitting, WHO, example, look, opened};
+use crate::sitting::{Sitting, WHO, example, look, opened};
 use proptest::prelude::*;
 use rackside::app::keys::Key;
 use rackside::app::{Access, App, Effect, Layer, LineFor, Scene, Step, page};
@@ -181,7 +181,7 @@ fn nothing_new(what: &str, mut s: Sitting) {
 
 #[test]
 fn looking_at_the_forms_is_no_correction() {
-    for (name, _) in DEMOS {
+    for (name, _) in rackside::app::DEMOS {
         nothing_new(name, Sitting::demo(name));
     }
     nothing_new("the example", Sitting::fresh(&[]));

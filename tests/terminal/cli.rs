@@ -248,6 +248,35 @@ fn summary_of_files_good_and_bad() {
             &[],
         ),
         case(
+            &["summary", "whole.ron", "--working", "3"],
+            0,
+            &[
+                "esearch use only",
+                "vial 3, 0.05 nM, nonspecific a",
+                "R = (N - b * t) / w",
+                "specific binding",
+            ],
+            &[],
+        ),
+        case(
+            &["summary", "whole.ron", "--working"],
+            0,
+            &["vial 1, 0.05 nM, total a", "vial 33, background a"],
+            &[],
+        ),
+        case(
+            &["summary", "whole.ron", "--working", "34"],
+            2,
+            &[],
+            &["there is no vial 34"],
+        ),
+        case(
+            &["summary", "whole.ron", "--working", "--format", "json"],
+            2,
+            &[],
+            &["--working is of the page"],
+        ),
+        case(
             &["summary", "changed.ron"],
             0,
             &["CHANGED OUTSIDE RACKSIDE", "Kd"],
@@ -276,7 +305,9 @@ fn summary_of_files_good_and_bad() {
     // Nothing is written, not even a lock.
     assert_eq!(home.names(""), before);
     let page = home.run(&["summary", "whole.ron"]).done().out;
-    let wide = page.lines().find(|l| l.chars().count() > 80);
+    let worked = home.run(&["summary", "whole.ron", "--working"]).done().out;
+    assert!(worked.starts_with(&page), "the page first, as it is");
+    let wide = worked.lines().find(|l| l.chars().count() > 80);
     assert_eq!(wide, None, "a line past 80 columns");
     let plain = home.run(&["summary", "whole.ron", "--ascii"]).done().out;
     assert!(plain.is_ascii());

@@ -66,6 +66,11 @@ fn tube_keys(tube: &Value) {
             ("added_nm", MaybeNumber),
             ("counts", MaybeNumber),
             ("minutes", MaybeNumber),
+            ("side", MaybeText),
+            ("standard", MaybeNumber),
+            ("signal_minutes", MaybeNumber),
+            ("counted_nm", MaybeNumber),
+            ("counted_sd_nm", MaybeNumber),
             ("bound_nm", MaybeNumber),
             ("bound_sd_nm", MaybeNumber),
             ("free_nm", MaybeNumber),
@@ -146,6 +151,23 @@ fn a_finished_rack_has_every_key() {
     fit_keys(&result["without_flags"]);
     assert_ne!(result["fit"], result["without_flags"]);
     assert_eq!(result.get("too_early"), Some(&Value::Null));
+    // One way of counting: the label in a vial is what is bound, and every minute of it counts.
+    for tube in tubes.iter().filter(|t| t["role"] != "background") {
+        assert_eq!(tube["counted_nm"], tube["bound_nm"]);
+        assert_eq!(tube["signal_minutes"], tube["minutes"]);
+    }
+    let counting = &result["counting"];
+    assert_eq!(counting["limits"][0]["seen"], "bound");
+    // 26.7 cpm over ten minutes, two for a tube: by Currie's formula.
+    let critical = counting["limits"][0]["cpm"]["critical"].as_f64().unwrap();
+    let by_hand = 1.6448536269514722 * (26.7f64 / 2.0 + 26.7 / 10.0).sqrt();
+    assert!((critical - by_hand).abs() < 1e-12, "{critical}");
+    assert_eq!(counting["vials"].as_array().unwrap().len(), 32);
+    assert_eq!(counting["specific"].as_array().unwrap().len(), 8);
+    let label = &result["label"];
+    assert_eq!(label["ligand_left"], 1.0);
+    assert!(label["half_life_minutes"].is_null() && label["standards"].is_null());
+    assert_eq!(label["proportional"][0]["role"], "nonspecific");
 }
 
 #[test]
