@@ -15,13 +15,25 @@ pub struct Stamp {
     pub offset: Offset,
 }
 
-/// A text is not a moment in RFC 3339.
+/// A text is not a moment.
 #[derive(Debug, Clone, PartialEq, Eq, thiserror::Error)]
-#[error(
-    "`{text}` is not a time: write 14:03, 1403, 2031-05-04 14:03, or with an offset 2031-05-04T10:14:03+02:00"
-)]
+#[error("`{text}` is not {wanted}")]
 pub struct StampError {
     text: String,
+    wanted: &'static str,
+}
+
+const RFC_3339: &str = "a date and time with an offset, such as 2031-05-04T10:14:03+02:00";
+const ON_A_CLOCK: &str =
+    "a time: write 14:03, 1403, 2031-05-04 14:03, or with an offset 2031-05-04T10:14:03+02:00";
+
+impl StampError {
+    fn new(text: &str, wanted: &'static str) -> StampError {
+        StampError {
+            text: text.chars().take(60).collect(),
+            wanted,
+        }
+    }
 }
 
 impl Stamp {
@@ -36,9 +48,7 @@ impl Stamp {
     /// # Errors
     /// The text is not a date and a time with an offset.
     pub fn parse(text: &str) -> Result<Self, StampError> {
-        let wrong = || StampError {
-            text: text.chars().take(60).collect(),
-        };
+        let wrong = || StampError::new(text, RFC_3339);
         let pieces = DateTimeParser::new()
             .parse_pieces(text)
             .map_err(|_| wrong())?;
@@ -61,9 +71,7 @@ impl Stamp {
     /// # Errors
     /// The text is none of them.
     pub fn on_its_clock(&self, text: &str, after: Option<DateTime>) -> Result<Stamp, StampError> {
-        let wrong = || StampError {
-            text: text.chars().take(60).collect(),
-        };
+        let wrong = || StampError::new(text, ON_A_CLOCK);
         let text = text.trim();
         let at = if text.contains('-') {
             super::when::When::parse(text).map_err(|_| wrong())?.at()
