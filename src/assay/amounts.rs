@@ -338,8 +338,8 @@ fn label_of<W: Work>(
         background.between * o.minutes
     } else {
         // Of counts corrected for dead time the variance is that much larger.
-        o.counts.max(1.0) * (1.0 + tau * o.counts / o.minutes)
-            + background.between * o.minutes.powi(2)
+        let counts = o.counts.max(1.0);
+        counts * (1.0 + tau * counts / o.minutes) + background.between * o.minutes.powi(2)
     };
     let sd = (own + background.variance * o.minutes.powi(2)).sqrt() / w;
     work.step(|| {
@@ -359,6 +359,7 @@ fn label_of<W: Work>(
             ],
         )
     });
+    work.step(|| error_step(background, o, (signal, tau, unit), sd));
     let nm = net / k;
     let found = Label { nm, sd_nm: sd / k };
     work.step(|| {
@@ -384,6 +385,54 @@ fn label_of<W: Work>(
         }
     });
     Some(found)
+}
+
+/// The counting error of a net rate, with no more in its formula than there is to it.
+fn error_step(
+    background: Background,
+    o: Observed,
+    (signal, tau, unit): (bool, f64, &'static str),
+    sd: f64,
+) -> Step {
+    let between = background.between > 0.0;
+    let time = if signal { "readings" } else { "min" };
+    let mut of = vec![
+        Value::new("t", o.minutes, time),
+        Value::new("eb", background.variance.sqrt(), unit),
+        Value::new("w", o.signal_minutes, time),
+    ];
+    let counts = Value::new("n", o.counts.max(1.0), "counts, one at least");
+    let dead = Value::new("d", tau, "min dead");
+    let of_scatter = if signal {
+        "of a blank"
+    } else {
+        "cpm^2 between vials"
+    };
+    let scatter = Value::new("s2", background.between, of_scatter);
+    let formula = match (signal, tau > 0.0, between) {
+        (true, ..) => {
+            of.push(scatter);
+            "sqrt(s2 * t + (t * eb) ^ 2) / w"
+        }
+        (_, false, false) => {
+            of.push(counts);
+            "sqrt(n + (t * eb) ^ 2) / w"
+        }
+        (_, true, false) => {
+            of.extend([counts, dead]);
+            "sqrt(n * (1 + d * n / t) + (t * eb) ^ 2) / w"
+        }
+        (_, false, true) => {
+            of.extend([counts, scatter]);
+            "sqrt(n + s2 * t ^ 2 + (t * eb) ^ 2) / w"
+        }
+        (_, true, true) => {
+            of.extend([counts, dead, scatter]);
+            "sqrt(n * (1 + d * n / t) + s2 * t ^ 2 + (t * eb) ^ 2) / w"
+        }
+    };
+    let what = "error of that, of counting, one standard deviation";
+    Step::new(what, Value::new("eR", sd, unit), formula, of)
 }
 
 /// The volume of a dialysis cell's protein side as filled over that at the end; one where no shift was measured.

@@ -115,8 +115,20 @@ pub(super) fn steps(titration: &Titration, background: &Background) -> Vec<Step>
             "background"
         };
         let plain = sum("b", what);
-        let gives = plain.gives.give_or_take(error);
-        return vec![Step { gives, ..plain }];
+        let gives = plain.gives.clone().give_or_take(error);
+        let of_error = if signal {
+            let of = [
+                Value::new("s2", background.between, "of a blank"),
+                Value::new("tb", background.minutes, of[1]),
+            ];
+            let what = "its error, from the scatter of the blanks";
+            Step::new(what, Value::new("eb", error, unit), "sqrt(s2 / tb)", of)
+        } else {
+            let what = "its error, of counting";
+            let of = plain.of.clone();
+            Step::new(what, Value::new("eb", error, unit), "sqrt(Nb) / tb", of)
+        };
+        return vec![Step { gives, ..plain }, of_error];
     }
     weighed(
         titration,
@@ -199,6 +211,12 @@ fn weighed(titration: &Titration, background: &Background, plain: Step) -> Vec<S
         Value::new("b", background.cpm, "cpm").give_or_take(background.variance.sqrt()),
         "R / W",
         [Value::new("R", sum, ""), Value::new("W", weights, "")],
+    ));
+    steps.push(Step::new(
+        "its error",
+        Value::new("eb", background.variance.sqrt(), "cpm"),
+        "1 / sqrt(W)",
+        [Value::new("W", weights, "")],
     ));
     steps
 }

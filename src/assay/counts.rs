@@ -6,7 +6,7 @@ use super::quench::QuenchCurve;
 use super::reading::{Reading, ReadingError, Scale};
 use super::when::minutes_between;
 use super::working::{Step, Value, Work};
-use crate::units::{during_count, left_after};
+use crate::units::{clean, during_count, left_after};
 
 /// The counts of one reading, or of several added up.
 #[derive(Debug, Clone, Copy, PartialEq, Default)]
@@ -86,7 +86,13 @@ impl<'p> Counting<'p> {
             });
         }
         if signal {
-            return Ok(Observed::plain(reading.value, 1.0));
+            let x = reading.value;
+            work.step(|| {
+                let what = format!("signal, typed `{}`", clean(&reading.raw));
+                let of = [Value::new("N", x, "signal")];
+                Step::new(what, Value::new("N", x, "signal"), "N", of)
+            });
+            return Ok(Observed::plain(x, 1.0));
         }
         let by_dpm = matches!(reading.scale, Scale::Dpm | Scale::NetDpm);
         let nominal = self.protocol.counter.nominal_efficiency();
@@ -190,7 +196,7 @@ impl<'p> Counting<'p> {
                 let of = [Value::new("N", x, "counts")];
                 work.step(|| {
                     Step::new(
-                        "gross counts, as printed",
+                        format!("gross counts, typed `{}`", clean(&reading.raw)),
                         Value::new("N", x, "counts"),
                         "N",
                         of,
@@ -232,7 +238,7 @@ impl<'p> Counting<'p> {
         };
         work.step(|| {
             Step::new(
-                "gross counts behind the printout",
+                format!("gross counts, typed `{}`", clean(&reading.raw)),
                 Value::new("N", gross, "counts"),
                 formula,
                 of,

@@ -257,6 +257,13 @@ impl Protocol {
             ));
         }
         if signal {
+            let errors = &self.numbers.scale_errors;
+            if errors.efficiency.is_some() || errors.specific_activity.is_some() {
+                return Err(wrong(
+                    "numbers.scale_errors",
+                    "a reader has neither efficiency nor specific activity: its standards give the signal for one nM",
+                ));
+            }
             return Ok(());
         }
         let quench = !c.quench.is_empty();
