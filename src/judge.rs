@@ -14,7 +14,7 @@ mod suspects;
 pub use choice::{Choice, Standing, Verdict, WhyWithheld, asked_for, choose, supported_at};
 pub use counting::{
     BLANK_SDS, CountStatistics, LevelSpecific, ReaderLimit, Standing as CountStanding, Times,
-    VialCounting, VialLimits, WANTED_ERROR, count_statistics, limits_for,
+    VialCounting, VialLimits, count_statistics, limits_for,
 };
 pub use depletion::{Depletion, depletion};
 pub use groups::Vial;

@@ -156,6 +156,10 @@ impl Protocol {
             ("efficiency", self.counter.efficiency.to_string()),
             ("quench curve", quench.join(", ")),
             ("dead time", text(self.counter.dead_time.as_ref())),
+            (
+                "counting error wanted",
+                text(self.counter.wanted_error.as_ref()),
+            ),
             ("taken off", text(off.as_ref())),
             ("run", text(run.as_ref())),
             ("typed per vial", self.counter.fields.to_string()),

@@ -9,8 +9,6 @@ use crate::assay::{
 use crate::fit::{Fit, FittedTube};
 use std::collections::BTreeMap;
 
-/// The counting error that times are worked out for, one standard deviation over the net rate.
-pub const WANTED_ERROR: f64 = 0.01;
 /// A reader's signal is told from the blank where it is as many standard deviations of a blank reading above it (common practice).
 pub const BLANK_SDS: f64 = 3.0;
 
@@ -85,7 +83,9 @@ pub struct Times {
     pub level: LevelNo,
     /// Its mean net rate in cpm.
     pub net_cpm: f64,
-    /// Minutes for one tube and background together, at their best split, that leave [`WANTED_ERROR`].
+    /// The counting error that is wanted, as a share of the net rate.
+    pub aim: f64,
+    /// Minutes for one tube and background together, at their best split, that leave it.
     pub wanted: f64,
     /// Of them for the tube.
     pub wanted_tube: f64,
@@ -318,12 +318,14 @@ fn times(t: &Titration, vials: &[Vial], background: Background) -> Option<Times>
         (n + 1.0, sum + v.observed.minutes)
     });
     let spent = tubes + background.minutes;
-    let wanted = minutes_for(WANTED_ERROR, net, b);
+    let aim = t.protocol.counter.aim();
+    let wanted = minutes_for(aim, net, b);
     let best = best_split(n * gross, b, spent);
     let now = (gross * n / tubes + background.variance).sqrt();
     Some(Times {
         level,
         net_cpm: net,
+        aim,
         wanted,
         wanted_tube: best_split(gross, b, wanted).sample_minutes,
         spent,

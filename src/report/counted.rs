@@ -7,7 +7,7 @@ use crate::assay::{
 };
 use crate::judge::{
     AddedLevel, BLANK_SDS, CountStanding, CountStatistics, LabelFound, Linearity, Mean,
-    Proportional, Standards, Times, VialLimits, WANTED_ERROR,
+    Proportional, Standards, Times, VialLimits,
 };
 use crate::units::{Nuclide, fixed, short, significant};
 
@@ -253,7 +253,7 @@ fn time(t: &Titration, times: &Times) -> String {
     };
     format!(
         "{} of the net rate of a total tube at {} takes {} min, {}; the {} min of this rack with all vials alike are best parted for it into {}: {} in place of {}",
-        percent(WANTED_ERROR, 1),
+        format!("{} %", short(100.0 * times.aim, 3)),
         level(t, times.level),
         minutes(times.wanted),
         split([times.wanted_tube, times.wanted - times.wanted_tube]),

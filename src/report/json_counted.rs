@@ -62,7 +62,8 @@ struct JsonSpecific {
 struct JsonTimes {
     level: u16,
     net_cpm: f64,
-    minutes_for_one_percent: f64,
+    wanted_error: f64,
+    minutes_for_wanted: f64,
     of_it_tube: f64,
     spent: f64,
     best_tube: f64,
@@ -221,7 +222,8 @@ pub(super) fn counting(analysis: &Analysis) -> Option<JsonCounting> {
         times: c.times.as_ref().map(|t| JsonTimes {
             level: t.level.0,
             net_cpm: t.net_cpm,
-            minutes_for_one_percent: t.wanted,
+            wanted_error: t.aim,
+            minutes_for_wanted: t.wanted,
             of_it_tube: t.wanted_tube,
             spent: t.spent,
             best_tube: t.best[0],

@@ -124,9 +124,10 @@ pub const LADDER: [&str; 9] = [
 ];
 
 /// The counter of the example.
-pub const COUNTER: [&str; 15] = [
+pub const COUNTER: [&str; 16] = [
     "counter 2",
     "45 %",
+    "",
     "",
     "",
     "",
@@ -200,7 +201,7 @@ pub fn draft() -> Vec<Scene> {
         }),
         made("draft_counter_worked", drafted(), |s| {
             fill(s, &LADDER);
-            fill(s, &COUNTER[..14]);
+            fill(s, &COUNTER[..15]);
             s.types("4812");
         }),
         made("draft_counter_cpm", drafted(), |s| {

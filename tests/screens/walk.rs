@@ -115,7 +115,7 @@ fn an_untouched_draft_is_left_at_once_and_another_after_a_question() {
 fn numbers_follow_the_decimal_mark() {
     let mut s = scenes::drafted();
     fill(&mut s, &LADDER);
-    fill(&mut s, &COUNTER[..7]);
+    fill(&mut s, &COUNTER[..8]);
     s.types("2");
     let value = |s: &Sitting| s.draft().forms.counter.value("its factor").to_string();
     assert_eq!(value(&s), "0,7");
@@ -397,7 +397,7 @@ fn another_decimal_mark_is_one_correction_among_others() {
         ),
     ]);
     let mut s = Sitting::at(opened(t));
-    s.times(1, Key::PageUp).times(7, Key::Down).types("2");
+    s.times(1, Key::PageUp).times(8, Key::Down).types("2");
     s.press(Key::PageDown);
     s.types("the printouts have commas\n");
     let p = &s.desk().titration().protocol;

@@ -132,6 +132,7 @@ fn newest() -> Notebook {
         p.ligand.atoms = Some(3);
         p.ligand.bindable = Some(Typed::parse("92 %", Mark::Point).unwrap());
         p.separation.added_counted = Some(Typed::parse("10 %", Mark::Point).unwrap());
+        p.counter.wanted_error = Some(Typed::parse("2 %", Mark::Point).unwrap());
         p.counter.dead_time = Some(Typed::parse("5 us", Mark::Point).unwrap());
         p.counter.subtracted = Some(Subtracted {
             rate: Typed::parse("24.5 cpm", Mark::Point).unwrap(),

@@ -21,7 +21,7 @@ fn protocols_that_cannot_be() {
         (
             "\"0.05 nM\",",
             "\"1e999 nM\",",
-            &["line 99", "levels", "`1e999` is too large", "finite"],
+            &["line 100", "levels", "`1e999` is too large", "finite"],
         ),
         (
             "\"80 Ci/mmol\"",
@@ -41,7 +41,7 @@ fn protocols_that_cannot_be() {
         (
             "confidence: 0.95",
             "confidence: \"95 %\"",
-            &["line 88", "confidence: \"95 %\"", "float"],
+            &["line 89", "confidence: \"95 %\"", "float"],
         ),
         (
             "\"0.05 nM\",",
@@ -138,8 +138,8 @@ fn protocols_that_cannot_be() {
             "total: 0,",
             &["ladder.total", "no total tubes", "16 nonspecific"],
         ),
-        ("total: 2,", "total: -1,", &["line 101", "total: -1"]),
-        ("total: 2,", "total: 65536,", &["line 101", "total: 65536"]),
+        ("total: 2,", "total: -1,", &["line 102", "total: -1"]),
+        ("total: 2,", "total: 65536,", &["line 102", "total: 65536"]),
         (
             "total: 2,",
             "total: 60000,",

@@ -55,6 +55,12 @@ pub const COUNTER: &[Spec] = &[
         "how long the counter is blind after a count, e.g. 5 us; empty: not corrected",
     ),
     field(
+        "counting error",
+        "counter.wanted_error",
+        Kind::Text,
+        "wanted of a net rate, e.g. 2 %: the page says how long to count; empty: 1 %",
+    ),
+    field(
         "background vial",
         "counter.background.blank",
         Kind::Choice(&BLANKS),

@@ -221,6 +221,7 @@ pub(super) fn read_protocol(a: &mut Reader, b: &mut Reader) -> Protocol {
             efficiency,
             quench,
             dead_time: b.maybe("dead time"),
+            wanted_error: b.maybe("counting error"),
             subtracted: b.read("taken off", taken_off, None),
             run: b.read("run", run, None),
             fields,

@@ -73,9 +73,8 @@ impl Chosen {
             "taken off" => matches!(self.fields.scale(), Scale::NetCpm | Scale::NetDpm),
             "run" => self.decay,
             "specific activity" | "decay" | "efficiency" | "typed per vial"
-            | "minutes per tube" | "background minutes" | "dead time" | "background vial" => {
-                !reader
-            }
+            | "minutes per tube" | "background minutes" | "dead time" | "counting error"
+            | "background vial" => !reader,
             _ => true,
         }
     }

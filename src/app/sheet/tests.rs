@@ -52,6 +52,7 @@ fn full(counted: Counted) -> Protocol {
         })
         .into();
     p.counter.dead_time = Some(amount("5 us"));
+    p.counter.wanted_error = Some(amount("2 %"));
     p.counter.subtracted = Some(Subtracted {
         rate: amount("25 cpm"),
         minutes: Some(amount("10 min")),
@@ -307,6 +308,13 @@ fn errors_land_at_their_fields() {
         (bound, "dead time", "5 s", "dead time", "a few us"),
         (
             bound,
+            "counting error",
+            "0 %",
+            "counting error",
+            "more than zero",
+        ),
+        (
+            bound,
             "typed per vial",
             "net cpm",
             "typed per vial",
@@ -380,6 +388,7 @@ fn what_does_not_apply_is_hidden() {
         "efficiency",
         "minutes per tube",
         "dead time",
+        "counting error",
     ];
     let of_cell = ["protein aliquot", "ligand aliquot", "protein side at end"];
     let of_reader = [

@@ -200,6 +200,7 @@ pub(super) fn counter_value(p: &Protocol, name: &str) -> String {
             format!("{}, changer {}", r.start, r.changer)
         }),
         "dead time" => text(c.dead_time.as_ref()),
+        "counting error" => text(c.wanted_error.as_ref()),
         "minutes per tube" => c.minutes.to_string(),
         "background minutes" => c.background.minutes.to_string(),
         "background vial" => BLANKS[match c.background.blank {

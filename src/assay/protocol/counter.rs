@@ -22,6 +22,9 @@ pub struct Counter {
     /// How long the counter is blind after a count.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub dead_time: Option<Amount<Minute>>,
+    /// The counting error that is wanted of a net rate, as a share of it; one percent where nothing is said.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub wanted_error: Option<Amount<Share>>,
     /// What the counter has taken off every net reading.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub subtracted: Option<Subtracted>,
@@ -330,6 +333,11 @@ impl Counter {
             return all.fold(0.0, f64::max);
         }
         self.efficiency.base()
+    }
+
+    /// The counting error that is wanted of a net rate, as a share of it.
+    pub fn aim(&self) -> f64 {
+        self.wanted_error.as_ref().map_or(0.01, Amount::base)
     }
 
     /// The dead time in minutes.

@@ -288,6 +288,13 @@ impl Protocol {
             let allowed = "more than zero and at most 30 d";
             checks.within(field, minutes, 0.0, MOST_MINUTES, allowed)?;
         }
+        checks.maybe(
+            "counter.wanted_error",
+            c.wanted_error.as_ref(),
+            0.0,
+            1.0,
+            "more than zero and at most 100 %",
+        )?;
         if let Some(dead) = &c.dead_time {
             checks.marked("counter.dead_time", dead)?;
             if !(0.0..=1.0 / 60.0).contains(&dead.base()) {
