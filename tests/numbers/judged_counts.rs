@@ -196,6 +196,11 @@ fn how_long_to_count() {
     let times = analyse(&t).counting.unwrap().times.unwrap();
     near(times.wanted, 13.701562, 1e-6);
     near(times.net_cpm, 1000.0, 1e-12);
+    // Twice the error in a quarter of the time (algebra).
+    t.protocol.counter.wanted_error = Some(Typed::parse("2 %", Mark::Point).unwrap());
+    let coarser = analyse(&t).counting.unwrap().times.unwrap();
+    near(coarser.wanted, 13.701562 / 4.0, 1e-6);
+    assert_eq!(coarser.aim, 0.02);
 
     let mut t = sheet(&[]);
     let blank = find(&t, Role::Background, None, 1);
