@@ -252,8 +252,8 @@ fn time(t: &Titration, times: &Times) -> String {
         )
     };
     format!(
-        "{} of the net rate of a total tube at {} takes {} min, {}; the {} min of this rack with all vials alike are best parted for it into {}: {} in place of {}",
-        format!("{} %", short(100.0 * times.aim, 3)),
+        "{} % of the net rate of a total tube at {} takes {} min, {}; the {} min of this rack with all vials alike are best parted for it into {}: {} in place of {}",
+        short(100.0 * times.aim, 3),
         level(t, times.level),
         minutes(times.wanted),
         split([times.wanted_tube, times.wanted - times.wanted_tube]),

@@ -11,7 +11,7 @@ of sites throughout.  It is slow and general on purpose: derivatives come from t
 step through the whole objective, minima from a general quasi-Newton minimiser started from
 many places and polished by Newton steps, intervals from root finding on re-minimised
 profiles.  Every fit is then gone over with mpmath at 40 digits (`certificate_40_digits`),
-and its objective is summed once more by `plain_cost`, a scalar transcription of this text
+and its objective is summed once more by `plain_cost`, a scalar rewriting of this text
 that reads only the written JSON and solves the balance by the quadratic formula.
 
 How it is run
