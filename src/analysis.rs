@@ -29,7 +29,7 @@ pub struct TubeResult {
     pub free_nm: Option<f64>,
     /// Specific binding in nM, `bound - ns x free`, once there is a fit.
     pub specific_nm: Option<f64>,
-    /// Why it is left out, if every reading is flagged.
+    /// Why it is left out, if every reading is flagged, or every reading of the other side of its cell.
     pub suspect: Option<Suspicion>,
 }
 
@@ -139,10 +139,22 @@ pub fn working(titration: &Titration, analysis: &Analysis, tube: &Tube) -> Vec<S
     let of = analysis.tubes.iter().find(|t| t.tube.no == tube.no);
     let measured = of.and_then(|t| t.measured);
     if let (Some(measured), Some(fit)) = (measured, analysis.fit()) {
-        let sticking = fit.sticking(titration.protocol.nonspecific.sticks);
-        specific_with(measured, tube.role, sticking, &mut steps);
+        let sticks = titration.protocol.nonspecific.sticks;
+        if let Some(sticking) = fit.told_sticking(sticks) {
+            specific_with(measured, tube.role, sticking, &mut steps);
+        }
     }
     steps
+}
+
+/// Why a tube is left out, if every reading of it is flagged, or of the other side of its cell.
+fn left_out(titration: &Titration, tube: &Tube) -> Option<Suspicion> {
+    let own = |no| {
+        let kept = titration.kept(no).last();
+        let flagged = titration.is_suspect(no);
+        kept.filter(|_| flagged).and_then(|k| k.suspect.clone())
+    };
+    own(tube.no).or_else(|| own(titration.other_side(tube)?.no))
 }
 
 /// Everything that can be said of a titration: a pure function, so that a notebook gives the same
@@ -165,7 +177,7 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
     let soundness = fit.map(|f| soundness(titration, true, f));
     let blank = background(titration, true);
     let sticks = titration.protocol.nonspecific.sticks;
-    let sticking = outcome.fit().map(|f| f.sticking(sticks));
+    let sticking = outcome.fit().and_then(|f| f.told_sticking(sticks));
     let counting = Counting::of(&titration.protocol);
     let in_use = |tube: &Tube| {
         let of = |flags| observed_in(&counting, titration, tube, flags);
@@ -190,15 +202,7 @@ pub fn analyse_with(titration: &Titration, every: bool) -> Analysis {
                 specific_nm: amounts
                     .zip(sticking)
                     .map(|(m, sticking)| specific(m, tube.role, sticking)),
-                suspect: titration
-                    .is_suspect(tube.no)
-                    .then(|| {
-                        titration
-                            .kept(tube.no)
-                            .last()
-                            .and_then(|k| k.suspect.clone())
-                    })
-                    .flatten(),
+                suspect: left_out(titration, tube),
             }
         })
         .collect();

@@ -342,7 +342,11 @@ impl Forms {
     /// Every field that stands in the way, of all three forms.
     pub fn sheet(&self) -> Result<Sheet, Errors> {
         match (self.protocol(), self.ladder()) {
-            (Ok(protocol), Ok(ladder)) => Ok(Sheet { protocol, ladder }),
+            (Ok(protocol), Ok(ladder)) => {
+                let sheet = Sheet { protocol, ladder };
+                let told = sheet.check_background().map(|()| sheet);
+                told.map_err(|e| vec![("background vials".into(), e.to_string())])
+            }
             (a, b) => Err([a.err(), b.err()].into_iter().flatten().flatten().collect()),
         }
     }

@@ -40,6 +40,9 @@ impl Observed {
     }
 }
 
+/// The least share of the label that a count can still be brought back from: ten half-lives, where a count is of background.
+const LEAST_LEFT: f64 = 1.0 / 1024.0;
+
 /// How readings of a titration become counts.
 #[derive(Debug, Clone)]
 pub struct Counting<'p> {
@@ -307,6 +310,12 @@ impl<'p> Counting<'p> {
         let before = left_after(half_life, began);
         let during = during_count(half_life, reading.minutes);
         let left = before / during;
+        if left < LEAST_LEFT {
+            return Err(ReadingError::AllDecayed {
+                minutes: began,
+                left,
+            });
+        }
         let of = || {
             [
                 Value::new("dt", began, "min after the assay"),

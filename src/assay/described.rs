@@ -115,6 +115,11 @@ impl Protocol {
                 ]);
             }
         }
+        let reader = self.separation.counted.is_signal();
+        let fraction = match self.separation.counted {
+            Counted::Bound | Counted::Signal { .. } => self.separation.fraction.to_string(),
+            Counted::Free { .. } | Counted::BothSides { .. } => String::new(),
+        };
         let whole = [
             ("title", self.title.clone()),
             ("operator", self.operator.clone()),
@@ -147,7 +152,7 @@ impl Protocol {
                 "aliquot of added",
                 text(self.separation.added_counted.as_ref()),
             ),
-            ("fraction counted", self.separation.fraction.to_string()),
+            ("fraction counted", fraction),
             ("separation", self.separation.method.clone()),
             ("filter", self.separation.filter.clone()),
             ("washes", self.separation.washes.clone()),
@@ -168,7 +173,10 @@ impl Protocol {
                 "background time",
                 self.counter.background.minutes.to_string(),
             ),
-            ("background vials", blank.into()),
+            (
+                "background vials",
+                if reader { String::new() } else { blank.into() },
+            ),
             ("decimal mark", self.counter.mark.to_string()),
             ("tube CV known", prior),
             (

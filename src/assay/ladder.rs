@@ -61,6 +61,29 @@ impl Sheet {
             })
     }
 
+    /// Whether something will tell the background: without it there would never be a number.
+    ///
+    /// # Errors
+    /// The ladder has no background vial and the counter's own background is not known either.
+    pub fn check_background(&self) -> Result<(), LadderError> {
+        let counter = &self.protocol.counter;
+        let taken_off = counter
+            .subtracted
+            .as_ref()
+            .is_some_and(|s| s.minutes.is_some());
+        if self.ladder.background > 0 || taken_off {
+            return Ok(());
+        }
+        Err(wrong(
+            "background",
+            if self.protocol.separation.counted.is_signal() {
+                "0 blanks: at least one is needed, and three where the noise of the reader is not known"
+            } else {
+                "0 vials: at least one is needed, or the minutes of the background that the counter took off"
+            },
+        ))
+    }
+
     /// The titration that this sheet opens.
     ///
     /// # Errors
@@ -70,6 +93,7 @@ impl Sheet {
         self.protocol.check_new()?;
         let counted = &self.protocol.separation.counted;
         let (levels, tubes) = self.ladder.lay(self.protocol.counter.mark, counted)?;
+        self.check_background()?;
         Ok(Titration::new(self.protocol.clone(), levels, tubes))
     }
 }

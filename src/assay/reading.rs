@@ -159,6 +159,18 @@ pub enum ReadingError {
          run at the counter step"
     )]
     NoTime,
+    /// Counted when hardly any of the label was left.
+    #[error(
+        "counted {} min after the assay, with {} % of the label left: allowed is a tenth of a percent or more; is the day right?",
+        found(*minutes),
+        found(100.0 * left)
+    )]
+    AllDecayed {
+        /// How long after it.
+        minutes: f64,
+        /// The share left.
+        left: f64,
+    },
     /// Counted before the assay.
     #[error("counted {} min before the assay of {assayed}; a vial is counted after it", found(*minutes))]
     BeforeAssay {

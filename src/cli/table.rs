@@ -155,6 +155,9 @@ fn places(header: &StringRecord) -> Result<Places, String> {
         .filter(|(n, _)| at.contains_key(n))
         .collect();
     match numbers[..] {
+        [(_, Scale::Signal)] if at.contains_key("minutes") => {
+            Err("a signal has no minutes; leave the column out".into())
+        }
         [number] => Ok(Places {
             at,
             by_vial,
@@ -347,6 +350,9 @@ fn place<'t>(field: &impl Fn(&str) -> &'t str, t: &Titration) -> Result<Tube, St
         .find(|x| (x.role, x.level, x.replicate, x.side) == (role, level_no, wanted, side))
         .copied()
         .ok_or_else(|| match level_no {
+            Some(_) if side.is_none() && t.protocol.separation.counted.is_cell() => {
+                "side: which side of the cell it is, protein or ligand".into()
+            }
             Some(l) => format!("there is no {role} {replicate} at level {l}"),
             None => format!("there is no {role} {replicate}"),
         })

@@ -49,13 +49,13 @@ impl fmt::Display for Missing {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Missing::Background => f.write_str("a counted background vial"),
-            Missing::Blank => f.write_str(
-                "a blank with a signal above zero (signals as the reader gives them, no blank taken off)",
-            ),
-            Missing::Standards => f.write_str("a standard above the blank"),
+            Missing::Blank => {
+                f.write_str("blanks whose mean is above zero (no blank taken off by the reader)")
+            }
+            Missing::Standards => f.write_str("a standard above the blank that is not flagged"),
             Missing::Blanks { have } => write!(
                 f,
-                "{BLANKS_WANTED} blanks, or the noise of the reader at the counter step (now {have})"
+                "{BLANKS_WANTED} blanks that differ, or the noise of the reader in the protocol (now {have})"
             ),
             Missing::Levels { have, want } => {
                 write!(f, "total tubes at {want} levels (now {have})")
@@ -155,7 +155,8 @@ pub(super) fn missing<I: Isotherm>(
         let have = blank.vials;
         if blank.cpm() <= 0.0 {
             missing.push(Missing::Blank);
-        } else if have < BLANKS_WANTED && noise_known(titration).is_none() {
+        } else if (have < BLANKS_WANTED || blank.between <= 0.0) && noise_known(titration).is_none()
+        {
             missing.push(Missing::Blanks { have });
         }
     }

@@ -139,6 +139,22 @@ impl Fit {
         }
     }
 
+    /// The same, where the readings determine nonspecific binding at all: none of its estimates has a standard error above 1.5 on the ln
+    /// scale, but one that rests on its floor is as good as zero.
+    pub fn told_sticking(&self, sticks: Sticks) -> Option<Sticking> {
+        let vague = |name: &str| {
+            let of = self.estimate(name);
+            of.is_some_and(|e| !e.at_floor && e.se_ln.is_none_or(|se| se > 1.5))
+        };
+        // What sticks to the filter may be next to nothing beside what sticks to the preparation, and the other way round.
+        let all = if self.estimate("ns_filter").is_some() {
+            vague("ns") && vague("ns_filter")
+        } else {
+            vague("ns")
+        };
+        (!all).then(|| self.sticking(sticks))
+    }
+
     /// The value of an estimate by its name; not a number where there is none.
     pub fn value(&self, name: &str) -> f64 {
         self.estimate(name).map_or(f64::NAN, |e| e.value)

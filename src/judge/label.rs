@@ -14,6 +14,8 @@ use std::collections::BTreeMap;
 
 /// The chance below which something is remarked on.
 const REMARKED_BELOW: f64 = 0.05;
+/// The least power of free that matters: over two powers of ten of free it makes a tenth of nonspecific binding.
+const MATTERS: f64 = 0.02;
 /// Where a single value is told from another, in standard deviations: the normal distribution's 2.5 %.
 const ONE_FAR: f64 = 1.959963984540054;
 
@@ -144,6 +146,9 @@ pub struct Standards {
     pub above: Vec<TubeNo>,
     /// Vials that read below the blank by more than [`BLANK_SDS`] standard deviations of a blank reading.
     pub below: Vec<TubeNo>,
+    /// The first two neighbours of which the stronger standard reads less by more than chance: concentrations in nM. Standards in the
+    /// wrong order do.
+    pub falling: Option<[f64; 2]>,
     /// Whether they are in line; none without a fit, or with too few standards to tell.
     pub linearity: Option<Linearity>,
 }
@@ -166,7 +171,7 @@ pub struct Proportional {
 impl Proportional {
     /// Whether nothing speaks against it.
     pub fn holds(self) -> bool {
-        self.p >= REMARKED_BELOW
+        self.p >= REMARKED_BELOW || self.exponent.abs() < MATTERS
     }
 }
 
@@ -366,9 +371,31 @@ fn standards(
     Some(Standards {
         highest,
         above: outside(&|signal, _| signal > highest),
-        below: outside(&|signal, n| signal < background.cpm() - BLANK_SDS * sd / n.sqrt()),
+        below: outside(&|signal, n| {
+            sd > 0.0 && signal < background.cpm() - BLANK_SDS * sd / n.sqrt()
+        }),
+        falling: falling(t, vials, sd),
         linearity: fit.and_then(|f| linearity(t, vials, f)),
     })
+}
+
+/// Neighbouring standards that fall where they should rise, by more than three standard deviations of blanks and a tenth of the
+/// signal, more than tubes scatter.
+fn falling(t: &Titration, vials: &[Vial], sd: f64) -> Option<[f64; 2]> {
+    let mut means: BTreeMap<u16, (f64, f64, f64)> = BTreeMap::new();
+    for v in vials.iter().filter(|v| !v.suspect) {
+        let (Some(n), Some(nm)) = (v.tube.standard, t.standard_nm(&v.tube)) else {
+            continue;
+        };
+        let of = means.entry(n).or_insert((nm, 0.0, 0.0));
+        of.1 += v.observed.counts;
+        of.2 += v.observed.minutes;
+    }
+    let mut all: Vec<[f64; 2]> = means.values().map(|(nm, sum, n)| [*nm, sum / n]).collect();
+    all.sort_by(|a, b| a[0].total_cmp(&b[0]));
+    all.windows(2)
+        .find(|w| w[0][1] - w[1][1] > BLANK_SDS * sd + 0.1 * w[0][1].abs())
+        .map(|w| [w[0][0], w[1][0]])
 }
 
 /// Whether a quadratic term in the standards' signals, blanks among them, is more than chance: its F ratio in a fit weighted by the

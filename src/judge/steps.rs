@@ -69,7 +69,9 @@ pub(super) fn levels<I: Cold>(
             p,
         }
     });
-    (squares, judged.collect())
+    // Where nothing bends the likelihood a score may lead anywhere: such a level is not judged.
+    let sound = |l: &LevelError| l.error.is_finite() && l.distance.is_finite();
+    (squares, judged.filter(sound).collect())
 }
 
 /// The steps by the columns that the fit has for them: what is fitted has the share of the error that readings bring beside what

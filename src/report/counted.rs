@@ -413,9 +413,13 @@ fn added(lines: &mut Vec<Line>, t: &Titration, found: &LabelFound) {
         lines.push((
             "added in the mean",
             format!(
-                "{} of {} levels{said}",
+                "{} of {}{said}",
                 mean_words(mean, signed_percent),
-                mean.of
+                if mean.of == 1 {
+                    "1 level".into()
+                } else {
+                    format!("{} levels", mean.of)
+                }
             ),
         ));
     }
@@ -483,6 +487,19 @@ fn standards(lines: &mut Vec<Line>, t: &Titration, s: &Standards) {
             |l| in_line(t, &l),
         ),
     ));
+    if let Some([low, high]) = s.falling {
+        let unit = t.protocol.display.concentration;
+        let of = |nm: f64| short(unit.from_nm(nm), 4);
+        lines.push((
+            "",
+            format!(
+                "the standard of {} {} reads less than that of {}: are they in the order of the protocol?",
+                of(high),
+                unit.word(),
+                of(low)
+            ),
+        ));
+    }
     let mut outside = Vec::new();
     if !s.above.is_empty() {
         outside.push(format!(

@@ -132,7 +132,7 @@ pub fn soundness(t: &Titration, analysis: &Analysis) -> Vec<(&'static str, Strin
         s.runs
             .map_or("not judged: residuals of one sign".into(), |r| {
                 format!(
-                    "{} of {} levels above and {} below the curve, {}",
+                    "{} runs, of {} tubes above and {} below the curve, {}",
                     r.runs.runs,
                     r.runs.plus,
                     r.runs.minus,
@@ -188,9 +188,27 @@ pub fn soundness(t: &Titration, analysis: &Analysis) -> Vec<(&'static str, Strin
     lines
 }
 
+/// How much of the label in tubes without receptor is found again where nothing is wrong with volumes and scale.
+const FOUND_AGAIN: (f64, f64) = (0.8, 1.2);
+
 /// What is remarkable, in short, that which would mislead most first.
 pub fn remarks(t: &Titration, analysis: &Analysis) -> Vec<String> {
     let mut said = Vec::new();
+    let label = analysis.label.as_ref();
+    if label.and_then(|l| l.standards.as_ref()?.falling).is_some() {
+        said.push(
+            "standards fall where they should rise: are they in the protocol's order?".into(),
+        );
+    }
+    if let Some(found) = label.and_then(|l| l.found)
+        && !(FOUND_AGAIN.0..=FOUND_AGAIN.1).contains(&found.value)
+        && found.told_from(1.0).is_some()
+    {
+        said.push(format!(
+            "tubes without receptor show {} % of the label added: aliquot, activity, walls?",
+            significant(100.0 * found.value, 2)
+        ));
+    }
     for s in &analysis.suspects.tubes {
         let side = if s.residual > 0.0 { "above" } else { "below" };
         let name = t.tube(s.tube).map_or(String::new(), |x| role_of(x.role));

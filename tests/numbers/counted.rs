@@ -363,6 +363,12 @@ fn readings_that_cannot_be() {
         false,
         "30 min before the assay of 2031-05-04 10:00",
     );
+    // A clock time before the assay, taken for the day after: 13 half-lives.
+    let late = Reading {
+        counted: Some(rackside::assay::Stamp::parse("2031-05-05T09:30:00+02:00").unwrap()),
+        ..reading.clone()
+    };
+    says(&t, &late, false, "is the day right?");
     let mut curve = t.clone();
     curve.protocol.counter.quench = [(300.0, "30 %"), (500.0, "50 %")]
         .map(|(indicator, e)| QuenchStandard {

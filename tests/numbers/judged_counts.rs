@@ -662,7 +662,7 @@ fn pages_of_every_kind() {
             "reader",
             include_str!("data/kinds/reader.json"),
             &[
-                "signal  reads",
+                "signal reads",
                 "blank a",
                 "gain",
                 "fitted to signals",

@@ -483,3 +483,44 @@ fn the_truth_is_near() {
         }
     }
 }
+
+/// A cell with a flag on one side is left out as a whole, and both of its vials say so.
+#[test]
+fn a_cell_with_one_side_flagged() {
+    use rackside::assay::Reason;
+    let rack = read(include_str!("data/kinds/dialysis.json"));
+    let mut t = titration(&rack);
+    let ligand = *t
+        .tubes
+        .iter()
+        .find(|t| t.side == Some(Side::Ligand))
+        .unwrap();
+    let protein = t.other_side(&ligand).unwrap().no;
+    let all = rackside::analysis::analyse(&t).fit().unwrap().tubes_used;
+    t.kept.get_mut(&ligand.no).unwrap()[0].suspect = Some(Reason::Spilled.into());
+    let a = rackside::analysis::analyse(&t);
+    assert_eq!(a.fit().unwrap().tubes_used, all - 1);
+    for no in [ligand.no, protein] {
+        let of = a.tubes.iter().find(|x| x.tube.no == no).unwrap();
+        assert!(of.suspect.is_some(), "vial {no}");
+    }
+}
+
+/// Standards in the wrong order are said to fall, and those of the reference rack are not.
+#[test]
+fn standards_that_fall() {
+    let rack = read(include_str!("data/kinds/reader.json"));
+    let t = titration(&rack);
+    let falling = |t: &Titration| {
+        let label = rackside::analysis::analyse(t).label.unwrap();
+        label.standards.unwrap().falling
+    };
+    assert_eq!(falling(&t), None);
+    let mut turned = t.clone();
+    if let Counted::Signal { standards, .. } = &mut turned.protocol.separation.counted {
+        standards.reverse();
+    }
+    assert!(falling(&turned).is_some());
+    let remarks = rackside::report::judged::remarks(&turned, &rackside::analysis::analyse(&turned));
+    assert!(remarks[0].contains("standards fall"), "{remarks:?}");
+}

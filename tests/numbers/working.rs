@@ -230,7 +230,13 @@ fn racks() -> Vec<(&'static str, Titration)> {
         ("product binds", "ProductBinds", "I-125"),
         ("two atoms of tritium", "ProductInert", "H-3"),
     ] {
+        let activity = if decay == "CarrierFree" {
+            "\"2190 Ci/mmol\""
+        } else {
+            "\"80 Ci/mmol\""
+        };
         let mut t = sheet(&[
+            ("\"80 Ci/mmol\"", activity),
             (
                 "label: \"H-3\"",
                 &format!("label: \"{label}\", decay: {decay}, bindable: \"93 %\""),

@@ -143,8 +143,8 @@ fn the_time_a_count_began() {
     assert_eq!(at("14:03:25"), "2031-05-04T14:03:25+02:00");
     // The first such time that is not before the assay at 14:00.
     assert_eq!(at("0130"), "2031-05-05T01:30:00+02:00");
-    assert_eq!(at("203105051403"), "2031-05-05T14:03:00+02:00");
-    assert_eq!(at("20310505 140325"), "2031-05-05T14:03:25+02:00");
+    assert_eq!(at("203105050403"), "2031-05-05T04:03:00+02:00");
+    assert_eq!(at("20310505 040325"), "2031-05-05T04:03:25+02:00");
     // The raw text has what was typed, and the day is read back.
     let mut s = typed_in(&DECAYS, 1);
     s.types("1203\n1403\n\n");
@@ -155,10 +155,17 @@ fn the_time_a_count_began() {
         s.said()
     );
     // A recount comes after the count that is there.
-    s.types("+1190\n1401\n\n");
+    s.types("+1190\n1430\n\n");
     assert_eq!(
         kept(&s).counted.unwrap().to_string(),
-        "2031-05-05T14:01:00+02:00"
+        "2031-05-04T14:30:00+02:00"
+    );
+    // A time before it would be that of the day after, when nothing is left of such a label.
+    s.types("+1180\n1401\n");
+    assert!(
+        s.refused() && s.said().contains("is the day right?"),
+        "{}",
+        s.said()
     );
 }
 
@@ -476,4 +483,23 @@ fn the_working_of_a_tube() {
     // One without a reading says so.
     s.types("/40\ns");
     assert!(s.text().contains("no reading yet"));
+}
+
+/// No run tells when a recount was made: its time is asked for, though none is typed of other vials.
+#[test]
+fn a_recount_of_a_short_lived_label_is_asked_its_time() {
+    let run = (
+        "fields: Counts",
+        "fields: Counts, run: (start: \"2031-05-04 14:05\", changer: \"10 s\")",
+    );
+    let mut s = Sitting::fresh(&[&DECAYS[..2], &DECAYS[3..], &[run]].concat());
+    s.types("260\n1203\n");
+    assert_eq!(kept(&s).counted, None);
+    s.types("+1150\n");
+    assert_eq!(asked(&s), Some(Field::At), "{}", s.said());
+    s.types("1630\n");
+    assert_eq!(
+        kept(&s).counted.unwrap().to_string(),
+        "2031-05-04T16:30:00+02:00"
+    );
 }

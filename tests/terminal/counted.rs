@@ -62,7 +62,7 @@ const SHORT_LIVED: [(&str, &str); 4] = [
 fn a_table_with_times_and_quench() {
     let home = opened(&SHORT_LIVED);
     let table =
-        "vial,counts,at,quench\n33,250,09:10,\n1,2000,11:49:46,300\n2,2000,2031-05-05 10:00,500\n";
+        "vial,counts,at,quench\n33,250,09:10,\n1,2000,11:49:46,300\n2,2000,2031-05-04 20:00,500\n";
     let ran = take(&home, table);
     assert_eq!(ran.code, 0, "{ran:?}");
     // One half-life (109.77 min, ICRP Publication 107) after the assay and at two thirds of the nominal efficiency (30 of 45 %): a third of
@@ -79,9 +79,9 @@ fn a_table_with_times_and_quench() {
             / (std::f64::consts::LN_2 * 2.0 / 109.77));
     let got = bound(&tube(&home, 1));
     assert!((got / want - 1.0).abs() < 1e-6, "{got} {want}");
-    // A day later: 2 to the 13th less, and the full efficiency.
+    // Ten hours after the assay, at the full efficiency.
     let got = bound(&tube(&home, 2)) / got;
-    let want = (2.0 / 3.0) * left(109.0 + 46.0 / 60.0) / left(1440.0);
+    let want = (2.0 / 3.0) * left(109.0 + 46.0 / 60.0) / left(600.0);
     assert!((got / want - 1.0).abs() < 1e-9, "{got} {want}");
 }
 
@@ -155,6 +155,8 @@ fn sides_and_standards_in_a_table() {
         (bound / (250.0 / (0.45 * 177.6 * 100.0)) - 1.0).abs() < 1e-9,
         "{bound}"
     );
+    let no_side = take(&home, "level,role,replicate,counts\n1,total,b,5\n");
+    assert!(no_side.err.contains("protein or ligand"), "{no_side:?}");
     let other = take(&home, "vial,side,counts\n3,ligand,5\n");
     assert!(
         other.err.contains("its side in the row is `ligand`"),
@@ -179,6 +181,11 @@ fn sides_and_standards_in_a_table() {
     assert!((bound - 0.04).abs() < 1e-12, "{bound}");
     let far = take(&home, "level,role,replicate,signal\n3,standard,a,100\n");
     assert!(far.err.contains("there is no standard 3"), "{far:?}");
+    let minutes = take(&home, "vial,signal,minutes\n2,100,2\n");
+    assert!(
+        minutes.err.contains("a signal has no minutes"),
+        "{minutes:?}"
+    );
     let counts = take(&home, "vial,counts\n2,100\n");
     assert!(counts.err.contains("a signal is allowed"), "{counts:?}");
 }
@@ -230,6 +237,28 @@ fn protocols_that_cannot_be() {
         (
             &[("label: \"H-3\"", "label: \"F-18\"")],
             &["ligand.decay", "F-18", "1.83 h"],
+        ),
+        // 80 of 2198 Ci/mmol are a label in one molecule of 27.
+        (
+            &[
+                decay,
+                (
+                    "time: \"90 min\"",
+                    "time: \"90 min\", assayed: \"2031-05-05 10:00\"",
+                ),
+            ],
+            &["ligand.decay", "3.6 % of molecules", "ProductInert"],
+        ),
+        // 0.5 mL less the 4.5 mL that went over.
+        (
+            &[counted(
+                "counted: BothSides(protein_aliquot: \"0.1 mL\", ligand_aliquot: \"0.1 mL\", protein_after: \"5 mL\", ligand_volume: \"0.5 mL\"),",
+            )],
+            &["separation.counted.protein_after", "leaves -4 mL"],
+        ),
+        (
+            &[("background: 1,", "background: 0,")],
+            &["ladder.background", "0 vials"],
         ),
         (
             &[("\"45 %\"", "\"145 %\"")],

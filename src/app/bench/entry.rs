@@ -76,12 +76,17 @@ impl Desk {
             scale: fields.scale(),
             ..Reading::counts(raw.as_str(), value, self.offered_minutes())
         };
-        if fields.more().next().is_some()
+        let mut more: Vec<Asked> = fields.more().collect();
+        // No run tells when a recount was made.
+        if self.bench.again && !fields.has(Asked::At) && self.titration().protocol.short_lived() {
+            more.push(Asked::At);
+        }
+        if !more.is_empty()
             && let Some(why) = self.not_wanted()
         {
             return self.refused(why);
         }
-        self.taken(vec![raw], reading, &fields.more().collect::<Vec<_>>(), now)
+        self.taken(vec![raw], reading, &more, now)
     }
 
     /// A refusal with the line left as it is.
@@ -292,6 +297,11 @@ pub(in crate::app) fn in_a_line(cause: &ReadingError) -> String {
         ReadingError::NoTime => {
             "short-lived label, no time: type `at` per vial, or the run (counter step)".into()
         }
+        ReadingError::AllDecayed { minutes, left } => format!(
+            "{} h after the assay, {} % of the label left: is the day right?",
+            short(minutes / 60.0, 3),
+            short(100.0 * left, 2)
+        ),
         ReadingError::BelowNone { counts } => format!(
             "lower than the background taken off allows: {} counts behind it",
             short(*counts, 6)

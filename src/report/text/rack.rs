@@ -61,7 +61,7 @@ pub(super) fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         ("counts", "min")
     };
     out.line(format!(
-        " vial   added role           {seen:>8}  {times:>5}    bound       sd    free  specific"
+        " vial   added role           {seen:>8} {times:>5}     bound       sd    free  specific"
     ));
     let number = |nm: Option<f64>| nm.map_or(String::new(), |nm| significant(unit.from_nm(nm), 3));
     let decimals = values::decimals(analysis, unit);
@@ -74,7 +74,7 @@ pub(super) fn rack(out: &mut Lines, t: &Titration, analysis: &Analysis) {
         };
         let (bound, sd, free) = amounts(r);
         out.line(format!(
-            "{}{:>4} {:>7} {:<14} {:>8} {:>6} {:>8} {:>8} {:>7} {:>9}",
+            "{}{:>4} {:>7} {:<14} {:>8} {:>5} {:>9} {:>8} {:>7} {:>9}",
             t.mark_of(r.tube.no),
             r.tube.no,
             r.added_nm
@@ -171,5 +171,10 @@ fn legend(t: &Titration) -> String {
     } else {
         "counted more than once"
     };
-    format!("{how}{counted}; specific: bound less ns x free; x: suspect; +: {reads}")
+    let specific = if t.tubes.iter().any(|x| x.role == Role::NoReceptor) {
+        "bound less (ns + ns filter) x free, without receptor less ns filter x free"
+    } else {
+        "bound less ns x free"
+    };
+    format!("{how}{counted}; specific: {specific}; x: suspect; +: {reads}")
 }

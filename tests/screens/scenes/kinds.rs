@@ -44,7 +44,7 @@ pub const NET: [(&str, &str); 1] = [(
 )];
 /// A short-lived label, typed with the time of every count.
 pub const DECAYS: [(&str, &str); 4] = [
-    ("label: \"H-3\",", "label: \"F-18\", decay: CarrierFree,"),
+    ("label: \"H-3\",", "label: \"F-18\", decay: ProductInert,"),
     (
         "time: \"90 min\",",
         "time: \"90 min\", assayed: \"2031-05-04 14:00\",",

@@ -3,10 +3,14 @@
 use super::super::ligand::{MOST_ATOMS, SHORT_LIVED};
 use super::super::{Counted, Protocol, Sticks};
 use super::{Checks, ProtocolError};
+use crate::assay::decayed::Carrier;
 use crate::assay::quench::QuenchCurve;
 use crate::assay::reading::{MOST_MINUTES, Scale};
 use crate::assay::when::minutes_between;
 use crate::units::{Nuclide, carrier_free, short, significant};
+
+/// The least share of labelled molecules that is still called carrier-free: preparations are never quite that.
+const LEAST_CARRIER_FREE: f64 = 0.5;
 
 fn wrong(field: &str, what: impl Into<String>) -> ProtocolError {
     ProtocolError::new(field, what)
@@ -119,7 +123,20 @@ impl Protocol {
         let atoms = l.atoms();
         let most = one * f64::from(atoms);
         // Quoted half-lives and activities are rounded.
-        if l.specific_activity.base() <= 1.02 * most {
+        let share = l.specific_activity.base() / most;
+        if l.decay == Some(Carrier::CarrierFree) && share < LEAST_CARRIER_FREE {
+            return Err(wrong(
+                "ligand.decay",
+                format!(
+                    "carrier-free, but `{}` is a label in {} % of molecules (all of them: {} Ci/mmol); say what remains of a \
+                     molecule beside carrier: ProductInert or ProductBinds",
+                    l.specific_activity,
+                    significant(100.0 * share, 2),
+                    significant(most / 2.22, 4)
+                ),
+            ));
+        }
+        if share <= 1.02 {
             return Ok(());
         }
         let several = match Nuclide::find(&l.label).map(|n| n.name()) {
@@ -198,6 +215,18 @@ impl Protocol {
                 )?;
                 let of = ligand_volume.as_ref().unwrap_or(ligand_aliquot);
                 part("separation.counted.ligand_aliquot", ligand_aliquot, of)?;
+                if let (Some(after), Some(filled)) = (after, ligand_volume) {
+                    let left = filled.base() - (after.base() - volume.base());
+                    if left < ligand_aliquot.base() * (1.0 - 1e-9) {
+                        return Err(wrong(
+                            "separation.counted.protein_after",
+                            format!(
+                                "`{after}` leaves {} mL of the ligand side's {filled}, less than its aliquot of {ligand_aliquot}",
+                                short(left, 4)
+                            ),
+                        ));
+                    }
+                }
                 if self.nonspecific.sticks == Sticks::ToFilter {
                     return Err(wrong(
                         "nonspecific.sticks",
