@@ -123,11 +123,11 @@ pub fn beside_isotherm(fit: &Fit) -> Vec<Beside> {
     let of_ns = if apart {
         "(to the preparation)"
     } else {
-        "bound per free"
+        "of free label"
     };
     [
-        one("ns", "ns", "", of_ns),
-        one("ns_filter", "ns filter", "", "(to the filter)"),
+        one("ns", "nonspecific", "", of_ns),
+        one("ns_filter", "on filter", "", "(after separation)"),
         one("background_cpm", "background", "cpm", ""),
         one("blank_signal", "blank", "signal", ""),
         one("gain", "gain", "signal/nM", "in the volume read"),

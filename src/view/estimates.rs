@@ -114,7 +114,7 @@ fn fitted(app: &Desk, protocol: &Protocol, fit: &Fit, width: usize) -> Vec<Line<
     for beside in values::beside_isotherm(fit).into_iter().skip(1) {
         others.push_str(&format!("   {} {}", beside.name, beside.shown.value));
     }
-    lines.push(line("ns", &values::ns(fit), &others));
+    lines.push(line("nonsp", &values::ns(fit), &others));
     lines.push(Line::from(model));
     lines
 }

@@ -673,7 +673,7 @@ fn pages_of_every_kind() {
         (
             "no_receptor",
             include_str!("data/kinds/no_receptor.json"),
-            &["ns filter", "no recept. a", "added a", " counted "],
+            &["on filter", "no recept. a", "added a", " counted "],
             &["signal"],
         ),
         (

@@ -139,9 +139,9 @@ fn legend(t: &Titration) -> String {
     let p = &t.protocol;
     let filter = match p.nonspecific.sticks {
         _ if t.tubes.iter().any(|x| x.role == Role::NoReceptor) => {
-            ", over 1 less ns filter once there is a fit"
+            ", over 1 less on filter once there is a fit"
         }
-        Sticks::ToFilter => ", over 1 less ns once there is a fit",
+        Sticks::ToFilter => ", over 1 less nonspecific once there is a fit",
         Sticks::ToPreparation => "",
     };
     let label = if p.ligand.bindable.is_some() {
@@ -172,9 +172,9 @@ fn legend(t: &Titration) -> String {
         "counted more than once"
     };
     let specific = if t.tubes.iter().any(|x| x.role == Role::NoReceptor) {
-        "bound less (ns + ns filter) x free, without receptor less ns filter x free"
+        "bound less (nonspecific + on filter) x free, without receptor less on filter x free"
     } else {
-        "bound less ns x free"
+        "bound less nonspecific x free"
     };
     format!("{how}{counted}; specific: {specific}; x: suspect; +: {reads}")
 }
