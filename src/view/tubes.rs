@@ -2,7 +2,7 @@
 
 use super::style;
 use crate::app::Desk;
-use crate::assay::{Side, Titration, Tube, observed};
+use crate::assay::{Role, Side, Titration, Tube, observed};
 use crate::report::values;
 use crate::units::{fixed, short, significant};
 use ratatui::Frame;
@@ -54,6 +54,10 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             .iter()
             .find(|r| r.tube.no == tube.no && counts.is_some());
         let m = r.and_then(|r| r.measured);
+        // What an aliquot of a level or a standard holds stands under bound, as counted.
+        let held = r
+            .filter(|_| matches!(tube.role, Role::Added | Role::Standard))
+            .and_then(|r| r.label);
         let lost = t.lost.contains_key(&tube.no);
         let text = format!(
             "{}{}{:>3} {:>6} {:<13} {:>6} {:>6} {:>9} {:>8} {:>7} {:>9}",
@@ -68,8 +72,8 @@ pub(super) fn draw(frame: &mut Frame, area: Rect, app: &Desk) {
             counts
                 .filter(|_| !signal)
                 .map_or(String::new(), |o| fixed(o.minutes, 2)),
-            amount(m.map(|m| m.bound_nm)),
-            amount(m.map(|m| m.bound_sd_nm)),
+            amount(m.map(|m| m.bound_nm).or(held.map(|l| l.nm))),
+            amount(m.map(|m| m.bound_sd_nm).or(held.map(|l| l.sd_nm))),
             number(r.and_then(|r| match tube.side {
                 // What the ligand side holds is free.
                 Some(Side::Ligand) => r.label.map(|l| l.nm),
